@@ -1,0 +1,83 @@
+"""What a level evaluated on sample indices gives back."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+
+import numpy as np
+
+from aleafield.arrays import BoolArray, FloatArray, IntArray
+
+FINITE = 0
+FIELD_NOT_FINITE = 1
+QUANTITY_NOT_FINITE = 2
+FAILURE_MEANINGS: Mapping[int, str] = {
+    FINITE: "finite",
+    FIELD_NOT_FINITE: "field_not_finite",
+    QUANTITY_NOT_FINITE: "quantity_not_finite",
+}
+"""Codes of `Records.failed`: a sample has failed when a value is not finite, never because it is large."""
+
+
+@dataclass
+class Records:
+    """Values of S samples at one level.
+
+    Attributes
+    ----------
+    samples : int array (S,)
+        Sample indices.
+    inputs : mapping of path to float array (S,)
+    values : mapping of quantity name to float array (S,)
+        NaN where the quantity does not occur or the sample failed.
+    margins : mapping of quantity name to float array (S,)
+        For quantities that may not occur: a continuous quantity that is >= 0 exactly where it occurs.
+    failed : int array (S,)
+        Code of `FAILURE_MEANINGS`.
+    failed_at : float array (S,)
+        Model time at which a failed sample ceased to be finite; NaN otherwise.
+    fields : float array (S, K, n) or None
+        The field at the K requested times and the level's nodes in increasing x.
+    """
+
+    samples: IntArray
+    inputs: dict[str, FloatArray]
+    values: dict[str, FloatArray]
+    margins: dict[str, FloatArray] = field(default_factory=dict)
+    failed: IntArray = field(default_factory=lambda: np.zeros(0, dtype=np.int64))
+    failed_at: FloatArray = field(default_factory=lambda: np.zeros(0))
+    fields: FloatArray | None = None
+
+    def __len__(self) -> int:
+        return len(self.samples)
+
+    @property
+    def valid(self) -> BoolArray:
+        """Which samples did not fail, shape (S,)."""
+        return np.asarray(self.failed == FINITE)
+
+    def first(self, count: int) -> Records:
+        """The first `count` samples: what remains of a padded batch."""
+        return Records(
+            samples=self.samples[:count],
+            inputs={k: v[:count] for k, v in self.inputs.items()},
+            values={k: v[:count] for k, v in self.values.items()},
+            margins={k: v[:count] for k, v in self.margins.items()},
+            failed=self.failed[:count],
+            failed_at=self.failed_at[:count],
+            fields=None if self.fields is None else self.fields[:count],
+        )
+
+
+def joined(parts: list[Records]) -> Records:
+    """Records of several batches as one, in the order given; fields are left out."""
+    first = parts[0]
+    return Records(
+        samples=np.concatenate([p.samples for p in parts]),
+        inputs={k: np.concatenate([p.inputs[k] for p in parts]) for k in first.inputs},
+        values={k: np.concatenate([p.values[k] for p in parts]) for k in first.values},
+        margins={k: np.concatenate([p.margins[k] for p in parts]) for k in first.margins},
+        failed=np.concatenate([p.failed for p in parts]),
+        failed_at=np.concatenate([p.failed_at for p in parts]),
+    )

@@ -1,0 +1,1 @@
+"""Probability laws of inputs, their dependence, and counter-based streams of random numbers."""

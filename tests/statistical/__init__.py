@@ -1,0 +1,1 @@
+"""Evidence from repeated trials: estimators are unbiased and their intervals cover."""
