@@ -1,0 +1,31 @@
+"""The error split: discretisation error from paired levels, put together with the sampling error.
+
+Input are the values of a sample and, on its probes (the first parameter samples), the values at
+neighbouring levels.  Output are statements: a value, the parts of its error, an interval.
+`docs/error_split.md` states the mathematics.
+"""
+
+from aleafield.accounting.probes import number_of_probes, share_of_probes
+from aleafield.accounting.quantity import QuantityStatements, quantity_statements
+from aleafield.accounting.records import LevelValues, Pair, PartDifferences
+from aleafield.accounting.split import split_error
+from aleafield.accounting.statement import Statement
+from aleafield.accounting.statistic import MEAN, OCCURS, SD, Statistic, exceed, quantile
+
+__all__ = [
+    "MEAN",
+    "OCCURS",
+    "SD",
+    "LevelValues",
+    "Pair",
+    "PartDifferences",
+    "QuantityStatements",
+    "Statement",
+    "Statistic",
+    "exceed",
+    "number_of_probes",
+    "quantile",
+    "quantity_statements",
+    "share_of_probes",
+    "split_error",
+]

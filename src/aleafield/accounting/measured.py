@@ -1,0 +1,190 @@
+"""One discretisation part of one quantity, measured: differences, orders, regressions."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from functools import cached_property
+
+import numpy as np
+
+from aleafield.accounting.order import RELATIVE_ROUND_OFF, Order, judge_order, reduction
+from aleafield.accounting.records import Pair, PartDifferences
+from aleafield.accounting.regression import DifferenceFit, fit_differences
+from aleafield.arrays import BoolArray, FloatArray, IntArray
+from aleafield.estimates import Sample
+from aleafield.estimates.sd import standard_deviation
+
+LEAST_PAIRS = 5
+"""Probes on which a conditional statistic must occur at both levels, where the sample has as many."""
+
+
+@dataclass(frozen=True, eq=False)
+class PairedValues:
+    """The quantity on k probes at two neighbouring levels, carried to the run's values.
+
+    A pair of levels along the path of refinement need not hold the run itself; its difference is taken as
+    that of the run's value Q and Q - D, so that all parts refer to the same statistic.
+
+    Attributes
+    ----------
+    upper, lower : float arrays (k,)
+        Q and Q - D; NaN where the quantity does not occur at that level.
+    in_upper, in_lower : bool arrays (k,)
+        Where it occurs.
+    in_run : bool array (k,)
+        Where it occurs at the run's level.
+    block : int array (k,)
+        Independent block of each probe.
+    """
+
+    upper: FloatArray
+    lower: FloatArray
+    in_upper: BoolArray
+    in_lower: BoolArray
+    in_run: BoolArray
+    block: IntArray
+
+    @property
+    def in_both(self) -> BoolArray:
+        """Where the quantity occurs at both levels and in the run, (k,)."""
+        return self.in_upper & self.in_lower & self.in_run
+
+
+def pair_with_run(sample: Sample, probes: IntArray, pair: Pair, divisor: float) -> PairedValues:
+    """The pair on the probes that did not fail, its differences divided by `divisor`."""
+    usable = pair.valid & sample.valid[probes]
+    at = probes[usable]
+    run, in_run = sample.values[at], sample.occurs[at]
+    upper, lower = pair.coarser.values[usable], pair.finer.values[usable]
+    in_upper, in_lower = pair.coarser.occurs[usable], pair.finer.occurs[usable]
+    carried = np.where(in_run & in_upper, run, upper)
+    lower = np.where(in_upper & in_lower, carried - (upper - lower) / divisor, lower)
+    return PairedValues(carried, lower, in_upper, in_lower, in_run, sample.replicate[at])
+
+
+@dataclass(frozen=True, eq=False)
+class MeasuredPart:
+    """One part with what all statistics of the quantity need from it.
+
+    Attributes
+    ----------
+    sample : Sample
+    part : PartDifferences
+    """
+
+    sample: Sample
+    part: PartDifferences
+
+    @cached_property
+    def usable(self) -> BoolArray:
+        """Probes that failed neither in the run nor on the finer pair, (n_p,)."""
+        return self.part.fine.valid & self.sample.valid[self.part.probes]
+
+    @cached_property
+    def candidates(self) -> tuple[PairedValues, ...]:
+        """The difference that is the part; for a peak also the coarser one, brought down by its order.
+
+        A piecewise-linear field's peak jumps with the mesh, so the finer difference may vanish by chance.
+        """
+        part = self.part
+        found = [pair_with_run(self.sample, part.probes, part.fine, 1.0)]
+        if part.peak and part.coarse is not None:
+            order = 2.0 if part.expected_order is None else part.expected_order
+            divisor = reduction(order, part.ratio_fine, part.ratio_coarse)
+            found.append(pair_with_run(self.sample, part.probes, part.coarse, divisor))
+        return tuple(found)
+
+    @cached_property
+    def enough_pairs(self) -> bool:
+        """Whether the quantity occurs at both levels on enough probes."""
+        return int(self.candidates[0].in_both.sum()) >= max(1, min(LEAST_PAIRS, len(self.sample.given)))
+
+    @cached_property
+    def round_off(self) -> float:
+        """Size of a difference of the quantity that is rounding."""
+        return _round_off(self.sample.given, self.part.round_off)
+
+    @cached_property
+    def margin_round_off(self) -> float:
+        """Size of a difference of the margin that is rounding; 0 without a margin."""
+        if self.sample.margin is None:
+            return 0.0
+        return _round_off(self.sample.margin[self.sample.valid], 0.0)
+
+    @cached_property
+    def order(self) -> Order:
+        """Order of the quantity, from the probes on which it occurs at all levels."""
+        fine, coarse = self.part.fine, self.part.coarse
+        both = self.usable & fine.occurs
+        difference = fine.coarser.values - fine.finer.values
+        seen = both if coarse is None else both & coarse.occurs
+        if coarse is None or not seen.any():
+            return judge_order(self.part, difference[both], np.zeros(0), self.round_off)
+        above = coarse.coarser.values - coarse.finer.values
+        return judge_order(self.part, difference[seen], above[seen], self.round_off)
+
+    @cached_property
+    def margin_order(self) -> Order:
+        """Order of the margin, from the probes that did not fail."""
+        fine, coarse = self.part.fine, self.part.coarse
+        difference = _margin_difference(fine)
+        seen = self.usable if coarse is None else self.usable & coarse.valid
+        if coarse is None or not seen.any():
+            return judge_order(self.part, difference[self.usable], np.zeros(0), self.margin_round_off)
+        above = _margin_difference(coarse)
+        return judge_order(self.part, difference[seen], above[seen], self.margin_round_off)
+
+    @cached_property
+    def conditional_order(self) -> Order:
+        """The more cautious of the quantity's order and, where it may not occur, its margin's."""
+        if self.sample.margin is None or self.margin_order.factor <= self.order.factor:
+            return self.order
+        return self.margin_order
+
+    @cached_property
+    def fits(self) -> tuple[DifferenceFit, ...]:
+        """Regression of each candidate's difference on the quantity; empty without enough pairs."""
+        if not self.enough_pairs:
+            return ()
+        given = self.sample.given
+        centre, scale = float(given.mean()), standard_deviation(given)
+        found = []
+        for pair in self.candidates:
+            both = pair.in_both
+            if both.any():
+                upper, lower = pair.upper[both], pair.lower[both]
+                found.append(fit_differences(upper, upper - lower, centre, scale, self.sample.certain))
+        return tuple(found)
+
+    @cached_property
+    def shifts(self) -> tuple[FloatArray, ...]:
+        """F times each regression at the values of the whole sample, each (number that occur,)."""
+        return tuple(self.order.factor * fit(self.sample.given) for fit in self.fits)
+
+    @cached_property
+    def margin_fit(self) -> DifferenceFit:
+        """Regression of the margin's difference on the run's margin; needs a margin and a usable probe."""
+        assert self.sample.margin is not None
+        margin = self.sample.margin[self.sample.valid]
+        at_probes = self.sample.margin[self.part.probes[self.usable]]
+        difference = _margin_difference(self.part.fine)[self.usable]
+        centre, scale = float(margin.mean()), standard_deviation(margin)
+        return fit_differences(at_probes, difference, centre, scale, self.sample.certain)
+
+    @cached_property
+    def margin_shift(self) -> FloatArray:
+        """F times the regression of the margin, (number of valid samples,)."""
+        assert self.sample.margin is not None
+        shift: FloatArray = self.margin_order.factor * self.margin_fit(self.sample.margin[self.sample.valid])
+        return shift
+
+
+def _round_off(values: FloatArray, least: float) -> float:
+    largest = float(np.abs(values).max()) if len(values) else 0.0
+    return max(RELATIVE_ROUND_OFF * largest, least)
+
+
+def _margin_difference(pair: Pair) -> FloatArray:
+    if pair.coarser.margin is None or pair.finer.margin is None:
+        raise ValueError("a quantity with a margin needs it at every level")
+    return pair.coarser.margin - pair.finer.margin

@@ -1,0 +1,118 @@
+"""What the error split reads besides the sample: one quantity at neighbouring levels on the probes."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from aleafield.arrays import BoolArray, FloatArray, IntArray
+
+PART_NAMES = ("space", "quadrature", "time", "noise_modes")
+"""The discretisation parts in the order of the summary."""
+
+
+@dataclass(frozen=True, eq=False)
+class LevelValues:
+    """One quantity on the n_p probes at one level.
+
+    Attributes
+    ----------
+    values : float array (n_p,)
+        NaN where the quantity does not occur or the probe failed.
+    occurs, valid : bool array (n_p,)
+    margin : float array (n_p,) or None
+        As in `aleafield.estimates.Sample`.
+    """
+
+    values: FloatArray
+    occurs: BoolArray
+    valid: BoolArray
+    margin: FloatArray | None
+
+    @staticmethod
+    def of(
+        values: FloatArray, margin: FloatArray | None = None, valid: BoolArray | None = None
+    ) -> LevelValues:
+        """Values whose occurrence follows from the margin (without one the quantity always occurs)."""
+        values = np.asarray(values, dtype=np.float64)
+        valid = np.ones(values.shape, dtype=np.bool_) if valid is None else np.asarray(valid, dtype=np.bool_)
+        return LevelValues(values, valid if margin is None else valid & (margin >= 0.0), valid, margin)
+
+
+@dataclass(frozen=True, eq=False)
+class Pair:
+    """The same probes (inputs and noise paths shared) at two levels that differ in one thing only."""
+
+    coarser: LevelValues
+    finer: LevelValues
+
+    @property
+    def valid(self) -> BoolArray:
+        """Probes that failed at neither level, (n_p,)."""
+        return self.coarser.valid & self.finer.valid
+
+    @property
+    def occurs(self) -> BoolArray:
+        """Probes on which the quantity occurs at both levels, (n_p,)."""
+        return self.coarser.occurs & self.finer.occurs
+
+
+@dataclass(frozen=True, eq=False)
+class PartDifferences:
+    """Everything that one discretisation part is made from.
+
+    With levels a = (n, q, dt), b = (n, 2q, dt), c = (2n, 2q, dt), d = (n, q, dt/2) and the coarser
+    a0 = (n/2, q/2, dt), b0 = (n/2, q, dt), d0 = (n, q, 2dt), n unknowns, q quadrature points, dt the step:
+
+    ========== ========= =============
+    part       `fine`    `coarse`
+    ========== ========= =============
+    quadrature (a, b)    (a0, b0)
+    space      (b, c)    (b0, a)
+    time       (a, d)    (d0, a)
+    ========== ========= =============
+
+    Attributes
+    ----------
+    name : "space", "quadrature", "time" or "noise_modes"
+    probes : int array (n_p,)
+        Positions of the probes in the sample of the run.
+    fine : Pair
+        The difference that is the part.
+    coarse : Pair or None
+        The difference one level up, from which the order is observed; None where there is no such level.
+    ratio_fine, ratio_coarse : float > 1
+        Mesh width (or step) of the coarser over the finer level of each pair.
+    expected_order : float or None
+        Order that theory gives for this part and quantity; None for faster than any power.
+    observed_only : bool
+        No order is proven (step rate): the observed one is used, within 1/2 and 2.
+    least_factor : float
+        Lower bound of the factor; 2 for a value at a point that is not a node of all levels.
+    peak : bool
+        The position of a peak: its difference is a sawtooth of the mesh, and the coarser pair counts too.
+    round_off : float
+        Differences up to this size (units of the quantity) are rounding, besides 1e-13 of its largest value.
+    """
+
+    name: str
+    probes: IntArray
+    fine: Pair
+    coarse: Pair | None
+    ratio_fine: float = 2.0
+    ratio_coarse: float = 2.0
+    expected_order: float | None = 2.0
+    observed_only: bool = False
+    least_factor: float = 1.0
+    peak: bool = False
+    round_off: float = 0.0
+
+    def __post_init__(self) -> None:
+        if self.name not in PART_NAMES:
+            raise ValueError(f"{self.name!r} is none of the parts {', '.join(PART_NAMES)}")
+        if self.ratio_fine <= 1.0 or self.ratio_coarse <= 1.0:
+            raise ValueError("the ratios of mesh widths or steps are coarser over finer, above 1")
+        pairs = [self.fine] + ([] if self.coarse is None else [self.coarse])
+        if any(level.values.shape != self.probes.shape for p in pairs for level in (p.coarser, p.finer)):
+            raise ValueError("all arrays of a part need the shape (n_p,) of its probes")

@@ -1,0 +1,173 @@
+"""Sampling error and discretisation parts put together into one statement."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from aleafield.accounting.bias import Bias, Unmeasured, bias_of, joint_change
+from aleafield.accounting.measured import MeasuredPart
+from aleafield.accounting.order import SMALLEST_ORDER, Order
+from aleafield.accounting.records import PartDifferences
+from aleafield.accounting.statement import ERROR_KEYS, Statement, no_statement, representable
+from aleafield.accounting.statistic import MEAN, Statistic
+from aleafield.estimates import Sample
+
+RESOLUTION = 0.1
+"""A part below this share of the total is honest only inside the total."""
+MODEL_TERM = 0.25
+"""Share of the biases that stays in the interval of a corrected value."""
+
+
+@dataclass(frozen=True)
+class Sampled:
+    """A value with the lengths of its sampling interval to the left and to the right, both >= 0."""
+
+    value: float
+    left: float
+    right: float
+
+
+def split_error(
+    sample: Sample, parts: Sequence[PartDifferences], statistic: Statistic, confidence: float
+) -> Statement:
+    """A statistic of the run with the parts of its error.
+
+    Parameters
+    ----------
+    sample : Sample
+        All samples of the run.
+    parts : sequence of PartDifferences
+        The discretisation parts, each at most once; a part that is absent does not apply.
+    statistic : Statistic
+    confidence : float in (0, 1)
+
+    Returns
+    -------
+    Statement
+        With T -+ (l, r) the sampling interval, B the sum of the sizes and N^2 that of the squared noises of
+        the biases: interval [T - B - sqrt(l^2 + N^2), T + B + sqrt(r^2 + N^2)], `total` its longer side.
+        Biases add linearly: they are not random, and their root-sum-square misses the truth too often.
+    """
+    return combine(sample, [MeasuredPart(sample, part) for part in parts], statistic, confidence)
+
+
+def combine(
+    sample: Sample, measured: Sequence[MeasuredPart], statistic: Statistic, confidence: float
+) -> Statement:
+    """`split_error` for parts that are already measured."""
+    with np.errstate(over="ignore", invalid="ignore"):
+        estimate = statistic.estimate(sample, confidence)
+        if estimate.value is None or estimate.low is None or estimate.high is None:
+            return no_statement(estimate.reason or "not determined")
+        if not math.isfinite(estimate.value):
+            return no_statement("it is beyond the range of double precision")
+        biases = {m.part.name: bias_of(m, statistic, estimate.value, confidence) for m in measured}
+    orders = {m.part.name: _order_for(m, statistic) for m in measured if m.usable.any()}
+    lost = [bias.reason for bias in biases.values() if isinstance(bias, Unmeasured)]
+    known = {name: bias for name, bias in biases.items() if isinstance(bias, Bias)}
+    sampled = Sampled(estimate.value, estimate.value - estimate.low, estimate.high - estimate.value)
+    sampling = None if sample.certain else max(sampled.left, sampled.right)
+    joint = 0.0
+    if not lost and not statistic.has_influence and len(measured) > 1:
+        joint = joint_change(measured, statistic, sampled.value)
+        if math.isinf(joint):
+            lost.append("with all parts together the quantity might not occur at all")
+    if lost:
+        error: dict[str, float | None] = dict.fromkeys(ERROR_KEYS)
+        error.update({name: bias.size for name, bias in known.items()}, sampling=sampling)
+        return representable(Statement(estimate.value, error, None, reason="; ".join(lost), orders=orders))
+    sizes = _raised_to(joint, {name: bias.size for name, bias in known.items()})
+    noise = math.hypot(*(bias.noise for bias in known.values()))
+    plain = _statement(statistic, sampled, sizes, noise if known else None, sampling)
+    notes = _notes(plain, orders, measured)
+    corrected = None
+    if statistic == MEAN and known and not _diverges(plain, orders):
+        corrected = _corrected(sampled, known, noise, sampling)
+    return representable(
+        Statement(plain.value, plain.error, plain.interval, corrected, notes=notes, orders=orders)
+    )
+
+
+def _raised_to(joint: float, sizes: dict[str, float]) -> dict[str, float]:
+    """Sizes whose sum is at least the joint change, each raised in proportion (alike where all are 0)."""
+    total = math.fsum(sizes.values())
+    if joint <= total:
+        return sizes
+    if total == 0.0:
+        return dict.fromkeys(sizes, joint / len(sizes))
+    return {name: size * (joint / total) for name, size in sizes.items()}
+
+
+def _statement(
+    statistic: Statistic,
+    sampled: Sampled,
+    sizes: dict[str, float],
+    noise: float | None,
+    sampling: float | None,
+) -> Statement:
+    """Value, error and interval; probabilities cut to [0, 1], an sd at 0, the total uncut."""
+    bias = math.fsum(sizes.values())
+    left = bias + math.hypot(sampled.left, noise or 0.0)
+    right = bias + math.hypot(sampled.right, noise or 0.0)
+    low, high = sampled.value - left, sampled.value + right
+    if statistic.is_probability or statistic.kind == "sd":
+        low = max(low, 0.0)
+    if statistic.is_probability:
+        high = min(high, 1.0)
+    error: dict[str, float | None] = dict.fromkeys(ERROR_KEYS)
+    error.update(sizes, bias_noise=noise, sampling=sampling, total=max(left, right))
+    return Statement(sampled.value, error, (low, high))
+
+
+def _corrected(sampled: Sampled, biases: dict[str, Bias], noise: float, sampling: float | None) -> Statement:
+    """The mean less its estimated biases, half-width 0.25 B + sqrt(l^2 + N^2).
+
+    Without the model term 0.25 B the interval misses once the sampling error is small.
+    """
+    by = math.fsum(bias.correction for bias in biases.values())
+    moved = replace(sampled, value=sampled.value - by)
+    sizes = {name: MODEL_TERM * bias.size for name, bias in biases.items()}
+    return representable(_statement(MEAN, moved, sizes, noise, sampling))
+
+
+def _order_for(measured: MeasuredPart, statistic: Statistic) -> Order:
+    """The order that judged this statistic."""
+    if statistic.kind == "occurs":
+        return measured.margin_order
+    return measured.order if statistic.kind in ("quantile", "exceed") else measured.conditional_order
+
+
+def _resolved(statement: Statement, name: str) -> bool:
+    size, total = statement.error[name], statement.error["total"]
+    return size is not None and total is not None and size >= RESOLUTION * total
+
+
+def _diverges(statement: Statement, orders: dict[str, Order]) -> bool:
+    """Whether a part that matters does not converge: then its limit cannot be guessed."""
+    return any(
+        order.observed is not None and order.observed < SMALLEST_ORDER and _resolved(statement, name)
+        for name, order in orders.items()
+    )
+
+
+def _notes(
+    statement: Statement, orders: dict[str, Order], measured: Sequence[MeasuredPart]
+) -> tuple[str, ...]:
+    """Orders that disagree, parts below the resolution of the split, probes that failed."""
+    notes = [
+        f"{name}: {order.message}"
+        for name, order in orders.items()
+        if order.message is not None and _resolved(statement, name)
+    ]
+    small = [name for name in orders if not _resolved(statement, name)]
+    if small:
+        notes.append(f"below the resolution of the split: {', '.join(small)}")
+    for m in measured:
+        failed = int((~m.usable).sum())
+        if failed:
+            notes.append(f"{m.part.name}: {failed} of {len(m.usable)} probes failed and are left out")
+    return tuple(notes)

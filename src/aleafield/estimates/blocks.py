@@ -1,0 +1,79 @@
+"""Means over independent blocks, and the quantiles of their standardised errors."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from scipy.special import ndtri, stdtrit
+
+from aleafield.arrays import FloatArray, IntArray
+
+
+def student(confidence: float, degrees: int) -> float:
+    """Two-sided quantile of Student's t: the half-width in standard errors at a confidence."""
+    return float(stdtrit(degrees, 0.5 + 0.5 * confidence))
+
+
+def normal(confidence: float) -> float:
+    """Two-sided quantile of the standard normal law."""
+    return float(ndtri(0.5 + 0.5 * confidence))
+
+
+@dataclass(frozen=True)
+class BlockMean:
+    """A mean with the standard error that the spread between blocks gives.
+
+    Attributes
+    ----------
+    value : float
+    standard_error : float
+        Infinite with fewer than two blocks.
+    degrees : int
+        Degrees of freedom, the number of blocks that hold a value, less one.
+    """
+
+    value: float
+    standard_error: float
+    degrees: int
+
+    def half_width(self, confidence: float) -> float:
+        """Half-width of the t interval; infinite with fewer than two blocks."""
+        if self.degrees < 1:
+            return float("inf")
+        return student(confidence, self.degrees) * self.standard_error
+
+
+def plain_mean(values: FloatArray) -> BlockMean:
+    """Mean of independent values (n,), n >= 1, and its standard error s / sqrt(n)."""
+    n = len(values)
+    if n < 2:
+        return BlockMean(float(values[0]), float("inf"), 0)
+    if values.min() == values.max():
+        return BlockMean(float(values[0]), 0.0, n - 1)
+    return BlockMean(float(values.mean()), float(values.std(ddof=1) / np.sqrt(n)), n - 1)
+
+
+def block_mean(values: FloatArray, block: IntArray, n_blocks: int) -> BlockMean:
+    """Pooled mean of values (n,), n >= 1, with the jackknife over blocks.
+
+    The mean is the ratio of the sum to the count, and each block in turn is left out of both.  For blocks of
+    equal length this is the mean of the block means, with their standard deviation over the root of their
+    number.  Blocks without a value are left out: they carry no information on a mean of what occurs.
+    """
+    centre = float(values[0]) if values.min() == values.max() else float(values.mean())
+    count = np.bincount(block, minlength=n_blocks).astype(np.float64)
+    total = np.bincount(block, weights=values - centre, minlength=n_blocks)
+    total, count = total[count > 0], count[count > 0]
+    n = len(count)
+    if n < 2:
+        return BlockMean(centre, float("inf"), 0)
+    left_out = (total.sum() - total) / (count.sum() - count)
+    deviation = left_out - left_out.mean()
+    error = float(np.sqrt((n - 1) / n * (deviation @ deviation)))
+    return BlockMean(centre, error, n - 1)
+
+
+def mean_of(values: FloatArray, block: IntArray, n_blocks: int) -> BlockMean:
+    """Mean over independent values (one block in all: plain Monte Carlo) or over blocks."""
+    return plain_mean(values) if n_blocks == 1 else block_mean(values, block, n_blocks)

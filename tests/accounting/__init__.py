@@ -1,0 +1,1 @@
+"""The error split recovers planted errors."""
