@@ -1,0 +1,103 @@
+"""All figures of a report, in the order of the page."""
+
+from __future__ import annotations
+
+import re
+from dataclasses import dataclass
+from typing import Literal
+
+import numpy as np
+
+from aleafield.report.data import ReportData
+from aleafield.report.figures.distribution import distribution
+from aleafield.report.figures.error_split import error_split
+from aleafield.report.figures.field_curves import course, profile
+from aleafield.report.figures.field_maps import mean_map, spread_map
+from aleafield.report.findings import QuantityFindings
+from aleafield.report.svg import Drawing
+
+Section = Literal["error", "field", "distribution"]
+
+
+@dataclass(frozen=True)
+class Figure:
+    """A drawing with its caption; `quantity` is empty for pictures of the field."""
+
+    section: Section
+    quantity: str
+    drawing: Drawing
+    caption: str
+
+
+def report_figures(data: ReportData, findings: list[QuantityFindings]) -> list[Figure]:
+    """The error split of every quantity, the field as far as it is stored, every distribution."""
+    names = drawing_names([found.name for found in findings])
+    figures = []
+    for found in findings:
+        split = error_split(found, f"error-{names[found.name]}")
+        if split is not None:
+            figures.append(Figure("error", found.name, split, _split_caption(found)))
+    figures.extend(_field_figures(data))
+    for found in findings:
+        values = data.values.get(found.name)
+        drawn = None if values is None else distribution(found, values, f"distribution-{names[found.name]}")
+        if drawn is not None and values is not None:
+            count = int(np.isfinite(values).sum())
+            figures.append(Figure("distribution", found.name, drawn, _distribution_caption(found, count)))
+    return figures
+
+
+def figure_files(figures: list[Figure]) -> dict[str, str]:
+    """Contents of the figure files by file name."""
+    return {f"{figure.drawing.name}.svg": figure.drawing.document() for figure in figures}
+
+
+def drawing_names(quantities: list[str]) -> dict[str, str]:
+    """A short name for each quantity, different without regard to case, of letters, digits and hyphens.
+
+    >>> drawing_names(["peak height", "Peak-height"])
+    {'peak height': 'peak-height', 'Peak-height': 'peak-height-2'}
+    """
+    found: dict[str, str] = {}
+    for quantity in quantities:
+        plain = re.sub(r"[^a-z0-9]+", "-", quantity.lower()).strip("-") or "quantity"
+        name, number = plain, 1
+        while name in found.values():
+            number += 1
+            name = f"{plain}-{number}"
+        found[quantity] = name
+    return found
+
+
+def _split_caption(found: QuantityFindings) -> str:
+    return (
+        f"Error of each statistic of {found.name}: the whole bar is the total half-width, written at its "
+        "end. Bounds on biases add up; the random parts (sampling, noise of the biases) add in quadrature "
+        "and share their length by their squares."
+    )
+
+
+def _distribution_caption(found: QuantityFindings, count: int) -> str:
+    text = f"{count} stored values of {found.name}. Below the bars: estimates (dots) with their intervals."
+    if found.exceed:
+        text += " Dashed: the levels asked for, with the probability of lying above."
+    if found.occurs is not None:
+        text += " Bars, mean and quantiles are given that it occurs; the probabilities are not."
+    return text
+
+
+def _field_figures(data: ReportData) -> list[Figure]:
+    record, units = data.fields, data.units
+    if record is None:
+        return []
+    bands = (
+        "Mean of u over all samples; the bands hold the middle 50 % and 90 % of "
+        f"{record.band_samples} samples, point by point."
+    )
+    drawings = (
+        (mean_map(record, units), "Mean of u over space and time, over all samples."),
+        (spread_map(record, units), "Standard deviation of u from sample to sample."),
+        (profile(record, units), bands),
+        (course(record, units), bands),
+    )
+    return [Figure("field", "", drawing, caption) for drawing, caption in drawings]

@@ -1,0 +1,85 @@
+"""The error split as a picture: one bar per statistic, cut into the parts of its total half-width."""
+
+from __future__ import annotations
+
+from aleafield.report.findings import Finding, QuantityFindings, with_units
+from aleafield.report.parts import PARTS, Part
+from aleafield.report.rounding import percent, short, typographic
+from aleafield.report.svg import Drawing, box, label, part_style, text_width
+
+_LEFT, _WIDTH, _RIGHT = 150.0, 640.0, 150.0
+_BAR, _ROW = 24.0, 36.0
+
+
+def error_split(findings: QuantityFindings, name: str) -> Drawing | None:
+    """Bars of all statistics that have a total; every bar stands for its whole total.
+
+    The biases have their own lengths; the random parts add in quadrature and divide their common length in
+    proportion to their squares, so that each bar is exactly filled.
+
+    Returns
+    -------
+    Drawing, or None where no statistic has a positive total
+    """
+    rows = [(found, shares) for found in findings.all() if (shares := found.shares())]
+    if not rows:
+        return None
+    present = [part for part in PARTS if any(part in shares for _, shares in rows)]
+    legend, legend_height = _legend(present)
+    drawing = Drawing(
+        name,
+        f"Where the error of {findings.name} comes from",
+        " ".join(f"{found.name}: {spoken(shares)}." for found, shares in rows),
+        width=_LEFT + _WIDTH + _RIGHT,
+        height=legend_height + _ROW * len(rows) + 6,
+        style=part_style([part.style for part in PARTS]),
+    )
+    for part, x, y in legend:
+        drawing.add(
+            box(x, y, 12, 12, f"part-{part.style}", part.meaning, radius=2), label(x + 18, y + 10, part.name)
+        )
+    for number, (found, shares) in enumerate(rows):
+        _draw_row(drawing, found, shares, legend_height + _ROW * number + 4)
+    return drawing
+
+
+def spoken(shares: dict[Part, float]) -> str:
+    """Shares in words, largest first, as in "sampling 62 %, space 38 %"."""
+    ordered = sorted(shares.items(), key=lambda item: -item[1])
+    return ", ".join(f"{part.name} {percent(share)}" for part, share in ordered if share > 0)
+
+
+def _legend(parts: list[Part]) -> tuple[list[tuple[Part, float, float]], float]:
+    """Places of the entries in lines that do not overflow, and the height they take."""
+    places = []
+    x, y = _LEFT, 6.0
+    for part in parts:
+        room = 18 + text_width(part.name) + 18
+        if x > _LEFT and x + room > _LEFT + _WIDTH + _RIGHT:
+            x, y = _LEFT, y + 20
+        places.append((part, x, y))
+        x += room
+    return places, y + 24
+
+
+def _draw_row(drawing: Drawing, found: Finding, shares: dict[Part, float], y: float) -> None:
+    middle = y + _BAR / 2 + 4
+    drawing.add(label(_LEFT - 10, middle, found.name, None, "end"))
+    x = _LEFT
+    for part, share in shares.items():
+        width = share * _WIDTH
+        if width < 0.25:
+            continue
+        size = with_units(typographic(short(found.error[part.key], 2)), found.units)
+        says = f"{part.name}: {size}, {percent(share)} of the total"
+        drawing.add(box(x, y, max(width - 1.5, 0.5), _BAR, f"part-{part.style}", says, radius=2))
+        for text in (f"{part.name} {percent(share)}", percent(share)):
+            if text_width(text) + 10 < width:
+                drawing.add(label(x + width / 2, middle, text, f"on-{part.style}", "middle"))
+                break
+        x += width
+    half_width = found.rounded.half_width
+    assert half_width is not None
+    drawing.add(
+        label(_LEFT + _WIDTH + 10, middle, f"± {with_units(typographic(half_width), found.units)}", "strong")
+    )

@@ -1,0 +1,20 @@
+"""The summary as a notebook shows it: the report's table of answers."""
+
+from __future__ import annotations
+
+from aleafield.report.data import Summary
+from aleafield.report.markup import element
+from aleafield.report.tables import answers
+
+
+def html_table(summary: Summary) -> str:
+    """A fragment of HTML with mean, interval, spread and main error parts of every quantity.
+
+    Parameters
+    ----------
+    summary : as in summary.json
+    """
+    failed = summary["failed"]["count"]
+    notes = [f"{failed} samples failed and are left out."] if failed else []
+    notes.extend(summary["warnings"])
+    return element("div", answers(summary), *(element("p", note) for note in notes))

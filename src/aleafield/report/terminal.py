@@ -1,0 +1,128 @@
+"""The result of a run as lines for a terminal."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+from aleafield.report.data import Summary
+from aleafield.report.findings import Finding, QuantityFindings, quantity_findings, with_units
+from aleafield.report.parts import PARTS, Part
+from aleafield.report.rounding import DASH, percent
+from aleafield.report.verdict import METHODS, confidence_text, main_parts
+
+_BAR = 20
+_COLOURS = {
+    "space": "34",
+    "quadrature": "96",
+    "time": "32",
+    "noise_modes": "33",
+    "surrogate": "35",
+    "bias_noise": "90",
+    "sampling": "91",
+}
+
+
+def result_lines(summary: Summary, files: Sequence[str] = (), colour: bool = False) -> list[str]:
+    """The table of a run and the lines below it.
+
+    Parameters
+    ----------
+    summary : as in summary.json
+    files : names of what the run left
+    colour : whether escape sequences may be used; False on anything but a terminal and where NO_COLOR is set
+
+    Returns
+    -------
+    lines : quantity, mean and interval, spread, where the error comes from; then quantiles, exceedance,
+        occurrence, failures, warnings, files
+    """
+    findings = quantity_findings(summary)
+    heads = ("quantity", f"mean and {confidence_text(summary)} interval", "spread (sd)", "error comes from")
+    rows = [(found.name, _estimate(found.mean), _spread(found.sd), _cause(found.mean)) for found in findings]
+    bars = [_bar(found.mean) for found in findings] if colour else None
+    lines = _aligned([heads, *rows], bars)
+    if colour:
+        lines[0] = f"\x1b[1m{lines[0]}\x1b[0m"
+    for found in findings:
+        details = _details(found)
+        if details:
+            lines += ["", found.name, *_aligned(details, None, indent="  ")]
+    lines.append("")
+    lines += _closing(summary)
+    if files:
+        lines.append("files: " + ", ".join(files))
+    return lines
+
+
+def _estimate(found: Finding) -> str:
+    """Value, unit and interval on one line, or why there is none."""
+    if found.value is None:
+        return found.reason or "-"
+    rounded = found.rounded
+    value = with_units(rounded.value, found.units)
+    if found.interval == (None, None):
+        return f"{value} ({found.reason or 'no interval'})"
+    return f"{value} [{rounded.low or '-inf'}, {rounded.high or 'inf'}]"
+
+
+def _spread(found: Finding) -> str:
+    return "-" if found.value is None else with_units(found.rounded.value, found.units)
+
+
+def _cause(found: Finding) -> str:
+    return main_parts(found).replace(DASH, "-")
+
+
+def _details(found: QuantityFindings) -> list[tuple[str, ...]]:
+    rest = [*found.quantiles.values(), *found.exceed.values()]
+    if found.occurs is not None:
+        rest.append(found.occurs)
+    return [(one.name, _estimate(one), _cause(one)) for one in rest]
+
+
+def _closing(summary: Summary) -> list[str]:
+    lines = []
+    failed, sampling, cost = summary["failed"], summary["sampling"], summary["cost"]
+    if sampling is not None:
+        lines.append(
+            f"{sampling['samples']} samples ({METHODS[sampling['method']]}), {failed['count']} failed"
+        )
+    elif failed["count"]:
+        lines.append("the run failed: a value was not finite")
+    share = percent(cost["split_share"])
+    lines.append(f"computed in {cost['measured_s']:.3g} s, {share} of the work for the error split")
+    aim = summary["aim"]
+    if aim is not None:
+        lines.append(f"aim {'met' if aim['met'] else 'MISSED'}: {aim['reason']}")
+    lines += [f"warning: {warning}" for warning in summary["warnings"]]
+    return lines
+
+
+def _aligned(rows: Sequence[tuple[str, ...]], bars: Sequence[str] | None, indent: str = "") -> list[str]:
+    """Columns padded to their widest cell, two spaces apart; bars stand before the last column."""
+    widths = [max(len(row[column]) for row in rows) for column in range(len(rows[0]) - 1)]
+    lines = []
+    for number, row in enumerate(rows):
+        cells = [cell.ljust(width) for cell, width in zip(row, widths, strict=False)]
+        if bars is not None:
+            cells.append(" " * _BAR if number == 0 else bars[number - 1])
+        lines.append((indent + "  ".join([*cells, row[-1]])).rstrip())
+    return lines
+
+
+def _bar(found: Finding) -> str:
+    """The shares as coloured blocks, `_BAR` wide."""
+    shares = found.shares()
+    if not shares:
+        return " " * _BAR
+    text, reached, drawn = "", 0.0, 0
+    for part in PARTS:
+        reached += shares.get(part, 0.0)
+        blocks = round(_BAR * reached) - drawn
+        drawn += blocks
+        text += _painted(part, "\N{FULL BLOCK}" * blocks)
+    return text + " " * (_BAR - drawn)
+
+
+def _painted(part: Part, text: str) -> str:
+    return f"\x1b[{_COLOURS[part.key]}m{text}\x1b[0m" if text else ""
