@@ -1,0 +1,170 @@
+"""Firing rates f(u)."""
+
+from __future__ import annotations
+
+from abc import ABC, abstractmethod
+from collections.abc import Iterator
+from dataclasses import dataclass
+from typing import Literal, Self
+
+import numpy as np
+from scipy.special import expit, ndtr
+
+from aleafield.arrays import FloatArray
+from aleafield.field.formula_term import FormulaTerm
+from aleafield.field.parameter import Bindable, Binding, Bound, Parameter, Uncertain, number, per_sample
+from aleafield.units import ACTIVITY, DIMENSIONLESS, PER_ACTIVITY
+
+Smoothness = Literal["smooth", "kinked", "step"]
+
+
+class Rate(Bindable, ABC):
+    """A firing rate; bound numbers are floats or (S,), activities have shape (S, P)."""
+
+    @property
+    @abstractmethod
+    def smoothness(self) -> Smoothness:
+        """"smooth", "kinked" (continuous, derivative jumps) or "step"."""
+
+    @property
+    def bounded(self) -> bool:
+        """Whether f is bounded, as the convergence theory asks."""
+        return True
+
+    @abstractmethod
+    def __call__(self, u: FloatArray) -> FloatArray:
+        """f(u), shape (S, P)."""
+
+    @abstractmethod
+    def slope(self) -> Bound | None:
+        """Largest |f'| of a bound rate, float or (S,); None where it is not known in closed form."""
+
+
+@dataclass(frozen=True)
+class LogisticRate(Rate):
+    """maximum / (1 + exp(-gain (u - threshold)))."""
+
+    gain: Parameter = number(PER_ACTIVITY, positive=True)
+    threshold: Parameter = number(ACTIVITY, default=0.0)
+    maximum: Parameter = number(DIMENSIONLESS, default=1.0)
+
+    @property
+    def smoothness(self) -> Smoothness:
+        return "smooth"
+
+    def __call__(self, u: FloatArray) -> FloatArray:
+        argument = u - per_sample(self.threshold, 1)  # type: ignore[arg-type]
+        argument *= per_sample(self.gain, 1)  # type: ignore[arg-type]
+        return np.asarray(expit(argument) * per_sample(self.maximum, 1))  # type: ignore[arg-type]
+
+    def slope(self) -> Bound | None:
+        return abs(self.maximum * self.gain) / 4  # type: ignore[operator, no-any-return]
+
+
+@dataclass(frozen=True)
+class NormalOgiveRate(Rate):
+    """maximum Phi(gain (u - threshold)), Phi the standard normal distribution function."""
+
+    gain: Parameter = number(PER_ACTIVITY, positive=True)
+    threshold: Parameter = number(ACTIVITY, default=0.0)
+    maximum: Parameter = number(DIMENSIONLESS, default=1.0)
+
+    @property
+    def smoothness(self) -> Smoothness:
+        return "smooth"
+
+    def __call__(self, u: FloatArray) -> FloatArray:
+        argument = u - per_sample(self.threshold, 1)  # type: ignore[arg-type]
+        argument *= per_sample(self.gain, 1)  # type: ignore[arg-type]
+        return np.asarray(ndtr(argument) * per_sample(self.maximum, 1))  # type: ignore[arg-type]
+
+    def slope(self) -> Bound | None:
+        return abs(self.maximum * self.gain) / np.sqrt(2 * np.pi)  # type: ignore[operator, no-any-return]
+
+
+@dataclass(frozen=True)
+class RampRate(Rate):
+    """maximum min(1, max(0, gain (u - threshold)))."""
+
+    gain: Parameter = number(PER_ACTIVITY, positive=True)
+    threshold: Parameter = number(ACTIVITY, default=0.0)
+    maximum: Parameter = number(DIMENSIONLESS, default=1.0)
+
+    @property
+    def smoothness(self) -> Smoothness:
+        return "kinked"
+
+    def __call__(self, u: FloatArray) -> FloatArray:
+        argument = u - per_sample(self.threshold, 1)  # type: ignore[arg-type]
+        argument *= per_sample(self.gain, 1)  # type: ignore[arg-type]
+        return np.asarray(np.clip(argument, 0.0, 1.0) * per_sample(self.maximum, 1))  # type: ignore[arg-type]
+
+    def slope(self) -> Bound | None:
+        return abs(self.maximum * self.gain)  # type: ignore[operator, arg-type]
+
+
+@dataclass(frozen=True)
+class StepRate(Rate):
+    """maximum where u > threshold, else 0; integrated with its threshold crossings resolved."""
+
+    threshold: Parameter = number(ACTIVITY, default=0.0)
+    maximum: Parameter = number(DIMENSIONLESS, default=1.0)
+
+    @property
+    def smoothness(self) -> Smoothness:
+        return "step"
+
+    def __call__(self, u: FloatArray) -> FloatArray:
+        return np.asarray((u > per_sample(self.threshold, 1)) * per_sample(self.maximum, 1))  # type: ignore[arg-type]
+
+    def slope(self) -> Bound | None:
+        return None
+
+
+@dataclass(frozen=True)
+class LinearRate(Rate):
+    """gain (u - threshold): not bounded."""
+
+    gain: Parameter = number(PER_ACTIVITY, default=1.0)
+    threshold: Parameter = number(ACTIVITY, default=0.0)
+
+    @property
+    def smoothness(self) -> Smoothness:
+        return "smooth"
+
+    @property
+    def bounded(self) -> bool:
+        return False
+
+    def __call__(self, u: FloatArray) -> FloatArray:
+        return np.asarray((u - per_sample(self.threshold, 1)) * per_sample(self.gain, 1))  # type: ignore[arg-type]
+
+    def slope(self) -> Bound | None:
+        return abs(self.gain)  # type: ignore[arg-type]
+
+
+@dataclass(frozen=True)
+class FormulaRate(Rate):
+    """f(u) by a formula of u."""
+
+    term: FormulaTerm
+
+    def uncertain(self, prefix: str) -> Iterator[Uncertain]:
+        return self.term.uncertain(prefix)
+
+    def bind(self, prefix: str, binding: Binding) -> Self:
+        return type(self)(self.term.bind(prefix, binding))
+
+    @property
+    def smoothness(self) -> Smoothness:
+        return "kinked" if self.term.kinks_in("u") else "smooth"
+
+    @property
+    def bounded(self) -> bool:
+        return False
+
+    def __call__(self, u: FloatArray) -> FloatArray:
+        return np.array(np.broadcast_to(self.term.evaluate({"u": u}, axes=1), u.shape))
+
+    def slope(self) -> Bound | None:
+        return None

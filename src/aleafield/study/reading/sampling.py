@@ -1,0 +1,114 @@
+"""[sampling], [dependence] and [aim]: how samples are drawn, and what is demanded of the answer."""
+
+from __future__ import annotations
+
+import re
+from collections.abc import Sequence
+from typing import cast
+
+from aleafield.errors import InputError
+from aleafield.formula import constant, nearest_name
+from aleafield.randomness.inputs import Dependence
+from aleafield.sampling.request import SamplingRequest
+from aleafield.study.reading.table import Table, finite, not_built_yet, shown
+from aleafield.study.study import Aim
+
+METHODS = ("auto", "monte carlo", "quasi-monte carlo")
+_LATER = 'use "monte carlo" or "quasi-monte carlo" for now'
+UNBUILT_METHODS = {"polynomial chaos": _LATER, "multilevel": _LATER}
+_PER_CENT = re.compile(r"\s*(.+?)\s*%\s*")
+
+
+def read_sampling(table: Table) -> SamplingRequest:
+    """Method and count of samples; auto and 1024 where they are left out.
+
+    Raises
+    ------
+    InputError
+        For methods that are unknown or not built yet, and counts that are no whole numbers.
+    """
+    table.only(("method", "samples", "noise_repeats"), "[sampling]")
+    method = table.choice("method", METHODS, "auto", UNBUILT_METHODS)
+    if table.value("samples", None) == "auto":
+        raise not_built_yet(table.key("samples"), "'auto'", "give a number of samples for now, as 1024")
+    samples = table.integer("samples", 1024, least=1)
+    repeats = table.integer("noise_repeats", 1, least=1)
+    if repeats > 1:
+        instead = "leave it out: without noise every repeat would be the same"
+        raise not_built_yet(table.key("noise_repeats"), f"noise (here {repeats} repeats of it)", instead)
+    return SamplingRequest(method, samples)  # type: ignore[arg-type]
+
+
+def read_dependence(table: Table) -> Dependence:
+    """How inputs depend on one another.
+
+    Whether the inputs exist and the correlations can hold together is for the design of the samples to say.
+
+    Raises
+    ------
+    InputError
+        For a list of another shape.
+    """
+    table.only(("rank_correlation", "sampled_together"), "[dependence]")
+    pairs: list[tuple[str, str, float]] = []
+    needed = 'a list of entries ["input", "input", number] is needed, as [["rate.gain", "h", 0.4]]'
+    entries = table.entries("rank_correlation", needed) if "rank_correlation" in table else []
+    for place, entry in enumerate(entries):
+        key = f"{table.key('rank_correlation')}.{place}"
+        if not isinstance(entry, list) or len(entry) != 3:
+            raise InputError(key, f"{_entry_shown(entry)} given", needed)
+        for name in entry[:2]:
+            if not isinstance(name, str):
+                raise InputError(key, f"{shown(name)} given", needed)
+        pairs.append((entry[0], entry[1], finite(entry[2], key)))
+    return Dependence(tuple(pairs), table.flag("sampled_together", False))
+
+
+def _entry_shown(entry: object) -> str:
+    return f"a list of {len(entry)}" if isinstance(entry, list) else shown(entry)
+
+
+def read_aim(table: Table, names: Sequence[str]) -> tuple[Aim | None, float]:
+    """The tolerance demanded, if any, and the confidence of all intervals; `names` are the quantities'.
+
+    Raises
+    ------
+    InputError
+        For an aim in computing time (not built yet), an unknown quantity, and numbers that cannot be.
+    """
+    table.only(("tolerance", "computing_time", "quantity", "confidence"), "[aim]")
+    if "computing_time" in table:
+        instead = "fix nodes, samples and time step, and demand a tolerance where one is needed"
+        raise not_built_yet(table.key("computing_time"), "an aim in computing time", instead)
+    confidence = finite(table.value("confidence", 0.95), table.key("confidence"))
+    if not 0 < confidence < 1:
+        raise InputError(
+            table.key("confidence"), f"{confidence!r} given", "a number between 0 and 1 is needed, as 0.95"
+        )
+    if "tolerance" not in table:
+        if "quantity" in table:
+            raise InputError(
+                table.key("quantity"), "nothing reads it: there is no tolerance", 'add tolerance = "1 %"'
+            )
+        return None, confidence
+    value = table.value("tolerance")
+    tolerance, relative = _tolerance(value, table.key("tolerance"))
+    quantity = table.value("quantity", names[0])
+    if quantity not in names:
+        nearest = nearest_name(quantity, names) if isinstance(quantity, str) else None
+        needed = "the quantities are " + ", ".join(names)
+        raise InputError(table.key("quantity"), f"{shown(quantity)} is no quantity", needed, nearest=nearest)
+    text = " ".join(value.split()) if isinstance(value, str) else repr(cast("int | float", value))
+    return Aim(tolerance, relative, quantity, text), confidence
+
+
+def _tolerance(value: object, key: str) -> tuple[float, bool]:
+    """Half-width, as a share where it is given in per cent."""
+    needed = 'a positive number in the units of the quantity, or per cent of its mean as "1 %", is needed'
+    per_cent = _PER_CENT.fullmatch(value) if isinstance(value, str) else None
+    if isinstance(value, str) and per_cent is None:
+        raise InputError(key, f"{shown(value)} given", needed)
+    number = constant(per_cent[1], key) / 100 if per_cent else finite(value, key)
+    if not number > 0:
+        raise InputError(key, f"{shown(value)} given", needed)
+    return number, per_cent is not None

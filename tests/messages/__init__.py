@@ -1,0 +1,1 @@
+"""Broken study files, each with the message it must give."""
