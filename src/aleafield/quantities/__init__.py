@@ -1,0 +1,60 @@
+"""Quantities: the question asked of a field, separate from how it is answered."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+
+from aleafield.quantities.active_width import ActiveWidth
+from aleafield.quantities.averages import Integral, Mean, Norm
+from aleafield.quantities.extrema import Maximum, Minimum, PeakPosition
+from aleafield.quantities.first_passage import TimeToLevel
+from aleafield.quantities.formula_quantity import FormulaQuantity
+from aleafield.quantities.front import FrontPosition, FrontSpeed
+from aleafield.quantities.function_quantity import FunctionQuantity
+from aleafield.quantities.point_value import Value
+from aleafield.quantities.quantity import At, Observer, Over, Quantity, Reduction, When
+from aleafield.quantities.spectral_power import SpectralPower
+
+MEASURES: Mapping[str, type[Quantity]] = {
+    measure.measure: measure
+    for measure in (
+        Value,
+        Mean,
+        Maximum,
+        Minimum,
+        PeakPosition,
+        Norm,
+        Integral,
+        ActiveWidth,
+        FrontPosition,
+        FrontSpeed,
+        TimeToLevel,
+        SpectralPower,
+        FormulaQuantity,
+    )
+}
+"""Name of a measure in the study file -> class."""
+
+__all__ = [
+    "MEASURES",
+    "ActiveWidth",
+    "At",
+    "FormulaQuantity",
+    "FrontPosition",
+    "FrontSpeed",
+    "FunctionQuantity",
+    "Integral",
+    "Maximum",
+    "Mean",
+    "Minimum",
+    "Norm",
+    "Observer",
+    "Over",
+    "PeakPosition",
+    "Quantity",
+    "Reduction",
+    "SpectralPower",
+    "TimeToLevel",
+    "Value",
+    "When",
+]
