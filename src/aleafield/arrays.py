@@ -25,5 +25,6 @@ def batch_product(batch: FloatArray, matrix: FloatArray) -> FloatArray:
     missing = -n_samples % _BLOCK
     if missing:
         batch = np.concatenate((batch, np.zeros((missing, n))))
-    product = np.matmul(batch.reshape(-1, _BLOCK, n), matrix)
-    return product.reshape(n_samples + missing, matrix.shape[1])[:n_samples]
+    product: FloatArray = np.matmul(batch.reshape(-1, _BLOCK, n), matrix)
+    rows: FloatArray = product.reshape(n_samples + missing, matrix.shape[1])[:n_samples]
+    return rows

@@ -140,8 +140,10 @@ def test_rows_do_not_depend_on_the_batch(case: Case) -> None:
 
 @pytest.mark.parametrize("projector", ["piecewise linear", "chebyshev"])
 def test_a_sample_that_blows_up_disturbs_no_other(projector: str) -> None:
-    """u' = -u + 2 u^3 from a: 1/u^2 = 2 + (1/a^2 - 2) exp(2 t) for the mean field, infinite in finite time for
-    a > 0.71; the batch goes on, the failure has its time, nothing is printed (warnings are errors here)."""
+    """u' = -u + 2 u^3 from a: 1/u^2 = 2 + (1/a^2 - 2) exp(2 t), infinite in finite time for a > 0.71.
+
+    The batch goes on, the failure has its time, and nothing is printed (warnings are errors here).
+    """
     equation = FieldEquation(
         Interval(0.0, 2.0),
         lone(FormulaKernel(term("1"))),

@@ -42,7 +42,8 @@ class FieldMoments:
     def of(fields: FloatArray, valid: BoolArray) -> FieldMoments:
         """Moments of the valid rows of fields (S, K, n)."""
         kept = np.where(valid[:, None, None], fields, 0.0)
-        return FieldMoments(int(valid.sum()), accurate_sum(kept), accurate_sum(kept**2))
+        with np.errstate(all="ignore"):  # the square of a huge finite field is infinite
+            return FieldMoments(int(valid.sum()), accurate_sum(kept), accurate_sum(kept**2))
 
     def __add__(self, other: FieldMoments) -> FieldMoments:
         return FieldMoments(

@@ -48,8 +48,8 @@ class Kernel(Bindable, ABC):
 
     @property
     @abstractmethod
-    def smooth(self) -> bool:
-        """Whether w is smooth everywhere, the diagonal included."""
+    def smooth(self) -> bool | None:
+        """Whether w is smooth everywhere, the diagonal included; None where only its values can tell."""
 
     @abstractmethod
     def matrix(self, x: FloatArray, y: FloatArray, domain: Domain) -> FloatArray:
@@ -100,16 +100,25 @@ class GaussianKernel(Kernel):
     def matrix(self, x: FloatArray, y: FloatArray, domain: Domain) -> FloatArray:
         z = domain.distance(x, y)
         width = _broadcast(self.width, z)  # type: ignore[arg-type]
-        scale = _broadcast(self.strength, z) / (np.sqrt(2 * np.pi) * width)  # type: ignore[arg-type]
+        strength = _broadcast(self.strength, z)  # type: ignore[arg-type]
+        scale = strength / (np.sqrt(2 * np.pi) * width)
         total = np.exp(-0.5 * (z / width) ** 2)
-        if domain.periodic:
-            # an image counts where it lies within 9 widths of the farthest point; the count is the sample's own
-            reach = np.ceil(9.0 * np.asarray(width) / domain.length + 0.5)
-            for image in range(1, int(reach.max()) + 1):
-                shift = image * domain.length
-                both = np.exp(-0.5 * ((z - shift) / width) ** 2) + np.exp(-0.5 * ((z + shift) / width) ** 2)
-                total = total + np.where(image <= reach, both, 0.0)
-        return np.asarray(scale * total)
+        if not domain.periodic:
+            return np.asarray(scale * total)
+        # narrow: an image counts within 9 widths of the farthest point, and the count is the sample's own
+        wide = np.asarray(width) > 0.5 * domain.length
+        reach = np.where(wide, 0.0, np.ceil(9.0 * np.asarray(width) / domain.length + 0.5))
+        for image in range(1, int(reach.max()) + 1):
+            shift = image * domain.length
+            both = np.exp(-0.5 * ((z - shift) / width) ** 2) + np.exp(-0.5 * ((z + shift) / width) ** 2)
+            total = total + np.where(image <= reach, both, 0.0)
+        summed = np.asarray(scale * total)
+        if not wide.any():
+            return summed
+        # wide: three terms of the Fourier series, the fourth is below 1e-33 of the first
+        phase = 2 * np.pi / domain.length
+        series = 0.5 + sum(np.exp(-0.5 * (k * phase * width) ** 2) * np.cos(k * phase * z) for k in (1, 2, 3))
+        return np.where(wide, strength * 2 / domain.length * series, summed)
 
     def symbol(self, k: IntArray, length: float) -> FloatArray | None:
         frequency = 2 * np.pi * k / length
@@ -178,13 +187,14 @@ class CosineKernel(Kernel):
 
     def matrix(self, x: FloatArray, y: FloatArray, domain: Domain) -> FloatArray:
         phase = 2 * np.pi * (x - y) / domain.length
-        total: FloatArray = np.zeros(phase.shape)
-        for k, a in enumerate(self.coefficients):
-            total = total + per_sample(a, phase.ndim) * np.cos(k * phase)  # type: ignore[arg-type]
-        return total
+        waves = [
+            _broadcast(a, phase) * np.cos(k * phase)  # type: ignore[arg-type]
+            for k, a in enumerate(self.coefficients)
+        ]
+        return np.asarray(sum(waves))
 
     def symbol(self, k: IntArray, length: float) -> FloatArray | None:
-        shapes = [np.shape(a) for a in self.coefficients]
+        shapes = [np.shape(a) for a in self.coefficients]  # type: ignore[arg-type]
         total = np.zeros(np.broadcast_shapes(*shapes) + (len(k),))
         for order, a in enumerate(self.coefficients):
             factor = length if order == 0 else length / 2
@@ -217,12 +227,8 @@ class FormulaKernel(Kernel):
         return not (self.term.depends_on("x") or self.term.depends_on("y"))
 
     @property
-    def smooth(self) -> bool:
-        return not any(self.term.kinks_in(v) for v in ("x", "y", "r")) and not self._odd_in_distance()
-
-    def _odd_in_distance(self) -> bool:
-        """r itself has a kink at 0; only even powers of it are smooth, which a formula shows by r**2."""
-        return any(f.has_odd_power_of("r") for f in self.term.formulas())
+    def smooth(self) -> bool | None:
+        return None
 
     def matrix(self, x: FloatArray, y: FloatArray, domain: Domain) -> FloatArray:
         r = domain.distance(x, y)
@@ -259,11 +265,6 @@ class Connectivity:
     def shift_invariant(self) -> bool:
         """Whether it depends on x - y alone."""
         return all(p.shift_invariant for p in self.parts.values())
-
-    @property
-    def smooth(self) -> bool:
-        """Whether every part is smooth, the diagonal included."""
-        return all(p.smooth for p in self.parts.values())
 
     def matrix(self, x: FloatArray, y: FloatArray, domain: Domain) -> FloatArray:
         """w(x, y), shape of x and y broadcast, or (S, ...)."""

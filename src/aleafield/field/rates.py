@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from abc import ABC, abstractmethod
 from collections.abc import Iterator
 from dataclasses import dataclass
@@ -79,7 +80,7 @@ class NormalOgiveRate(Rate):
         return np.asarray(ndtr(argument) * per_sample(self.maximum, 1))  # type: ignore[arg-type]
 
     def slope(self) -> Bound | None:
-        return abs(self.maximum * self.gain) / np.sqrt(2 * np.pi)  # type: ignore[operator, no-any-return]
+        return abs(self.maximum * self.gain) / math.sqrt(2 * math.pi)  # type: ignore[operator, no-any-return]
 
 
 @dataclass(frozen=True)
@@ -100,7 +101,7 @@ class RampRate(Rate):
         return np.asarray(np.clip(argument, 0.0, 1.0) * per_sample(self.maximum, 1))  # type: ignore[arg-type]
 
     def slope(self) -> Bound | None:
-        return abs(self.maximum * self.gain)  # type: ignore[operator, arg-type]
+        return abs(self.maximum * self.gain)  # type: ignore[operator, no-any-return]
 
 
 @dataclass(frozen=True)

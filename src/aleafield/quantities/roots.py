@@ -11,6 +11,8 @@ from aleafield.arrays import FloatArray, IntArray
 WithSlope = Callable[[IntArray, FloatArray], tuple[FloatArray, FloatArray]]
 """(numbers of the functions (M,), places (M,)) -> values and slopes there, each (M,)."""
 
+_LAST_NEWTON = 1e5
+"""A Newton step of so many resolutions is the last one."""
 _MOST_ITERATIONS = 200
 """Every second iteration halves the bracket or the step, so that about 110 always suffice."""
 
@@ -33,7 +35,7 @@ def bracketed_roots(
     start : float array (M,)
         First guess, inside the bracket.
     resolution : float
-        A root is found where the next step is not longer.
+        A root is found where a bisection is not longer, or a Newton step not longer than 1e5 times that.
 
     Returns
     -------
@@ -60,9 +62,12 @@ def bracketed_roots(
             newton = x - value / slope
             inside = (newton - top) * (newton - bottom) <= 0
             quick = np.abs(newton - x) <= 0.5 * step[searching]
+            # so short a Newton step squares the error to below rounding, and may leave the bracket by rounding
+            last = np.abs(newton - x) <= _LAST_NEWTON * resolution
         following = np.where(inside & quick, newton, 0.5 * (top + bottom))
+        following = np.where(last, np.clip(newton, np.minimum(top, bottom), np.maximum(top, bottom)), following)
         following = np.where(value == 0, x, following)
         length = np.abs(following - x)
         place[searching], step[searching] = following, length
-        searching = searching[length > resolution]
+        searching = searching[(length > resolution) & ~last]
     return place

@@ -20,7 +20,7 @@ class StepView:
 
     @property
     def length(self) -> float:
-        """t1 - t0."""
+        """Length t1 - t0 of the step, units of time."""
         return self.t1 - self.t0
 
     def state(self, theta: float) -> FloatArray:

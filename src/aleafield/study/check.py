@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import json
 import math
 from collections.abc import Mapping
 from dataclasses import asdict, dataclass
@@ -86,10 +85,10 @@ class CheckResult:
     notes: tuple[str, ...]
     warnings: tuple[str, ...]
 
-    def as_json(self) -> str:
-        """One JSON document."""
-        content = _without_infinities({"schema": 1, "valid": True, **asdict(self)})
-        return json.dumps(content, ensure_ascii=False, indent=2, allow_nan=False)
+    def as_json(self) -> dict[str, Any]:
+        """Plain values for one JSON document; no NaN, no Infinity."""
+        content: dict[str, Any] = _without_infinities({"schema": 1, "valid": True, **asdict(self)})
+        return content
 
     def as_text(self) -> str:
         """Lines for a terminal."""

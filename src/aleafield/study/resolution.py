@@ -11,12 +11,8 @@ from aleafield.arrays import FloatArray
 from aleafield.field.equation import FieldEquation
 from aleafield.field.kernels import CosineKernel, ExponentialKernel, FormulaKernel, GaussianKernel
 from aleafield.projection.discretisation import Discretisation
+from aleafield.stepping.runge_kutta import stability_bound
 
-REAL_STABILITY = 2.785
-"""End of the real stability interval of the classical Runge-Kutta method of order 4.
-
-Hairer and Wanner 1996, "Solving Ordinary Differential Equations II", section IV.2 (from memory).
-"""
 LOST = 1e-6
 """Share of a kernel beyond the end of an interval that counts as nothing."""
 COARSE = 0.5
@@ -50,9 +46,8 @@ def stability(discretisation: Discretisation, bound: FieldEquation) -> Stability
     """
     time_constant = np.asarray(bound.dynamics.time_constant, dtype=np.float64)
     gain = discretisation.gain(bound)
-    fastest = (1.0 if gain is None else 1.0 + gain) / time_constant
     return Stability(
-        largest_step=float(REAL_STABILITY / np.max(fastest)),
+        largest_step=float(np.min(stability_bound(time_constant, 0.0 if gain is None else gain))),
         gain=None if gain is None else float(np.max(gain)),
         time_constant=float(np.min(time_constant)),
     )

@@ -1,0 +1,1 @@
+"""The seam: a study's field behind one call, *evaluate a level on sample indices*."""

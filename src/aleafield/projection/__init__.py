@@ -1,0 +1,1 @@
+"""Projectors, methods and quadratures paired: a field equation becomes a semi-discrete system."""

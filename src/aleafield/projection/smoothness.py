@@ -1,0 +1,99 @@
+"""What kind of functions an equation is made of: smooth ones, or some with kinks and jumps.
+
+Whether a formula is smooth is seen from the decay of its expansion coefficients, with every uncertain input
+at its mean: Chebyshev coefficients on an interval, Fourier coefficients on a ring.  A kink shows as decay
+like k^-2, a jump like 1/k.  On a ring a formula that is smooth on the line has a kink where the ring closes
+unless it is periodic, and a formula of the shortest distance one opposite every point; no reading of the
+formula would tell how large.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+
+import numpy as np
+import scipy.fft
+
+from aleafield.arrays import FloatArray
+from aleafield.field.equation import FieldEquation
+from aleafield.field.formula_term import FormulaTerm
+from aleafield.field.kernels import Kernel
+from aleafield.geometry import Domain, Interval, ring_grid
+from aleafield.quadrature import extremal_points
+
+_POINTS = 4096
+_TAIL = 1e-12
+"""Size of the last eighth of the coefficients, relative to the largest, above which a function is not smooth:
+a kink whose slope jumps by the function's size over the domain leaves about 1e-7 there."""
+
+_PLACES = (0.1370, 0.4142, 0.8090)
+"""Positions, as shares of the length, at which a kernel is looked at: no nodes of common meshes."""
+
+_TIMES = (0.037, 0.41, 0.83)
+"""Times, as shares of the duration, at which a drive is looked at."""
+
+
+def typical(equation: FieldEquation) -> FieldEquation:
+    """The equation bound to one sample with every input at its mean.
+
+    What does not depend on an input is a float in it, so that `certain` of a kernel is exact.
+    """
+    means = {entry.path: np.array([entry.law.mean], dtype=np.float64) for entry in equation.uncertain()}
+    return equation.bind(equation.binding(means))
+
+
+def smooth_on(domain: Domain, function: Callable[[FloatArray], FloatArray]) -> bool:
+    """Whether a function of points (P,) with values (.., P) has no kink and no jump on the domain."""
+    with np.errstate(all="ignore"):
+        if isinstance(domain, Interval):
+            values = function(extremal_points(domain, _POINTS + 1))
+            coefficients = np.abs(scipy.fft.dct(values, type=1, axis=-1))
+        else:
+            values = function(ring_grid(domain, _POINTS))
+            coefficients = np.abs(scipy.fft.rfft(values, axis=-1))
+        if not np.all(np.isfinite(coefficients)):
+            return False
+        tail = coefficients[..., -coefficients.shape[-1] // 8 :].max()
+        return bool(tail <= _TAIL * coefficients.max())
+
+
+def kernel_is_smooth(equation: FieldEquation) -> bool:
+    """Whether every part of a bound equation's kernel is smooth in x and y, the diagonal included."""
+    return all(_part_is_smooth(part, equation.domain) for part in equation.kernel.parts.values())
+
+
+def _part_is_smooth(part: Kernel, domain: Domain) -> bool:
+    if part.smooth is not None:
+        return part.smooth
+    places = domain.low + np.asarray(_PLACES)[:, None] * domain.length
+    return smooth_on(domain, lambda y: part.matrix(places, y[None, :], domain)) and smooth_on(
+        domain, lambda x: part.matrix(x[None, :], places, domain)
+    )
+
+
+def initial_is_smooth(equation: FieldEquation) -> bool:
+    """Whether the initial state of a bound equation is smooth in x."""
+    return _term_is_smooth(equation.initial, equation.domain, 0.0)
+
+
+def drive_is_smooth(equation: FieldEquation) -> bool:
+    """Whether the drive of a bound equation is smooth in x, at three times of the run and by its formula.
+
+    A formula with a kink in x that moves with t may look smooth at three times; it is then taken as kinked.
+    """
+    drive = equation.drive
+    if drive.depends_on("t") and drive.kinks_in("x"):
+        return False
+    duration = equation.dynamics.duration
+    return all(_term_is_smooth(drive, equation.domain, share * duration) for share in _TIMES)
+
+
+def _term_is_smooth(term: FormulaTerm, domain: Domain, t: float) -> bool:
+    if not term.depends_on("x"):
+        return True
+
+    def values(x: FloatArray) -> FloatArray:
+        found = term.evaluate({"x": x, "t": t}, axes=1)
+        return np.array(np.broadcast_to(found, np.broadcast_shapes(found.shape, x.shape)))
+
+    return smooth_on(domain, values)

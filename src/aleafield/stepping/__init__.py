@@ -1,0 +1,1 @@
+"""Time stepping on schedules that are fixed once for a study."""

@@ -1,0 +1,141 @@
+"""Solve a known problem at a sequence of levels and observe the order."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+
+from aleafield.arrays import FloatArray
+from aleafield.ensemble.level import Level
+from aleafield.sampling.allocation import Allocation
+from aleafield.stepping.runge_kutta import integrate
+from aleafield.stepping.view import StepView
+from aleafield.study.model import Choices, field_model
+from aleafield.study.reading import read_text
+from aleafield.verification.problem import KnownProblem, Series
+
+ROUNDING = 1e-12
+"""Errors below this are rounding; no order is read off them."""
+
+
+@dataclass(frozen=True)
+class Verdict:
+    """What one series showed.
+
+    Attributes
+    ----------
+    problem : KnownProblem
+    series : Series
+    errors : tuple of float
+        Largest error at each count.
+    observed_order : float or None
+        From the last two levels, by their true ratio; None where the last error is rounding.
+    passed : bool
+    """
+
+    problem: KnownProblem
+    series: Series
+    errors: tuple[float, ...]
+    observed_order: float | None
+    passed: bool
+
+    def as_json(self) -> dict[str, Any]:
+        """Plain values for the ``--json`` output."""
+        return {
+            "problem": self.problem.name,
+            "projector": self.series.projector,
+            "method": self.series.method,
+            "quadrature": self.series.quadrature,
+            "refined": self.series.refined,
+            "counts": list(self.series.counts),
+            "errors": list(self.errors),
+            "expected_order": self.series.expected_order,
+            "observed_order": self.observed_order,
+            "passed": self.passed,
+        }
+
+
+class _LastState:
+    """An observer that keeps the state at the end of the run."""
+
+    def start(self, t: float, u: FloatArray) -> None:
+        self.state = u.copy()
+
+    def step(self, view: StepView) -> None:
+        self.state = view.u1.copy()
+
+    def result(self) -> tuple[FloatArray, FloatArray | None]:
+        return np.zeros(0), None
+
+
+def solve(problem: KnownProblem, series: Series, count: int) -> float:
+    """Largest error of the field at the end of the run, with `count` nodes, points or steps."""
+    nodes = count if series.refined == "nodes" else series.nodes
+    steps = count if series.refined == "steps" else series.steps
+    text = (
+        f'title = "{problem.name}"\n{problem.study}\n'
+        f'[scheme]\nprojector = "{series.projector}"\nmethod = "{series.method}"\nnodes = {nodes}\n'
+        f'quadrature = "{series.quadrature}"\n'
+        + (f"quadrature_points = {count}\n" if series.refined == "quadrature points" else "")
+        + '[[quantity]]\nname = "mean"\nmeasure = "mean"\n'
+    )
+    study = read_text(text)
+    duration = study.equation.dynamics.duration
+    allocation = Allocation("monte carlo", 1, 1)
+    model = field_model(study, allocation, Choices(duration / steps, {}))
+    level = Level(model.level.nodes, model.level.quadrature_points)
+    discretisation = model.discretisation(level)
+    equation = study.equation.bind(study.equation.binding({}))
+    last = _LastState()
+    integrate(discretisation.system(equation, 1), model.schedule(), [last])
+    field = discretisation.space.evaluate(last.state, problem.points)[0]
+    return float(np.abs(field - problem.exact(problem.points)).max())
+
+
+def verdict(problem: KnownProblem, series: Series) -> Verdict:
+    """Solve at every count and judge order and last error."""
+    errors = tuple(solve(problem, series, count) for count in series.counts)
+    order = None
+    if errors[-1] > ROUNDING and errors[-2] > ROUNDING:
+        offset = 1 if series.refined == "nodes" and series.projector == "piecewise linear" else 0
+        ratio = (series.counts[-1] - offset) / (series.counts[-2] - offset)
+        order = float(np.log(errors[-2] / errors[-1]) / np.log(ratio))
+    passed = errors[-1] <= series.last_error
+    if series.expected_order is not None:
+        passed = passed and order is not None and abs(order - series.expected_order) <= series.order_tolerance
+    return Verdict(problem, series, errors, order, passed)
+
+
+def verify(problems: tuple[KnownProblem, ...]) -> Iterator[Verdict]:
+    """Verdicts of all series of all problems, one after the other."""
+    for problem in problems:
+        for series in problem.series:
+            yield verdict(problem, series)
+
+
+def table(verdicts: list[Verdict]) -> str:
+    """The verdicts as aligned text."""
+    header = ("problem", "scheme", "refined", "expected", "observed", "last error", "accepted", "")
+    rows = [header]
+    for v in verdicts:
+        s = v.series
+        scheme = f"{s.projector}, {s.method}" + ("" if s.quadrature == "matched" else f", {s.quadrature}")
+        expected = "spectral" if s.expected_order is None else f"{s.expected_order:.0f}"
+        observed = "rounding" if v.observed_order is None else f"{v.observed_order:.2f}"
+        rows.append(
+            (
+                v.problem.name,
+                scheme,
+                f"{s.refined} {s.counts[0]}..{s.counts[-1]}",
+                expected,
+                observed,
+                f"{v.errors[-1]:.2e}",
+                f"{s.last_error:.2e}",
+                "ok" if v.passed else "OFF",
+            )
+        )
+    widths = [max(len(row[i]) for row in rows) for i in range(len(header))]
+    return "\n".join("  ".join(cell.ljust(w) for cell, w in zip(row, widths, strict=True)).rstrip() for row in rows)
