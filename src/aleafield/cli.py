@@ -11,6 +11,7 @@ import json
 import os
 import sys
 from collections.abc import Callable, Mapping, Sequence
+from io import TextIOWrapper
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
@@ -26,32 +27,45 @@ DONE, UNMET, AT_FAULT, INTERRUPTED = 0, 1, 2, 3
 
 def main(arguments: Sequence[str] | None = None) -> int:
     """Run one command and return its exit status; never raises for anything that a user can type."""
-    parsed = _parser().parse_args(arguments)
-    command: Callable[[argparse.Namespace], int] = parsed.command
     try:
-        status = command(parsed)
-        sys.stdout.flush()
+        status = _run_command(arguments)
     except AleafieldError as error:
         print(f"aleafield: {error}", file=sys.stderr)
         return error.exit_status
     except KeyboardInterrupt:
         print("aleafield: interrupted", file=sys.stderr)
         return INTERRUPTED
-    except BrokenPipeError:
-        # whoever read the output has gone: nothing more can be said to it, at exit either
-        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
-        return DONE
     except OSError as error:
+        if error.filename is None and sys.stdout is not None:
+            # standard output cannot be written: Python must not try again at exit
+            os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+        if isinstance(error, BrokenPipeError):  # whoever read the output has gone
+            return DONE
         place = f"{error.filename}: " if error.filename else ""
         print(f"aleafield: {place}{error.strerror or error}", file=sys.stderr)
         return AT_FAULT
     return status
 
 
+def _run_command(arguments: Sequence[str] | None) -> int:
+    """Status of one command; its output has left the buffer when this ends."""
+    if isinstance(sys.stdout, TextIOWrapper):
+        sys.stdout.reconfigure(errors="backslashreplace")  # a title may hold what a terminal cannot show
+    try:
+        parsed = _parser().parse_args(arguments)
+    except SystemExit:
+        print(end="", flush=True)
+        raise
+    command: Callable[[argparse.Namespace], int] = parsed.command
+    status = command(parsed)
+    print(end="", flush=True)
+    return status
+
+
 def _parser() -> argparse.ArgumentParser:
     parser = argparse.ArgumentParser(
         prog="aleafield",
-        description="How uncertain is a number computed from a neural field, and where does its error come from?",
+        description="How uncertain is a number computed from a neural field, and where its error comes from.",
         epilog=CAUTION,
         allow_abbrev=False,
     )
@@ -75,7 +89,7 @@ def _parser() -> argparse.ArgumentParser:
     extend.add_argument("--samples", type=int, required=True, metavar="N", help="how many more, at least")
     _working(extend)
 
-    compare = _command(commands, "compare", _compare, "paired difference of two runs with the same sample points")
+    compare = _command(commands, "compare", _compare, "paired difference of two runs with the same samples")
     compare.add_argument("folder_a", type=Path, metavar="DIR_A")
     compare.add_argument("folder_b", type=Path, metavar="DIR_B")
 

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -94,31 +94,30 @@ def joint_change(measured: Sequence[MeasuredPart], statistic: Statistic, value: 
     other left out; quantity and margin take both signs.  Infinite where nothing occurs any more.
     """
     sample = measured[0].sample
-    combinations = [
-        (value_shift, margin_shift)
-        for value_shift in _one_sided([m.shifts for m in measured], len(sample.given))
-        for margin_shift in (
-            [None]
-            if sample.margin is None
-            else _one_sided([(m.margin_shift,) for m in measured], sample.n_valid)
-        )
-    ]
-    ranges = [range_of(statistic, sample, by_value, by_margin) for by_value, by_margin in combinations]
-    return max(math.inf if found is None else max(abs(end - value) for end in found) for found in ranges)
-
-
-def _one_sided(shifts: Sequence[Sequence[FloatArray]], n: int) -> list[FloatArray]:
-    """Sums over parts of the largest downward and of the largest upward shift, each (n,)."""
-    sums = []
+    worst = 0.0
     for sign in (-1.0, 1.0):
-        total = np.zeros(n)
-        for candidates in shifts:
-            largest = np.zeros(n)
-            for shift in candidates:
-                np.maximum(largest, sign * shift, out=largest)
-            total += largest
-        sums.append(sign * total)
-    return sums
+        by_value = _one_sided((m.shifts for m in measured), sign, len(sample.given))
+        for margin_sign in (-1.0, 1.0) if sample.margin is not None else (None,):
+            by_margin = None
+            if margin_sign is not None:
+                by_margin = _one_sided(((m.margin_shift,) for m in measured), margin_sign, sample.n_valid)
+            found = range_of(statistic, sample, by_value, by_margin)
+            if found is None:
+                return math.inf
+            worst = max(worst, *(abs(end - value) for end in found))
+    return worst
+
+
+def _one_sided(shifts: Iterable[Sequence[FloatArray]], sign: float, n: int) -> FloatArray:
+    """Sum over parts of the largest shift of one sign, (n,); one part's shifts in memory at a time."""
+    total = np.zeros(n)
+    for candidates in shifts:
+        largest = np.zeros(n)
+        for shift in candidates:
+            np.maximum(largest, sign * shift, out=largest)
+        total += largest
+    total *= sign
+    return total
 
 
 def mean_influence(pair: PairedValues, mean: float, share: float) -> FloatArray:

@@ -156,7 +156,7 @@ class MeasuredPart:
                 found.append(fit_differences(upper, upper - lower, centre, scale, self.sample.certain))
         return tuple(found)
 
-    @cached_property
+    @property
     def shifts(self) -> tuple[FloatArray, ...]:
         """F times each regression at the values of the whole sample, each (number that occur,)."""
         return tuple(self.order.factor * fit(self.sample.given) for fit in self.fits)
@@ -171,7 +171,7 @@ class MeasuredPart:
         centre, scale = float(margin.mean()), standard_deviation(margin)
         return fit_differences(at_probes, difference, centre, scale, self.sample.certain)
 
-    @cached_property
+    @property
     def margin_shift(self) -> FloatArray:
         """F times the regression of the margin, (number of valid samples,)."""
         assert self.sample.margin is not None

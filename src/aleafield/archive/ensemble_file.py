@@ -1,0 +1,115 @@
+"""Building ensemble.nc from chunks, one chunk in memory at a time."""
+
+from __future__ import annotations
+
+import hashlib
+from collections.abc import Callable, Iterator, Mapping
+from contextlib import contextmanager
+from pathlib import Path
+from typing import Any, Protocol
+
+from aleafield.archive.attributes import set_attributes
+from aleafield.archive.chunks import Chunk
+from aleafield.archive.description import Description
+from aleafield.archive.durable import commit, partial, remove, storing, write_bytes
+from aleafield.archive.ensemble_reader import EnsembleReader
+from aleafield.archive.ensemble_variables import EnsembleVariables
+from aleafield.archive.field_state import FieldState, encode_state
+from aleafield.archive.layout import Layout
+from aleafield.archive.statistic_variables import add_statistics
+from aleafield.ensemble.level import Level
+
+Summary = dict[str, Any]
+"""The document summary.json."""
+
+
+class ChunkSource(Protocol):
+    """Where an ensemble's chunks come from, in the order of their samples."""
+
+    def chunks(self, level: Level) -> Iterator[Chunk]:
+        """The chunks of a level, without gaps, from sample 0 on."""
+        ...
+
+
+def build(
+    layout: Layout,
+    description: Description,
+    source: ChunkSource,
+    summarise: Callable[[EnsembleReader], Summary],
+) -> Summary:
+    """Write ensemble.nc, atomically, with the statistics of its summary; give the summary back.
+
+    Parameters
+    ----------
+    layout : Layout
+    description : Description
+    source : ChunkSource
+    summarise : from the columns of the ensemble to the summary
+
+    Raises
+    ------
+    Interrupted
+        When the disk fails; the chunks are untouched.
+    """
+    import netCDF4
+
+    path = layout.ensemble
+    with storing(path), netcdf_failures(path), netCDF4.Dataset(partial(path), "w") as dataset:
+        variables = EnsembleVariables(dataset, description)
+        state = encode_state(_stream_main(variables, description, source))
+        for level in description.extra_levels:
+            _stream_extra(variables, level, source)
+        attributes = {**description.attributes, "field_state_sha256": hashlib.sha256(state).hexdigest()}
+        set_attributes(dataset, {"Conventions": "CF-1.11", **attributes})
+        summary = summarise(EnsembleReader(dataset))
+        add_statistics(dataset, variables.names, summary["quantities"])
+    write_bytes(layout.field_state(description.samples), state)
+    commit(path)
+    for old in layout.field_states():
+        if old != layout.field_state(description.samples):
+            remove(old)
+    return summary
+
+
+def _stream_main(variables: EnsembleVariables, description: Description, source: ChunkSource) -> FieldState:
+    state: FieldState | None = None
+    for chunk in source.chunks(description.level):
+        records = chunk.records
+        for path, column in records.inputs.items():
+            variables.found["input", path, ""][chunk.first : chunk.last] = column
+        variables.found["failed_at", "", ""][chunk.first : chunk.last] = records.failed_at
+        _put_values(variables, chunk, "")
+        if chunk.state is not None:
+            state = chunk.state if state is None else state + chunk.state
+        if chunk.kept is not None and description.kept:
+            variables.found["field", "", ""][chunk.first : chunk.first + len(chunk.kept)] = chunk.kept
+    assert state is not None
+    variables.found["field_mean", "", ""][:] = state.moments.mean
+    variables.found["field_sd", "", ""][:] = state.moments.sd
+    variables.found["field_band", "", ""][:] = state.quantiles()
+    return state
+
+
+def _stream_extra(variables: EnsembleVariables, level: Level, source: ChunkSource) -> None:
+    for chunk in source.chunks(level):
+        _put_values(variables, chunk, level.label)
+
+
+def _put_values(variables: EnsembleVariables, chunk: Chunk, label: str) -> None:
+    along = slice(chunk.first, chunk.last)
+    variables.found["failed", "", label][along] = chunk.records.failed
+    groups: Mapping[str, Mapping[str, Any]] = {"value": chunk.records.values, "margin": chunk.records.margins}
+    for role, columns in groups.items():
+        for name, column in columns.items():
+            variables.found[role, name, label][along] = column
+
+
+@contextmanager
+def netcdf_failures(path: Path) -> Iterator[None]:
+    """The netCDF library reports a full disk as RuntimeError: turn that into the OSError that it is."""
+    try:
+        yield
+    except RuntimeError as error:
+        if "NetCDF" not in str(error):
+            raise
+        raise OSError(f"{error} while writing; is the disk full?") from error

@@ -1,0 +1,201 @@
+"""The variables of ensemble.nc: names, dimensions and attributes, as the CF conventions want them."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from typing import Any
+
+import numpy as np
+
+from aleafield.archive.attributes import set_attributes
+from aleafield.archive.description import Description, QuantityColumn
+from aleafield.archive.field_state import BAND, BAND_SAMPLES
+from aleafield.archive.names import Names
+from aleafield.ensemble.level import Level
+from aleafield.ensemble.records import FAILURE_MEANINGS
+
+Key = tuple[str, str, str]
+"""Role of a variable, input or quantity that it belongs to, label of its level; the last two may be empty."""
+FIELD_BLOCK = 1 << 17
+"""Numbers in one block of the stored fields: 1 MiB."""
+ALONG = ("realization",)
+
+
+class EnsembleVariables:
+    """Defines all variables of an ensemble in an open, empty netCDF dataset.
+
+    Attributes
+    ----------
+    found : mapping of `Key` to netCDF variable
+    names : Names
+        What is taken; statistics get their names from here.
+    """
+
+    def __init__(self, dataset: Any, description: Description) -> None:
+        self._dataset = dataset
+        self._description = description
+        self.names = Names()
+        self.found: dict[Key, Any] = {}
+        inputs = [self.names.take(column.path) for column in description.inputs]
+        self._coordinates = " ".join(["sample", "repeat", "replicate", *inputs])
+        self._make_dimensions()
+        self._make_numbers()
+        for column, name in zip(description.inputs, inputs, strict=True):
+            about = {"long_name": f"uncertain input {column.path}", "path": column.path, "law": column.law}
+            self._make(("input", column.path, ""), name, ALONG, {**about, "units": column.units})
+        self._make_failures()
+        for quantity in description.quantities:
+            self._make_quantity(quantity)
+        if description.extra_levels:
+            self._make_probes()
+        self._make_moments()
+        if description.kept:
+            self._make_fields()
+
+    def _make_dimensions(self) -> None:
+        description, axes = self._description, self._description.axes
+        lengths = {"realization": description.samples, "t_moments": len(axes.moment_times), "x": len(axes.x)}
+        lengths["band"] = len(BAND)
+        if description.extra_levels:
+            lengths["probe"] = description.probes
+        if description.kept:
+            lengths["t"] = len(axes.kept_times)
+        for name, length in lengths.items():
+            self._dataset.createDimension(name, length)
+
+    def _make(
+        self,
+        key: Key,
+        name: str,
+        dimensions: Sequence[str],
+        attributes: Mapping[str, Any],
+        kind: str = "f8",
+        blocks: Sequence[int] | None = None,
+    ) -> Any:
+        role, owner, level = key
+        fill = np.nan if kind == "f8" and role != "axis" else None
+        variable = self._dataset.createVariable(
+            name, kind, tuple(dimensions), fill_value=fill, contiguous=blocks is None, chunksizes=blocks
+        )
+        own = {"role": role, "belongs_to": owner or None, "scheme_level": level or None}
+        set_attributes(variable, {**attributes, **own})
+        self.found[key] = variable
+        return variable
+
+    def _make_numbers(self) -> None:
+        count = np.arange(self._description.samples, dtype=np.int32)
+        columns = {
+            "realization": ("number of the realization", count),
+            "sample": ("number of the parameter sample", count),
+            "repeat": ("number of the noise path of the sample", np.zeros_like(count)),
+            "replicate": ("number of the scrambling of the sample", count % self._description.replicates),
+        }
+        for name, (long_name, values) in columns.items():
+            standard = "realization" if name == "realization" else None
+            about = {"long_name": long_name, "units": "1", "standard_name": standard}
+            self._make((name, "", ""), name, ALONG, about, "i4")[:] = values
+
+    def _make_failures(self) -> None:
+        long_name = "whether, and why, a realization failed"
+        self._make_flags("", "failed", ALONG, {"long_name": long_name, "coordinates": self._coordinates})
+        about = {
+            "long_name": "model time at which the field of a failed realization ceased to be finite",
+            "units": self._description.axes.time_units,
+            "coordinates": self._coordinates,
+        }
+        self._make(("failed_at", "", ""), "failed_at", ALONG, about)
+
+    def _make_flags(self, level: str, name: str, along: Sequence[str], about: Mapping[str, Any]) -> None:
+        flags = {
+            "units": "1",
+            "flag_values": np.array(list(FAILURE_MEANINGS), dtype=np.int32),
+            "flag_meanings": " ".join(FAILURE_MEANINGS.values()),
+        }
+        self._make(("failed", "", level), name, along, {**about, **flags}, "i4")
+
+    def _make_quantity(self, quantity: QuantityColumn) -> None:
+        name, ancillary = self.names.take(quantity.name), "failed"
+        if quantity.may_not_occur:
+            margin = self.names.take(f"{quantity.name}_margin")
+            about = {
+                "long_name": f"margin by which {quantity.name} occurs, negative where it does not",
+                "units": self._description.axes.field_units,
+                "coordinates": self._coordinates,
+            }
+            self._make(("margin", quantity.name, ""), margin, ALONG, about)
+            ancillary += f" {margin}"
+        about = {
+            "long_name": quantity.name,
+            "units": quantity.units,
+            "measure": quantity.measure,
+            "coordinates": self._coordinates,
+            "ancillary_variables": ancillary,
+        }
+        self._make(("value", quantity.name, ""), name, ALONG, about)
+
+    def _make_probes(self) -> None:
+        probes = np.arange(self._description.probes, dtype=np.int32)
+        about = {"long_name": "number of the parameter sample of the probe", "units": "1"}
+        self._make(("probe", "", ""), "probe", ("probe",), about, "i4")[:] = probes
+        for level in self._description.extra_levels:
+            name = self.names.take(f"failed_{level.label}")
+            long_name = f"whether, and why, a probe failed at level {level.label}"
+            self._make_flags(level.label, name, ("probe",), {"long_name": long_name})
+            for quantity in self._description.quantities:
+                self._make_at_level(quantity, level, name)
+
+    def _make_at_level(self, quantity: QuantityColumn, level: Level, failed: str) -> None:
+        scheme = {
+            "nodes": level.nodes,
+            "quadrature_points": level.quadrature_points,
+            "halvings_of_the_step": level.halvings,
+            "ancillary_variables": failed,
+        }
+        about = {"long_name": f"{quantity.name} at level {level.label}", "units": quantity.units}
+        name = self.names.take(f"{quantity.name}_{level.label}")
+        self._make(("value", quantity.name, level.label), name, ("probe",), {**about, **scheme})
+        if quantity.may_not_occur:
+            about = {
+                "long_name": f"margin by which {quantity.name} occurs at level {level.label}",
+                "units": self._description.axes.field_units,
+            }
+            name = self.names.take(f"{quantity.name}_margin_{level.label}")
+            self._make(("margin", quantity.name, level.label), name, ("probe",), {**about, **scheme})
+
+    def _make_moments(self) -> None:
+        axes = self._description.axes
+        position = {"long_name": "position", "units": axes.length_units}
+        self._make(("axis", "x", ""), "x", ("x",), position)[:] = axes.x
+        times = {"long_name": "model time of mean and standard deviation", "units": axes.time_units}
+        self._make(("axis", "t_moments", ""), "t_moments", ("t_moments",), times)[:] = axes.moment_times
+        for name, method in (("mean", "mean"), ("sd", "standard_deviation")):
+            about = {
+                "long_name": f"{method.replace('_', ' ')} of the field over realizations",
+                "units": axes.field_units,
+                "cell_methods": f"realization: {method}",
+            }
+            self._make((f"field_{name}", "", ""), self.names.take(f"u_{name}"), ("t_moments", "x"), about)
+        probabilities = {"long_name": "probability of a quantile of the field", "units": "1"}
+        self._make(("axis", "band", ""), "band", ("band",), probabilities)[:] = BAND
+        about = {
+            "long_name": f"quantiles of the field over the first {BAND_SAMPLES} realizations at most",
+            "units": axes.field_units,
+        }
+        self._make(("field_band", "", ""), self.names.take("u_band"), ("band", "t_moments", "x"), about)
+
+    def _make_fields(self) -> None:
+        description, axes = self._description, self._description.axes
+        times = {"long_name": "model time", "units": axes.time_units}
+        self._make(("axis", "t", ""), "t", ("t",), times)[:] = axes.kept_times
+        shape = (len(axes.kept_times), len(axes.x))
+        rows = max(1, min(description.kept, FIELD_BLOCK // (shape[0] * shape[1])))
+        some = f"stored for the first {description.kept} realizations only"
+        about = {
+            "long_name": "field",
+            "units": axes.field_units,
+            "coordinates": self._coordinates,
+            "ancillary_variables": "failed",
+            "comment": some if description.kept < description.samples else None,
+        }
+        field = self._make(("field", "", ""), "u", (*ALONG, "t", "x"), about, blocks=(rows, *shape))
+        field.set_var_chunk_cache(size=2 * 8 * rows * shape[0] * shape[1])

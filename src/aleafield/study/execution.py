@@ -1,0 +1,152 @@
+"""From a plan to an ensemble: solve what is missing, store it, put it together.
+
+Only the protocol of a forward model is seen here; which field it solves, and what is asked of it, is not.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from contextlib import ExitStack, closing
+from dataclasses import dataclass
+
+from aleafield.archive.chunk_store import ChunkStore
+from aleafield.archive.chunks import LANE, Task, cut
+from aleafield.archive.description import Description
+from aleafield.archive.durable import remove, write_json
+from aleafield.archive.ensemble_file import Summary, build
+from aleafield.archive.ensemble_reader import EnsembleReader, reading
+from aleafield.archive.field_state import read_state
+from aleafield.archive.layout import Layout
+from aleafield.archive.sources import EarlierEnsemble, InTurn, StoredChunks
+from aleafield.archive.table import write_table
+from aleafield.ensemble.forward_model import ForwardModel
+from aleafield.ensemble.level import Level
+from aleafield.errors import Interrupted
+from aleafield.study.plan_file import Plan
+from aleafield.study.progress import Progress
+from aleafield.study.workers import Solver, solved
+
+WORTH_A_PROCESS = 4e9
+"""Operations below which a worker process is not worth its start, about two seconds of work."""
+
+
+@dataclass(frozen=True)
+class Cost:
+    """What a run took, over all its starts: wall-clock and processor time in seconds."""
+
+    wall: float = 0.0
+    processor: float = 0.0
+
+
+@dataclass(frozen=True)
+class Stored:
+    """How much of an ensemble is in place: samples and probes; both 0 where there is none."""
+
+    samples: int = 0
+    probes: int = 0
+
+
+@dataclass(frozen=True)
+class Question:
+    """What is asked of an ensemble: how its file describes it, and how its summary is made."""
+
+    describe: Callable[[Plan, Cost], Description]
+    summarise: Callable[[EnsembleReader, Plan, Cost], Summary]
+
+
+def stored_ensemble(layout: Layout) -> Stored:
+    """What ensemble.nc of a folder holds."""
+    if not layout.ensemble.exists():
+        return Stored()
+    with reading(layout.ensemble) as reader:
+        return Stored(len(reader), reader.probes)
+
+
+def tasks_of(plan: Plan, stored: Stored) -> dict[Level, list[Task]]:
+    """What is to be solved at each level beyond what is in place, the extra levels first."""
+    tasks = {}
+    for level in plan.extra_levels:
+        width = min(plan.chunk_width, -(-plan.probes // LANE) * LANE)
+        tasks[level] = list(cut(level, stored.probes, plan.probes, width))
+    tasks[plan.level] = list(cut(plan.level, stored.samples, plan.samples, plan.chunk_width))
+    return tasks
+
+
+def execute(
+    layout: Layout, model: ForwardModel, plan: Plan, stored: Stored, workers: int, progress: Progress
+) -> int:
+    """Solve and store every task that is not stored yet, in no more processes than the work is worth.
+
+    Returns
+    -------
+    int
+        How many tasks were solved.
+
+    Raises
+    ------
+    Interrupted
+        On Ctrl-C, when a worker dies or when the disk fails; what was stored is safe.
+    """
+    store = ChunkStore(layout)
+    tasks = [task for level in tasks_of(plan, stored).values() for task in level]
+    missing = [task for task in tasks if not store.holds(task)]
+    work = {task: plan.operations[task.level.label] * task.count for task in tasks}
+    solver = Solver(model, plan.level, plan.moment_times, plan.kept_times)
+    processes = min(workers, max(1, int(sum(work[task] for task in missing) / WORTH_A_PROCESS)))
+    done = 0
+    progress.start(sum(work.values()), sum(work.values()) - sum(work[task] for task in missing))
+    try:
+        with closing(solved(solver, missing, processes)) as results:
+            for task, chunk in results:
+                store.put(task, chunk)
+                progress.advance(work[task])
+                done += 1
+    except KeyboardInterrupt:
+        held = len(tasks) - len(missing) + done
+        raise Interrupted(
+            f"interrupted: {held} of {len(tasks)} chunks are stored in {layout.folder}; the same command "
+            "goes on from there"
+        ) from None
+    finally:
+        progress.finish()
+    return done
+
+
+def put_together(layout: Layout, plan: Plan, question: Question) -> Summary:
+    """Build ensemble.nc, ensemble.csv and summary.json from what is stored.
+
+    What an ensemble already in place holds is taken from it, the rest from the chunks.
+    """
+    stored = stored_ensemble(layout)
+    cost = Cost()
+    with ExitStack() as stack:
+        sources: list[EarlierEnsemble | StoredChunks] = []
+        if stored.samples:
+            reader = stack.enter_context(reading(layout.ensemble))
+            state = read_state(layout, stored.samples, str(reader.attribute("field_state_sha256")))
+            sources.append(EarlierEnsemble(reader, plan.level, state))
+            cost = Cost(float(reader.attribute("wall_time_s")), float(reader.attribute("processor_time_s")))
+        if stored != Stored(plan.samples, plan.probes):
+            store = ChunkStore(layout)
+            sources.append(StoredChunks(store, tasks_of(plan, stored)))
+            cost = Cost(cost.wall + store.wall_seconds, cost.processor + store.processor_seconds)
+        summary = build(
+            layout,
+            question.describe(plan, cost),
+            InTurn(*sources),
+            lambda columns: question.summarise(columns, plan, cost),
+        )
+    with reading(layout.ensemble) as reader:
+        write_table(layout, reader)
+    write_json(layout.summary, summary)
+    return summary
+
+
+def is_complete(layout: Layout, plan: Plan) -> bool:
+    """Whether everything that comes from solving is in place."""
+    return stored_ensemble(layout) == Stored(plan.samples, plan.probes)
+
+
+def clear_parts(layout: Layout) -> None:
+    """Remove the chunks, once the ensemble that holds them is in place."""
+    remove(layout.parts)

@@ -1,0 +1,185 @@
+"""plan.json: every adaptive choice of a run, made before the first chunk is solved and never again."""
+
+from __future__ import annotations
+
+import json
+from collections.abc import Mapping
+from dataclasses import asdict, dataclass, replace
+from typing import Any
+
+from aleafield.accounting import number_of_probes, share_of_probes
+from aleafield.archive.chunks import LANE
+from aleafield.archive.durable import write_json
+from aleafield.archive.layout import Layout
+from aleafield.ensemble.forward_model import ForwardModel
+from aleafield.ensemble.level import Level, PathPart
+from aleafield.errors import ArchiveError
+from aleafield.sampling.allocation import Allocation
+
+SCHEMA = 1
+CHUNK_NUMBERS = 1 << 15
+"""A chunk's width times the number of nodes, about."""
+WIDTHS = (8, 256)
+"""Least and largest default width of a chunk."""
+
+
+@dataclass(frozen=True)
+class Plan:
+    """What a run does, down to the last choice.
+
+    Attributes
+    ----------
+    digest : str
+        Of the study.
+    versions : mapping of package to version
+    level : Level
+        The run's.
+    time_step : float
+        Largest step of the run's schedule, units of time.
+    schedule_times : tuple of float
+        Times that every schedule holds.
+    path : tuple of PathPart
+        The parts of the discretisation error with the levels that measure them.
+    allocation : Allocation
+    probes : int
+        Number of the first samples that are also solved at the extra levels.
+    probe_share : float
+        Operations of the extra levels over those of the main samples.
+    operations : mapping of level label to operations of one sample
+    chunk_width : int
+        Samples of a chunk, a multiple of 8; the extra levels take narrower ones where there are fewer probes.
+    peak_references : mapping of quantity to position
+    moment_times, kept_times : tuple of float
+        Model times of the field's mean, standard deviation and bands, and of the stored fields.
+    data_folder : str
+        Below the results folder: where relative paths of the study's data files start.
+    operators : tuple of mapping
+        By part of the kernel: operator, its error and the reason for the choice.
+    notes : tuple of str
+        What the user must know of these choices.
+    """
+
+    digest: str
+    versions: Mapping[str, str]
+    level: Level
+    time_step: float
+    schedule_times: tuple[float, ...]
+    path: tuple[PathPart, ...]
+    allocation: Allocation
+    probes: int
+    probe_share: float
+    operations: Mapping[str, float]
+    chunk_width: int
+    peak_references: Mapping[str, float]
+    moment_times: tuple[float, ...]
+    kept_times: tuple[float, ...]
+    data_folder: str
+    operators: tuple[Mapping[str, Any], ...] = ()
+    notes: tuple[str, ...] = ()
+
+    @property
+    def samples(self) -> int:
+        """Parameter samples of the run."""
+        return self.allocation.samples
+
+    @property
+    def extra_levels(self) -> tuple[Level, ...]:
+        """The levels besides the run's own that the path needs, in order."""
+        return extra_levels(self.path, self.level)
+
+
+def extra_levels(path: tuple[PathPart, ...], level: Level) -> tuple[Level, ...]:
+    """The levels of a path other than the run's, in order."""
+    return tuple(sorted({one for part in path for one in part.levels} - {level}))
+
+
+def default_width(nodes: int, samples: int) -> int:
+    """Samples of a chunk: about 2^15 numbers of state, a multiple of 8, all chunks about equally long."""
+    least, largest = WIDTHS
+    width = min(max(CHUNK_NUMBERS // nodes // LANE * LANE, least), largest)
+    chunks = -(-samples // width)
+    return -(-samples // (chunks * LANE)) * LANE
+
+
+def count_probes(
+    model: ForwardModel, level: Level, path: tuple[PathPart, ...], samples: int
+) -> tuple[int, float]:
+    """Number of probes and the share of the extra levels in the main cost, from counted operations."""
+    extra = sum(model.operations(one) for one in extra_levels(path, level))
+    if extra == 0.0:
+        return 0, 0.0
+    main = model.operations(level)
+    probes = number_of_probes(samples, main, extra)
+    return probes, share_of_probes(probes, samples, main, extra)
+
+
+def plan_notes(allocation: Allocation, probe_share: float) -> tuple[str, ...]:
+    """What a user must know of the number of samples and probes."""
+    notes = [allocation.note] if allocation.note else []
+    if probe_share > 0.25:
+        notes.append(
+            f"the error split costs {100 * probe_share:.0f} % of the main samples, more than a quarter: it "
+            "needs 32 probes at least, or all samples"
+        )
+    return tuple(notes)
+
+
+def with_more_samples(plan: Plan, model: ForwardModel, allocation: Allocation) -> Plan:
+    """The plan of an extension: more samples, the probes anew for their number, nothing else anew."""
+    probes, share = count_probes(model, plan.level, plan.path, allocation.samples)
+    return replace(
+        plan,
+        allocation=allocation,
+        probes=probes,
+        probe_share=share,
+        notes=plan_notes(allocation, share),
+    )
+
+
+def write_plan(layout: Layout, plan: Plan) -> None:
+    """Store a plan."""
+    write_json(layout.plan, {"schema": SCHEMA, **asdict(plan), "path": [_part_as_json(p) for p in plan.path]})
+
+
+def read_plan(layout: Layout) -> Plan:
+    """The plan of a results folder.
+
+    Raises
+    ------
+    ArchiveError
+        When there is none, or it cannot be understood.
+    """
+    if not layout.plan.exists():
+        raise ArchiveError(f"{layout.folder}: no results of aleafield here (plan.json is missing)")
+    try:
+        return _from_json(json.loads(layout.plan.read_text(encoding="utf-8")))
+    except (ValueError, KeyError, TypeError, AttributeError) as error:
+        raise ArchiveError(
+            f"{layout.plan}: cannot be understood ({type(error).__name__}: {error}); it was changed by hand "
+            "or comes from another version of aleafield: run the study into a new folder"
+        ) from error
+
+
+def _part_as_json(part: PathPart) -> dict[str, Any]:
+    return {**asdict(part), "peaks": sorted(part.peaks)}
+
+
+def _from_json(document: Mapping[str, Any]) -> Plan:
+    content = dict(document)
+    if content.pop("schema") != SCHEMA:
+        raise ValueError(f"schema {document['schema']}")
+    content["level"] = Level(**content["level"])
+    content["path"] = tuple(_part_from_json(part) for part in content["path"])
+    content["allocation"] = Allocation(**content["allocation"])
+    for name in ("schedule_times", "moment_times", "kept_times", "operators", "notes"):
+        content[name] = tuple(content[name])
+    return Plan(**content)
+
+
+def _part_from_json(document: Mapping[str, Any]) -> PathPart:
+    content = dict(document)
+    for name in ("pair", "coarse_pair"):
+        first, second = content[name]
+        content[name] = (Level(**first), Level(**second))
+    content["peaks"] = frozenset(content["peaks"])
+    return PathPart(**content)

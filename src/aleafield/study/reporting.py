@@ -1,0 +1,82 @@
+"""From a results folder to its report: what the page shows is read here and written there."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from typing import Any
+
+import numpy as np
+
+from aleafield.archive.durable import make_folder, remove, write_bytes
+from aleafield.archive.ensemble_reader import EnsembleReader, reading
+from aleafield.archive.field_state import BAND_SAMPLES
+from aleafield.archive.layout import Layout
+from aleafield.report.data import FieldRecord, Provenance, ReportData
+from aleafield.report.figures import figure_files, report_figures
+from aleafield.report.findings import quantity_findings
+from aleafield.report.page import page
+from aleafield.study.plan_file import Plan
+from aleafield.study.study import Study
+from aleafield.study.wording import model_text
+
+MOST_VALUES = 1 << 16
+"""Values of a quantity that a histogram shows, the first ones: memory does not grow with the samples."""
+
+
+def report_data(study: Study, plan: Plan, summary: Mapping[str, Any], reader: EnsembleReader) -> ReportData:
+    """Everything that the report of a finished run shows.
+
+    Parameters
+    ----------
+    study : Study
+    plan : Plan
+    summary : as in summary.json
+    reader : of the run's ensemble
+    """
+    return ReportData(
+        title=study.title,
+        about=study.about,
+        units=study.units,
+        study_text=study.source.text,
+        summary=summary,
+        measures={quantity.name: quantity.measure for quantity in study.quantities},
+        model=model_text(study, plan),
+        provenance=Provenance(study.seed, study.digest, plan.versions),
+        values={name: reader.values(name)[:MOST_VALUES] for name in reader.quantities},
+        fields=_fields(reader),
+    )
+
+
+def write_report(layout: Layout, study: Study, plan: Plan, summary: Mapping[str, Any]) -> None:
+    """Write report.html and the figures of a folder whose ensemble and summary are in place.
+
+    Raises
+    ------
+    Interrupted
+        When the disk fails.
+    """
+    with reading(layout.ensemble) as reader:
+        data = report_data(study, plan, summary, reader)
+    figures = report_figures(data, quantity_findings(summary))
+    files = figure_files(figures)
+    make_folder(layout.figures)
+    for name, text in files.items():
+        write_bytes(layout.figures / name, text.encode())
+    for path in layout.figures.glob("*.svg"):
+        if path.name not in files:
+            remove(path)
+    write_bytes(layout.report, page(data, figures).encode())
+
+
+def _fields(reader: EnsembleReader) -> FieldRecord | None:
+    mean, sd = reader.field_mean(), reader.field_sd()
+    if not (np.isfinite(mean).all() and np.isfinite(sd).all()):
+        return None
+    return FieldRecord(
+        t=reader.axis("t_moments"),
+        x=reader.axis("x"),
+        mean=mean,
+        sd=sd,
+        band=reader.field_band(),
+        band_samples=min(len(reader), BAND_SAMPLES),
+    )

@@ -1,0 +1,147 @@
+"""The main job: from a study to a results folder, resuming by itself what is unfinished."""
+
+from __future__ import annotations
+
+import json
+import os
+from collections.abc import Mapping
+from dataclasses import dataclass
+from pathlib import Path
+from typing import Any
+
+from aleafield.archive.durable import make_folder, remove_partials
+from aleafield.archive.ensemble_file import Summary
+from aleafield.archive.layout import Layout
+from aleafield.archive.lock import locked
+from aleafield.errors import InputError
+from aleafield.forward.field_model import FieldModel
+from aleafield.study.execution import clear_parts, execute, is_complete, put_together, stored_ensemble
+from aleafield.study.folder import claimed_plan, stored_text, write_study
+from aleafield.study.plan_file import Plan, write_plan
+from aleafield.study.planning import make_plan, planned_model
+from aleafield.study.progress import NoProgress, Progress
+from aleafield.study.question import question_of
+from aleafield.study.reporting import write_report
+from aleafield.study.study import Study
+from aleafield.study.summary import unmet
+
+
+@dataclass(frozen=True)
+class RunResult:
+    """What a run leaves.
+
+    Attributes
+    ----------
+    folder : Path
+    summary : mapping
+        As in summary.json.
+    solved : int
+        Chunks that this call solved; 0 where everything was in place.
+    unmet : tuple of str
+        What the study demands and the run does not give.
+    """
+
+    folder: Path
+    summary: Mapping[str, Any]
+    solved: int
+    unmet: tuple[str, ...]
+
+    @property
+    def files(self) -> tuple[str, ...]:
+        """Paths that a reader of the result looks for first."""
+        layout = Layout(self.folder)
+        return tuple(str(path) for path in (layout.report, layout.summary, layout.ensemble))
+
+    @property
+    def exit_status(self) -> int:
+        """0 done; 1 the run ended, but something that is demanded is not met."""
+        return 1 if self.unmet else 0
+
+
+def run(
+    study: Study,
+    out: Path | str,
+    workers: int | None = None,
+    progress: Progress | None = None,
+    chunk_width: int | None = None,
+) -> RunResult:
+    """Run a study into a folder, or go on where an earlier call stopped.
+
+    Where the folder holds the same study finished, and only title, about or the report section differ,
+    nothing is solved: summary and report are made again.
+
+    Parameters
+    ----------
+    study : Study
+    out : path of the results folder
+    workers : int, optional
+        Worker processes; default the cores at hand.  No value depends on it.
+    progress : Progress, optional
+    chunk_width : int, optional
+        Samples of a chunk, a multiple of 8; a choice of the plan, so it counts at the first call only.
+
+    Raises
+    ------
+    InputError
+        When the study or an argument cannot be used.
+    ArchiveError
+        When the folder belongs to something else.
+    Interrupted
+        When the run was stopped; the same call goes on.
+    """
+    layout = Layout(Path(out))
+    count = worker_count(workers)
+    if layout.folder.exists() and not layout.folder.is_dir():
+        raise InputError("out", f"{layout.folder} is a file", "a folder is needed")
+    make_folder(layout.folder)
+    with locked(layout):
+        remove_partials(layout.folder)
+        plan = claimed_plan(layout, study)
+        if plan is None:
+            plan, model = make_plan(study, chunk_width)
+            write_study(layout, study)
+            write_plan(layout, plan)
+        else:
+            model = planned_model(study, plan)
+        return finish(layout, study, plan, model, count, progress or NoProgress())
+
+
+def finish(
+    layout: Layout, study: Study, plan: Plan, model: FieldModel, workers: int, progress: Progress
+) -> RunResult:
+    """Bring a folder to the state that its plan describes; the caller holds its lock."""
+    solved = 0
+    if not is_complete(layout, plan):
+        solved = execute(layout, model, plan, stored_ensemble(layout), workers, progress)
+    elif _up_to_date(layout, study):
+        return _result(layout, study, json.loads(layout.summary.read_text(encoding="utf-8")), 0)
+    summary = put_together(layout, plan, question_of(study, model.points(plan.level)))
+    write_report(layout, study, plan, summary)
+    write_study(layout, study)
+    clear_parts(layout)
+    return _result(layout, study, summary, solved)
+
+
+def worker_count(asked: int | None) -> int:
+    """The number of workers: what is asked, else the cores that this process may use.
+
+    Raises
+    ------
+    InputError
+        For less than one.
+    """
+    if asked is None:
+        return len(os.sched_getaffinity(0))
+    if asked < 1:
+        raise InputError("workers", f"{asked} given", "at least one is needed")
+    return asked
+
+
+def _up_to_date(layout: Layout, study: Study) -> bool:
+    """Whether nothing is left to write: the chunks go only when everything else is in place."""
+    written = layout.summary.exists() and layout.report.exists() and not layout.parts.exists()
+    return written and stored_text(layout) == study.source.text
+
+
+def _result(layout: Layout, study: Study, summary: Summary, solved: int) -> RunResult:
+    return RunResult(layout.folder, summary, solved, unmet(study, summary))

@@ -1,0 +1,102 @@
+"""From the columns of an ensemble to the statements of a quantity."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from aleafield.accounting import LevelValues, Pair, PartDifferences, QuantityStatements, quantity_statements
+from aleafield.archive.ensemble_reader import EnsembleReader
+from aleafield.ensemble.level import Level, PathPart
+from aleafield.estimates import Sample
+from aleafield.study.plan_file import Plan
+
+
+@dataclass(frozen=True)
+class Asked:
+    """What is wanted of a quantity besides its mean, sd and occurrence.
+
+    Attributes
+    ----------
+    quantiles : probabilities in (0, 1)
+    exceed : levels in the units of the quantity
+    confidence : float in (0, 1)
+    """
+
+    quantiles: tuple[float, ...]
+    exceed: tuple[float, ...]
+    confidence: float
+
+
+def statements_of(
+    reader: EnsembleReader, plan: Plan, quantity: str, asked: Asked, *, certain: bool
+) -> QuantityStatements:
+    """The statements of one quantity; memory holds its columns and no others.
+
+    Parameters
+    ----------
+    reader : EnsembleReader
+    plan : Plan
+    quantity : str
+        Its name.
+    asked : Asked
+    certain : bool
+        Whether there is neither input nor noise.
+    """
+    replicates = plan.allocation.replicates
+    sample = Sample.of(
+        reader.values(quantity),
+        margin=reader.margins(quantity),
+        valid=reader.valid(),
+        replicate=reader.replicate() if replicates > 1 else None,
+        replicates=replicates,
+        certain=certain,
+    )
+    levels = _LevelColumns(reader, plan, quantity, sample)
+    parts = [_differences(part, levels, plan.probes, quantity) for part in plan.path]
+    return quantity_statements(sample, parts, asked.quantiles, asked.exceed, asked.confidence)
+
+
+class _LevelColumns:
+    """One quantity on the probes, by level."""
+
+    def __init__(self, reader: EnsembleReader, plan: Plan, name: str, sample: Sample) -> None:
+        self._reader, self._plan, self._name, self._sample = reader, plan, name, sample
+        self._found: dict[Level, LevelValues] = {}
+
+    def at(self, level: Level) -> LevelValues:
+        """The quantity at a level."""
+        if level not in self._found:
+            self._found[level] = self._read(level)
+        return self._found[level]
+
+    def _read(self, level: Level) -> LevelValues:
+        if level == self._plan.level:
+            cut = slice(0, self._plan.probes)
+            margin = None if self._sample.margin is None else self._sample.margin[cut]
+            return LevelValues.of(self._sample.values[cut], margin, self._sample.valid[cut])
+        label = level.label
+        return LevelValues.of(
+            self._reader.values(self._name, label),
+            self._reader.margins(self._name, label),
+            self._reader.valid(label),
+        )
+
+
+def _differences(part: PathPart, levels: _LevelColumns, probes: int, name: str) -> PartDifferences:
+    order, locator = part.expected_order, part.locator_order.get(name)
+    if locator is not None:
+        order = locator if order is None else min(order, locator)
+    return PartDifferences(
+        name=part.name,
+        probes=np.arange(probes, dtype=np.int64),
+        fine=Pair(*(levels.at(level) for level in part.pair)),
+        coarse=Pair(*(levels.at(level) for level in part.coarse_pair)),
+        ratio_fine=part.ratio,
+        ratio_coarse=part.coarse_ratio,
+        expected_order=order,
+        observed_only=part.observed_only,
+        least_factor=part.least_factor.get(name, 1.0),
+        peak=name in part.peaks,
+    )

@@ -1,0 +1,178 @@
+"""summary.json: what a run has to say, put together from the columns of its ensemble."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from typing import Any
+
+import numpy as np
+
+from aleafield.archive.ensemble_file import Summary
+from aleafield.archive.ensemble_reader import EnsembleReader
+from aleafield.ensemble.records import FAILURE_MEANINGS
+from aleafield.quantities import Quantity
+from aleafield.study.execution import Cost
+from aleafield.study.plan_file import Plan
+from aleafield.study.statements import Asked, statements_of
+from aleafield.study.study import Study
+
+SCHEMA = 1
+MOST_LISTED = 100
+"""Failed samples that are listed one by one; all are flagged in ensemble.nc and ensemble.csv."""
+FAILED_SHARE = 0.05
+"""Above this share of failed samples the run does not meet what every study demands."""
+
+
+def summarise(reader: EnsembleReader, study: Study, plan: Plan, cost: Cost) -> Summary:
+    """The document summary.json.
+
+    Quantities are read one at a time, so that memory holds the columns of one.
+    """
+    quantities = {quantity.name: _quantity(reader, study, plan, quantity) for quantity in study.quantities}
+    failed = _failed(reader)
+    return {
+        "schema": SCHEMA,
+        "title": study.title,
+        "quantities": quantities,
+        "inputs": {
+            entry.path: {
+                "law": entry.law.text,
+                "units": entry.units,
+                "mean": entry.law.mean,
+                "sd": entry.law.sd,
+            }
+            for entry in study.inputs
+        },
+        "scheme": _scheme(study, plan),
+        "sampling": _sampling(study, plan),
+        "sensitivity": None,
+        "aim": _aim(study, quantities),
+        "plan": None,
+        "cost": {
+            "predicted_s": None,
+            "measured_s": cost.wall,
+            "processor_s": cost.processor,
+            "samples": plan.samples,
+            "split_share": plan.probe_share / (1.0 + plan.probe_share),
+        },
+        "failed": failed,
+        "confidence": study.confidence,
+        "warnings": [*study.warnings, *plan.notes, *_failure_warnings(failed, plan)],
+    }
+
+
+def unmet(study: Study, summary: Mapping[str, Any]) -> tuple[str, ...]:
+    """What the study demands and the run does not give, in words; empty where all is met."""
+    found = []
+    aim = summary["aim"]
+    if aim is not None and not aim["met"]:
+        found.append(f"the aim is missed: {aim['reason']}")
+    failed, samples = summary["failed"]["count"], summary["cost"]["samples"]
+    if failed > FAILED_SHARE * samples:
+        found.append(f"{failed} of {samples} samples failed, more than {100 * FAILED_SHARE:.0f} %")
+    for name, entry in summary["quantities"].items():
+        asked = {f"P(above {level})": statement for level, statement in entry["exceed"].items()}
+        if any(key.startswith("report.quantiles") for key in study.source.lines):
+            asked.update({f"quantile {p}": statement for p, statement in entry["quantiles"].items()})
+        for label, statement in asked.items():
+            if statement["value"] is None:
+                found.append(f"{name}, {label}: {statement.get('reason', 'not determined')}")
+    return tuple(found)
+
+
+def _quantity(reader: EnsembleReader, study: Study, plan: Plan, quantity: Quantity) -> dict[str, object]:
+    asked = Asked(study.report.quantiles, study.report.exceed.get(quantity.name, ()), study.confidence)
+    statements = statements_of(reader, plan, quantity.name, asked, certain=not study.inputs)
+    return statements.as_json(study.quantity_units(quantity))
+
+
+def _scheme(study: Study, plan: Plan) -> dict[str, object]:
+    scheme = study.scheme
+    return {
+        "projector": scheme.projector,
+        "method": scheme.method,
+        "nodes": plan.level.nodes,
+        "quadrature": scheme.quadrature,
+        "quadrature_points": plan.level.quadrature_points,
+        "time_step": plan.time_step,
+        "operators": [dict(operator) for operator in plan.operators],
+        "parts": {
+            part.name: {
+                "levels": [[level.label for level in pair] for pair in (part.coarse_pair, part.pair)],
+                "expected_order": part.expected_order,
+                "proven": not part.observed_only,
+                "note": part.note,
+            }
+            for part in plan.path
+        },
+        "probes": plan.probes,
+    }
+
+
+def _sampling(study: Study, plan: Plan) -> dict[str, object] | None:
+    if not study.inputs:
+        return None
+    return {
+        "method": plan.allocation.method,
+        "samples": plan.samples,
+        "replicates": plan.allocation.replicates,
+        "points_per_replicate": plan.allocation.points_per_replicate,
+        "noise_repeats": 1,
+    }
+
+
+def _aim(study: Study, quantities: Mapping[str, Mapping[str, Any]]) -> dict[str, object] | None:
+    aim = study.aim
+    if aim is None:
+        return None
+    mean = quantities[aim.quantity]["mean"]
+    total = mean["error"]["total"]
+    allowed = None
+    if not aim.relative:
+        allowed = aim.tolerance
+    elif mean["value"] is not None:
+        allowed = aim.tolerance * abs(mean["value"])
+    met = total is not None and allowed is not None and total <= allowed
+    if total is None:
+        reason = f"the error of the mean of {aim.quantity} is not determined"
+    else:
+        reason = f"the mean of {aim.quantity} is known to {total:.3g}, {aim.text} demands {allowed:.3g}"
+    return {
+        "tolerance": aim.text,
+        "quantity": aim.quantity,
+        "half_width": total,
+        "allowed": allowed,
+        "met": met,
+        "reason": reason,
+    }
+
+
+def _failed(reader: EnsembleReader) -> dict[str, object]:
+    which = np.flatnonzero(~reader.valid())
+    codes = reader.failed()[which]
+    reasons = {
+        FAILURE_MEANINGS[int(code)]: int(count)
+        for code, count in zip(*np.unique(codes, return_counts=True), strict=True)
+    }
+    listed = which[:MOST_LISTED]
+    times = reader.failed_at()[listed]
+    columns = {path: reader.input(path)[listed] for path in reader.inputs}
+    entries = [
+        {
+            "sample": int(sample),
+            "reason": FAILURE_MEANINGS[int(codes[row])],
+            "time": float(times[row]) if np.isfinite(times[row]) else None,
+            "inputs": {path: float(column[row]) for path, column in columns.items()},
+        }
+        for row, sample in enumerate(listed)
+    ]
+    return {"count": len(which), "reasons": reasons, "list": entries}
+
+
+def _failure_warnings(failed: Mapping[str, Any], plan: Plan) -> list[str]:
+    count = failed["count"]
+    if count == 0:
+        return []
+    share = 100 * count / plan.samples
+    reasons = ", ".join(f"{meaning.replace('_', ' ')}: {n}" for meaning, n in failed["reasons"].items())
+    return [f"{count} of {plan.samples} samples failed ({share:.2g} %: {reasons}); no statistic holds them"]

@@ -1,0 +1,193 @@
+"""A whole run of the analytic model, in this process or (as a program) in one of its own.
+
+python -m tests.archive.campaign FOLDER SAMPLES WIDTH WORKERS DELAY [METHOD]
+"""
+
+from __future__ import annotations
+
+import os
+import resource
+import subprocess
+import sys
+from pathlib import Path
+
+import numpy as np
+
+from aleafield.archive.description import Axes, Description, InputColumn, QuantityColumn
+from aleafield.archive.durable import make_folder
+from aleafield.archive.ensemble_file import Summary
+from aleafield.archive.ensemble_reader import EnsembleReader
+from aleafield.archive.layout import Layout
+from aleafield.archive.lock import locked
+from aleafield.sampling.allocation import Allocation
+from aleafield.sampling.request import SamplingMethod
+from aleafield.study.execution import (
+    Cost,
+    Question,
+    clear_parts,
+    execute,
+    is_complete,
+    put_together,
+    stored_ensemble,
+)
+from aleafield.study.plan_file import Plan, count_probes, read_plan, with_more_samples, write_plan
+from aleafield.study.progress import NoProgress
+from aleafield.study.statements import Asked, statements_of
+from tests.archive.analytic_model import DURATION, AnalyticModel
+
+ROOT = Path(__file__).resolve().parents[2]
+MOMENT_TIMES = tuple(np.linspace(0.0, DURATION, 5).tolist())
+
+
+def allocation_of(method: SamplingMethod, samples: int) -> Allocation:
+    """So many samples; 16 scramblings for quasi-Monte Carlo."""
+    return Allocation(method, samples, 16 if method == "quasi-monte carlo" else 1)
+
+
+def plan_of(model: AnalyticModel, method: SamplingMethod, samples: int, width: int) -> Plan:
+    """The plan of a run of the analytic model."""
+    path = model.path(model.level)
+    probes, share = count_probes(model, model.level, path, samples)
+    levels = {one for part in path for one in part.levels}
+    return Plan(
+        digest="d" * 64,
+        versions={"aleafield": "0"},
+        level=model.level,
+        time_step=0.5,
+        schedule_times=(DURATION,),
+        path=path,
+        allocation=allocation_of(method, samples),
+        probes=probes,
+        probe_share=share,
+        operations={one.label: model.operations(one) for one in levels},
+        chunk_width=width,
+        peak_references={},
+        moment_times=MOMENT_TIMES,
+        kept_times=(0.25, DURATION),
+        data_folder="inputs",
+    )
+
+
+def describe(model: AnalyticModel, plan: Plan, cost: Cost) -> Description:
+    """The ensemble file of the analytic model."""
+    return Description(
+        inputs=tuple(InputColumn(entry.path, entry.units, entry.law.text) for entry in model.inputs),
+        quantities=(
+            QuantityColumn("peak", "mV", "maximum", False),
+            QuantityColumn("time of return", "ms", "time to level", True),
+        ),
+        samples=plan.samples,
+        replicates=plan.allocation.replicates,
+        level=plan.level,
+        probes=plan.probes,
+        extra_levels=plan.extra_levels,
+        axes=Axes(model.points(plan.level), plan.kept_times, plan.moment_times, "mm", "ms", "mV"),
+        attributes={
+            "title": "a model in closed form",
+            "history": "made by the tests",
+            "institution": "none",
+            "source": "aleafield",
+            "references": "none",
+            "comment": "none",
+            "study_digest": plan.digest,
+            "versions": plan.versions,
+            "seed": 7,
+            "wall_time_s": cost.wall,
+            "processor_time_s": cost.processor,
+        },
+    )
+
+
+def summarise(reader: EnsembleReader, plan: Plan, cost: Cost) -> Summary:
+    """The statements of both quantities."""
+    asked = Asked((0.05, 0.5), (1.0,), 0.95)
+    quantities = {
+        name: statements_of(reader, plan, name, asked, certain=False).as_json(reader.unit(name))
+        for name in reader.quantities
+    }
+    return {"quantities": quantities, "cost": {"measured_s": cost.wall}}
+
+
+def finish(layout: Layout, model: AnalyticModel, plan: Plan, workers: int) -> int:
+    """Solve what is missing and put the ensemble together; how many chunks were solved."""
+    solved = 0
+    if not is_complete(layout, plan):
+        solved = execute(layout, model, plan, stored_ensemble(layout), workers, NoProgress())
+    question = Question(lambda p, cost: describe(model, p, cost), summarise)
+    put_together(layout, plan, question)
+    clear_parts(layout)
+    return solved
+
+
+def campaign(
+    folder: Path,
+    samples: int = 256,
+    width: int = 16,
+    workers: int = 1,
+    delay: float = 0.0,
+    method: SamplingMethod = "quasi-monte carlo",
+) -> int:
+    """Run, or go on with, the analytic model in a folder."""
+    layout, model = Layout(folder), AnalyticModel(method, delay=delay)
+    make_folder(folder)
+    with locked(layout):
+        if not layout.plan.exists():
+            write_plan(layout, plan_of(model, method, samples, width))
+        return finish(layout, model, read_plan(layout), workers)
+
+
+def extend(folder: Path, samples: int) -> int:
+    """More samples for a campaign that ended: `samples` in all."""
+    layout = Layout(folder)
+    plan = read_plan(layout)
+    model = AnalyticModel(plan.allocation.method)
+    if is_complete(layout, plan):
+        plan = with_more_samples(plan, model, allocation_of(plan.allocation.method, samples))
+        write_plan(layout, plan)
+    return finish(layout, model, plan, 1)
+
+
+def as_program(
+    folder: Path,
+    samples: int = 256,
+    width: int = 16,
+    workers: int = 1,
+    delay: float = 0.0,
+    method: SamplingMethod = "quasi-monte carlo",
+) -> subprocess.Popen[str]:
+    """Start a campaign in a process of its own."""
+    command = [sys.executable, "-m", "tests.archive.campaign", str(folder)]
+    command += [str(samples), str(width), str(workers), str(delay), method]
+    environment = {
+        **os.environ,
+        "PYTHONPATH": f"{ROOT / 'src'}{os.pathsep}{ROOT}",
+        "OPENBLAS_NUM_THREADS": "1",
+    }
+    return subprocess.Popen(
+        command, cwd=ROOT, env=environment, text=True, stdout=subprocess.PIPE, stderr=subprocess.PIPE
+    )
+
+
+def ensemble_values(folder: Path) -> dict[str, np.ndarray]:
+    """All variables of an ensemble, by name, as raw arrays."""
+    import netCDF4
+
+    with netCDF4.Dataset(folder / "ensemble.nc") as dataset:
+        dataset.set_auto_mask(False)
+        return {name: np.array(variable[...]) for name, variable in dataset.variables.items()}
+
+
+def assert_same_values(folder: Path, reference: Path) -> None:
+    """Two ensembles hold the same variables with the same values, to the bit."""
+    found, expected = ensemble_values(folder), ensemble_values(reference)
+    assert found.keys() == expected.keys()
+    for name, values in expected.items():
+        assert found[name].dtype == values.dtype, name
+        assert found[name].tobytes() == values.tobytes(), name
+    assert (folder / "ensemble.csv").read_bytes() == (reference / "ensemble.csv").read_bytes()
+
+
+if __name__ == "__main__":
+    where, n, w, k, seconds, how = sys.argv[1:]
+    campaign(Path(where), int(n), int(w), int(k), float(seconds), how)  # type: ignore[arg-type]
+    print(resource.getrusage(resource.RUSAGE_SELF).ru_maxrss)

@@ -1,0 +1,227 @@
+"""The shape of summary.json, checked strictly: members, types, ranges, and the sums that they must obey.
+
+The rules are those of the documentation ("Reading a report"): nothing here looks at the code that writes it.
+"""
+
+from __future__ import annotations
+
+import json
+import math
+from collections.abc import Mapping, Sequence
+from itertools import pairwise
+from typing import Any, NoReturn
+
+import pytest
+
+BIASES = ("space", "quadrature", "time", "noise_modes", "surrogate")
+ERROR = {*BIASES, "bias_noise", "sampling", "total"}
+QUANTITY = {"units", "mean", "sd", "quantiles", "exceed", "occurs", "sensitivity", "variance"}
+DOCUMENT = {
+    *("schema", "title", "quantities", "inputs", "scheme", "sampling", "sensitivity", "aim", "plan", "cost"),
+    *("failed", "confidence", "warnings"),
+}
+
+
+def read_summary(text: str) -> dict[str, Any]:
+    """The document of a text that holds one, its shape checked."""
+
+    def refuse(word: str) -> NoReturn:
+        raise AssertionError(f"{word} is not JSON")
+
+    document: dict[str, Any] = json.loads(text, parse_constant=refuse)
+    assert_is_summary(document)
+    return document
+
+
+def assert_is_summary(document: Mapping[str, Any]) -> None:
+    """Raise AssertionError, naming the place, where a document is no summary."""
+    assert set(document) == DOCUMENT
+    assert document["schema"] == 1
+    assert 0 < number(document["confidence"], "confidence") < 1
+    assert document["quantities"], "no quantity"
+    for name, entry in document["quantities"].items():
+        assert_is_quantity(entry, name)
+    for path, entry in document["inputs"].items():
+        assert set(entry) == {"law", "units", "mean", "sd"}, path
+        assert number(entry["sd"], path) >= 0
+        number(entry["mean"], path)
+        assert all(text(entry[key]) for key in ("law", "units")), path
+    assert_is_scheme(document["scheme"])
+    assert_is_sampling(document["sampling"], document["inputs"])
+    assert_is_cost(document["cost"], document["sampling"])
+    assert_are_failures(document["failed"], document["cost"]["samples"], set(document["inputs"]))
+    assert_is_aim(document["aim"], document["quantities"])
+    assert all(text(warning) for warning in document["warnings"])
+
+
+def text(value: object) -> bool:
+    """Whether a value is a text that says something."""
+    return isinstance(value, str) and value.strip() != ""
+
+
+def number(value: object, place: str) -> float:
+    """A finite number; neither a truth value nor a text."""
+    assert isinstance(value, int | float), f"{place}: {value!r}"
+    assert not isinstance(value, bool), place
+    assert math.isfinite(value), place
+    return float(value)
+
+
+def count(value: object, place: str) -> int:
+    """A whole number that is not negative."""
+    assert isinstance(value, int), f"{place}: {value!r}"
+    assert not isinstance(value, bool), place
+    assert value >= 0, place
+    return value
+
+
+def assert_is_quantity(entry: Mapping[str, Any], name: str) -> None:
+    """Statistics of one quantity."""
+    assert set(entry) == QUANTITY, name
+    assert text(entry["units"]), name
+    assert entry["sensitivity"] == {}, name
+    assert entry["variance"] is None, name
+    assert_is_statistic(entry["mean"], f"{name}.mean")
+    assert_is_statistic(entry["sd"], f"{name}.sd", low=0.0)
+    if entry["occurs"] is not None:
+        assert_is_statistic(entry["occurs"], f"{name}.occurs", 0.0, 1.0)
+    for key, group, bounds in (("quantiles", entry["quantiles"], ()), ("exceed", entry["exceed"], (0.0, 1.0))):
+        for label, statistic in group.items():
+            assert repr(float(label)) == label, f"{name}.{key}: {label!r} is not how Python prints a number"
+            assert_is_statistic(statistic, f"{name}.{key}.{label}", *bounds)
+    assert all(0 < float(p) < 1 for p in entry["quantiles"]), name
+    assert_goes(entry["quantiles"], 1.0, f"{name}.quantiles")
+    assert_goes(entry["exceed"], -1.0, f"{name}.exceed")
+
+
+def assert_goes(group: Mapping[str, Any], direction: float, place: str) -> None:
+    """Quantiles grow with their probability, probabilities fall with their level."""
+    known = sorted((float(key), one["value"]) for key, one in group.items() if one["value"] is not None)
+    for (_, before), (_, after) in pairwise(known):
+        assert direction * (after - before) >= 0, place
+
+
+def assert_is_statistic(
+    entry: Mapping[str, Any], place: str, low: float = -math.inf, high: float = math.inf
+) -> None:
+    """{value, error, interval}, the value and both ends within [low, high]; a mean may have `corrected`."""
+    assert {"value", "error", "interval"} <= set(entry), place
+    assert set(entry) <= {"value", "error", "interval", "corrected", "reason", "orders", "notes"}, place
+    assert_is_error(entry["error"], place)
+    if entry["interval"] is None or entry["value"] is None:
+        assert entry["interval"] is None, f"{place}: an interval of nothing"
+        assert entry["error"]["total"] is None, place
+        assert text(entry["reason"]), f"{place}: nothing is said and no reason given"
+    else:
+        assert "reason" not in entry, place
+        assert_is_interval(entry, place, low, high)
+    if "corrected" in entry:
+        assert place.endswith(".mean"), place
+        assert set(entry["corrected"]) == {"value", "error", "interval"}, place
+        assert_is_statistic(entry["corrected"], f"{place}.corrected", low, high)
+    for part, order in entry.get("orders", {}).items():
+        assert part in BIASES, place
+        assert set(order) == {"observed", "expected", "factor"}, place
+        assert number(order["factor"], place) > 1, f"{place}.{part}: no safety"
+    assert all(text(note) for note in entry.get("notes", [])), place
+
+
+def assert_is_error(error: Mapping[str, Any], place: str) -> None:
+    """All parts are there; each is null or a number that is not negative."""
+    assert set(error) == ERROR, place
+    for key, value in error.items():
+        assert value is None or number(value, f"{place}.{key}") >= 0, f"{place}.{key}"
+
+
+def assert_is_interval(entry: Mapping[str, Any], place: str, low: float, high: float) -> None:
+    """Ordered ends about the value, within the bounds, no longer than `total`, which is the sum it must be.
+
+    total = B + sqrt(sampling^2 + bias_noise^2), B the sum of the biases, null counted as 0.
+    """
+    value = number(entry["value"], place)
+    assert isinstance(entry["interval"], Sequence), place
+    left, right = entry["interval"]
+    ends = (
+        number(left, place) if left is not None else -math.inf,
+        number(right, place) if right is not None else math.inf,
+    )
+    assert max(ends[0], low) <= value <= min(ends[1], high), place
+    assert left is None or left >= low, place
+    assert right is None or right <= high, place
+    error = {key: part or 0.0 for key, part in entry["error"].items()}
+    bias = math.fsum(error[part] for part in BIASES)
+    total = bias + math.hypot(error["sampling"], error["bias_noise"])
+    assert error["total"] == pytest.approx(total, rel=1e-9, abs=1e-300), place
+    rounding = 1e-12 * (abs(value) + total)
+    longer = max(value - ends[0], ends[1] - value)
+    assert longer <= total + rounding, place
+    if ends[0] > low and ends[1] < high:
+        assert longer == pytest.approx(total, rel=1e-9, abs=rounding), f"{place}: total is not the longer side"
+
+
+def assert_is_scheme(scheme: Mapping[str, Any]) -> None:
+    """Scheme, counts, operators with their reasons, parts of the split."""
+    words = {"projector", "method", "quadrature"}
+    assert words | {"nodes", "quadrature_points", "time_step", "operators", "parts", "probes"} == set(scheme)
+    assert all(text(scheme[key]) for key in words)
+    assert all(count(scheme[key], key) > 0 for key in ("nodes", "quadrature_points"))
+    assert number(scheme["time_step"], "time_step") > 0
+    count(scheme["probes"], "probes")
+    assert scheme["operators"]
+    for operator in scheme["operators"]:
+        assert set(operator) == {"part", "operator", "error", "reason"}
+        assert all(text(operator[key]) for key in ("part", "operator", "reason"))
+        assert number(operator["error"], "operator") >= 0
+    assert set(scheme["parts"]) <= set(BIASES)
+
+
+def assert_is_sampling(sampling: Mapping[str, Any] | None, inputs: Mapping[str, Any]) -> None:
+    """Null without inputs, else counts that agree."""
+    assert (sampling is None) == (not inputs)
+    if sampling is None:
+        return
+    assert set(sampling) == {"method", "samples", "replicates", "points_per_replicate", "noise_repeats"}
+    points, replicates = sampling["points_per_replicate"], sampling["replicates"]
+    assert sampling["samples"] == points * replicates
+    assert count(sampling["noise_repeats"], "noise_repeats") >= 1
+    if sampling["method"] == "quasi-monte carlo":
+        assert replicates == 16
+        assert points >= 4
+        assert points & (points - 1) == 0, "a power of two"
+    else:
+        assert (sampling["method"], replicates) == ("monte carlo", 1)
+
+
+def assert_is_cost(cost: Mapping[str, Any], sampling: Mapping[str, Any] | None) -> None:
+    """Seconds, and the number of samples."""
+    assert set(cost) == {"predicted_s", "measured_s", "processor_s", "samples", "split_share"}
+    assert cost["predicted_s"] is None or number(cost["predicted_s"], "cost") > 0
+    assert number(cost["measured_s"], "cost") > 0
+    assert number(cost["processor_s"], "cost") > 0
+    assert 0 <= number(cost["split_share"], "cost") < 1
+    assert cost["samples"] == (1 if sampling is None else sampling["samples"])
+
+
+def assert_are_failures(failed: Mapping[str, Any], samples: int, inputs: set[str]) -> None:
+    """As many reasons as failures, and the failures with their inputs."""
+    assert set(failed) == {"count", "reasons", "list"}
+    assert count(failed["count"], "failed") <= samples
+    assert sum(failed["reasons"].values()) == failed["count"]
+    assert len(failed["list"]) == min(failed["count"], 100)
+    for entry in failed["list"]:
+        assert set(entry) == {"sample", "reason", "time", "inputs"}
+        assert count(entry["sample"], "failed") < samples
+        assert entry["reason"] in failed["reasons"]
+        assert set(entry["inputs"]) == inputs
+
+
+def assert_is_aim(aim: Mapping[str, Any] | None, quantities: Mapping[str, Any]) -> None:
+    """What was demanded, what was reached, and whether that is enough."""
+    if aim is None:
+        return
+    assert set(aim) == {"tolerance", "quantity", "half_width", "allowed", "met", "reason"}
+    assert text(aim["tolerance"])
+    assert text(aim["reason"])
+    assert aim["half_width"] == quantities[aim["quantity"]]["mean"]["error"]["total"]
+    known = aim["half_width"] is not None and aim["allowed"] is not None
+    assert aim["met"] is (known and aim["half_width"] <= aim["allowed"])
