@@ -31,14 +31,20 @@ class AnalyticModel:
     method : method of the sampling
     nodes : nodes of the run
     delay : seconds that a sample takes
+    parts : how many parts its path has, the time part last
     """
 
     def __init__(
-        self, method: SamplingMethod = "quasi-monte carlo", nodes: int = 17, delay: float = 0.0
+        self,
+        method: SamplingMethod = "quasi-monte carlo",
+        nodes: int = 17,
+        delay: float = 0.0,
+        parts: int = 3,
     ) -> None:
         self.design = Design(INPUTS, Dependence(), method, 7)
         self.level = Level(nodes, nodes)
         self.delay = delay
+        self.parts = parts
 
     @property
     def inputs(self) -> Sequence[Input]:
@@ -63,11 +69,12 @@ class AnalyticModel:
         n, q = level.nodes, level.quadrature_points
         a, b, c, d = level, Level(n, 2 * q - 1), Level(2 * n - 1, 2 * q - 1), Level(n, q, 1)
         a0, b0, d0 = Level((n + 1) // 2, (q + 1) // 2), Level((n + 1) // 2, q), Level(n, q, -1)
-        return (
+        path = (
             PathPart("quadrature", (a, b), (a0, b0), 2.0, 2.0, 2.0),
             PathPart("space", (b, c), (b0, a), 2.0, 2.0, 2.0, least_factor={"peak": 2.0}),
             PathPart("time", (a, d), (d0, a), 2.0, 2.0, 4.0, peaks=frozenset({"peak"})),
         )
+        return path[-self.parts :]
 
     def evaluate(self, level: Level, samples: IntArray, times: Sequence[float] = ()) -> Records:
         """Closed forms, sample by sample."""

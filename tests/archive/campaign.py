@@ -126,9 +126,10 @@ def campaign(
     workers: int = 1,
     delay: float = 0.0,
     method: SamplingMethod = "quasi-monte carlo",
+    parts: int = 3,
 ) -> int:
-    """Run, or go on with, the analytic model in a folder."""
-    layout, model = Layout(folder), AnalyticModel(method, delay=delay)
+    """Run, or go on with, the analytic model in a folder; how many chunks were solved."""
+    layout, model = Layout(folder), AnalyticModel(method, delay=delay, parts=parts)
     make_folder(folder)
     with locked(layout):
         if not layout.plan.exists():

@@ -76,7 +76,7 @@ def a_chunk(task: Task) -> Chunk:
     """Some chunk of a task."""
     values = {"peak": np.arange(task.first, task.last, dtype=float)}
     numbers = np.zeros(task.count, dtype=np.int64)
-    records = Records(np.arange(task.first, task.last), {}, values, {}, numbers, numbers + np.nan)
+    records = Records(np.arange(task.first, task.last), {}, values, {}, numbers, np.full(task.count, np.nan))
     return Chunk(task.first, records, seconds=1.5)
 
 

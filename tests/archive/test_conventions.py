@@ -87,7 +87,9 @@ def test_every_variable_says_what_it_is(real: Path) -> None:
         assert dataset["peak"].dims == ("realization",)
         level = dataset.attrs["scheme_level"]
         probes = [
-            name for name, v in dataset.variables.items() if v.dims == ("probe",) and name.startswith("peak_")
+            name
+            for name, v in dataset.variables.items()
+            if v.dims == ("probe",) and str(name).startswith("peak_")
         ]
         assert len(probes) == 6
         assert all(name != f"peak_{level}" for name in probes), "the run's own level stands along realization"

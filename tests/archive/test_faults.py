@@ -48,8 +48,8 @@ class FailingDisk:
 
 
 def small(folder: Path) -> int:
-    """A campaign of three chunks at four levels."""
-    return campaign(folder, samples=64, width=32)
+    """A campaign of four chunks at three levels."""
+    return campaign(folder, samples=64, width=32, parts=1)
 
 
 @pytest.fixture(scope="module")
@@ -64,7 +64,7 @@ def undisturbed(tmp_path_factory: pytest.TempPathFactory) -> tuple[Path, int]:
 @pytest.mark.parametrize("offset", range(4))
 def test_every_fault_is_said_and_survived(undisturbed: tuple[Path, int], tmp_path: Path, offset: int) -> None:
     reference, calls = undisturbed
-    assert calls > 60
+    assert calls > 40
     for fails_at in range(1 + offset, calls + 1, 4):
         folder = tmp_path / str(fails_at)
         with FailingDisk(fails_at).in_place(), pytest.raises(Interrupted, match="No space left on device"):

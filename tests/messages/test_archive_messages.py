@@ -1,16 +1,21 @@
-"""What a user reads when a results folder cannot be used: one message that says what, where and the way out."""
+"""What a user reads when a results folder cannot be used: one message with what, where and the way out."""
 
 from __future__ import annotations
 
 import io
 import json
+import os
 import re
-from collections.abc import Callable
+import signal
+from collections.abc import Callable, Sequence
 from pathlib import Path
 
 import pytest
 
 from aleafield.archive.ensemble_reader import open_ensemble
+from aleafield.arrays import IntArray
+from aleafield.ensemble.level import Level
+from aleafield.ensemble.records import Records
 from aleafield.errors import AleafieldError, ArchiveError, InputError, Interrupted
 from aleafield.study.compare import compare
 from aleafield.study.extend import extend
@@ -58,6 +63,11 @@ def test_a_folder_with_a_study_of_that_name(tmp_path: Path) -> None:
     (tmp_path / "study.toml").write_text("title = 'mine'")
     says(ArchiveError, 2, lambda: run(linear_ring(), tmp_path), "not empty", "study.toml")
     assert (tmp_path / "study.toml").read_text() == "title = 'mine'"
+
+
+def test_a_folder_that_cannot_be_made(tmp_path: Path) -> None:
+    (tmp_path / "file").write_text("")
+    says(InputError, 2, lambda: run(linear_ring(), tmp_path / "file" / "out"), "cannot be made", "may write")
 
 
 def test_a_file_in_place_of_a_folder(tmp_path: Path) -> None:
@@ -154,11 +164,10 @@ def test_a_netcdf_file_of_somebody_else(tmp_path: Path) -> None:
 class DyingModel(AnalyticModel):
     """Takes its process with it."""
 
-    def evaluate(self, *arguments: object) -> object:  # type: ignore[override]
-        import os
-        import signal
-
+    def evaluate(self, level: Level, samples: IntArray, times: Sequence[float] = ()) -> Records:
+        """The end."""
         os.kill(os.getpid(), signal.SIGKILL)
+        raise AssertionError("nobody survives SIGKILL")
 
 
 class RefusingModel(AnalyticModel):

@@ -15,7 +15,7 @@ def encoded(value: Any) -> Any:
     bool -> 0 or 1; None -> None (absent); mappings and nested lists -> JSON text; numbers, text and flat
     lists of one kind stay.
 
-    >>> encoded(True), encoded(None), encoded({"a": 1})
+    >>> int(encoded(True)), encoded(None), encoded({"a": 1})
     (1, None, '{"a": 1}')
     """
     if value is None or isinstance(value, (str, np.ndarray, np.generic)):

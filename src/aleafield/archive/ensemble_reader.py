@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import json
 from collections.abc import Iterator
 from contextlib import contextmanager
 from pathlib import Path
@@ -177,9 +176,3 @@ def open_ensemble(folder: Path | str) -> xarray.Dataset:
     with reading(path):
         pass
     return xarray.open_dataset(path, engine="netcdf4", decode_timedelta=False)
-
-
-def json_attribute(reader: EnsembleReader, name: str) -> Any:
-    """A global attribute that holds JSON text, decoded; None where it is absent."""
-    text = reader.attribute(name)
-    return None if text is None else json.loads(text)

@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-import math
-
 import numpy as np
 
 from aleafield.arrays import FloatArray
@@ -47,13 +45,13 @@ def estimate_quantile(sample: Sample, p: float, confidence: float) -> Estimate:
     """The p quantile of the quantity, given that it occurs.
 
     Plain Monte Carlo: order statistics with binomial tails of at most alpha / 2 each.  Blocks: Woodruff's
-    interval (Woodruff 1952), the pooled order statistics at p -+ d with
+    interval (Woodruff 1952), the pooled quantiles at p -+ d with
 
         d = t sd(F_r(q)) / sqrt(R) + 1 / (2 n),
 
-    F_r the empirical distribution of block r and t on R - 1 degrees of freedom, ranks rounded outwards; where
-    fewer than 10 samples lie beyond the quantile the wider of this and the order statistics.  The percentile
-    bootstrap and clipping to the range of the samples miss extreme quantiles far too often.
+    F_r the empirical distribution of block r and t on R - 1 degrees of freedom; where fewer than 10 samples
+    lie beyond the quantile the wider of this and the order statistics.  The percentile bootstrap and clipping
+    to the range of the samples miss extreme quantiles far too often.
 
     Parameters
     ----------
@@ -82,13 +80,19 @@ def estimate_quantile(sample: Sample, p: float, confidence: float) -> Estimate:
     ordered = np.sort(sample.given)
     value = empirical_quantile(ordered, p)
     few = n * min(p, 1.0 - p) < FEW
-    low, high = order_statistic_ranks(n, p, confidence) if sample.plain or few else (n, 1)
-    if not sample.plain:
-        share = block_mean((sample.given <= value).astype(np.float64), sample.given_block, sample.replicates)
-        distance = share.half_width(confidence) + 0.5 / n
-        if math.isinf(distance):
+    if sample.plain or few:
+        low, high = order_statistic_ranks(n, p, confidence)
+        if low < 1 or high > n:
             return undetermined(n)
-        low, high = min(low, math.floor(n * (p - distance))), max(high, math.ceil(n * (p + distance)))
-    if low < 1 or high > n:
+        ends = float(ordered[low - 1]), float(ordered[high - 1])
+        if sample.plain:
+            return Estimate(value, *ends)
+    else:
+        ends = value, value
+    share = block_mean((sample.given <= value).astype(np.float64), sample.given_block, sample.replicates)
+    distance = share.half_width(confidence) + 0.5 / n
+    # the pooled quantile at a probability is known from the samples where its rank lies among theirs
+    if not (1.0 / n <= p - distance and p + distance <= 1.0 - 1.0 / n):
         return undetermined(n)
-    return Estimate(value, float(ordered[low - 1]), float(ordered[high - 1]))
+    below, above = (empirical_quantile(ordered, p + side * distance) for side in (-1.0, 1.0))
+    return Estimate(value, min(below, ends[0]), max(above, ends[1]))

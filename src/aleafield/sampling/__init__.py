@@ -1,1 +1,1 @@
-"""How many samples, in which order and in which chunks; the solver is known only as a forward model."""
+"""How many samples are drawn, and how; the solver is known only as a forward model."""

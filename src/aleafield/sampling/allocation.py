@@ -1,13 +1,9 @@
-"""The samples of a run: method, count after rounding, replicates, and chunks of fixed width."""
+"""The samples of a run: method, count after rounding, replicates."""
 
 from __future__ import annotations
 
-from collections.abc import Iterator
 from dataclasses import dataclass
 
-import numpy as np
-
-from aleafield.arrays import IntArray
 from aleafield.sampling.request import SamplingMethod, SamplingRequest
 
 SCRAMBLINGS = 16
@@ -72,20 +68,3 @@ def extended(current: Allocation, more: int) -> Allocation:
         return Allocation(current.method, wanted, 1)
     larger = allocate(SamplingRequest("quasi-monte carlo", wanted), n_inputs=1)
     return Allocation(larger.method, larger.samples, larger.replicates, larger.note)
-
-
-def chunks(first: int, last: int, width: int) -> Iterator[tuple[int, IntArray]]:
-    """Sample indices first .. last - 1 cut at the multiples of `width`.
-
-    Yields
-    ------
-    (count, indices) : the number of wanted samples, and `width` indices, the last one repeated as padding, so
-        that every batch has the same width and a sample's values do not depend on the cut.
-    """
-    start = first
-    while start < last:
-        stop = min(last, (start // width + 1) * width)
-        indices = np.arange(start, stop, dtype=np.int64)
-        padding = np.full(width - len(indices), indices[-1], dtype=np.int64)
-        yield len(indices), np.concatenate([indices, padding])
-        start = stop

@@ -137,7 +137,7 @@ def with_more_samples(plan: Plan, model: ForwardModel, allocation: Allocation) -
 
 
 def write_plan(layout: Layout, plan: Plan) -> None:
-    """Store a plan."""
+    """Store a plan as plan.json."""
     write_json(layout.plan, {"schema": SCHEMA, **asdict(plan), "path": [_part_as_json(p) for p in plan.path]})
 
 

@@ -7,8 +7,8 @@ import time
 from typing import Protocol, TextIO
 
 REDRAW_SECONDS = 0.2
-PLAIN_SHARE = 0.1
-"""Away from a terminal a line is printed for every tenth of the work."""
+PLAIN_LINES = 10
+"""Away from a terminal so many lines are printed, one for every tenth of the work."""
 
 
 class Progress(Protocol):
@@ -28,16 +28,16 @@ class Progress(Protocol):
 
 
 class NoProgress:
-    """Tells nothing."""
+    """For runs that say nothing while they work."""
 
     def start(self, total: float, done: float) -> None:
-        """Passed over."""
+        """The amount of work is passed over."""
 
     def advance(self, work: float) -> None:
-        """Passed over."""
+        """What is done is passed over."""
 
     def finish(self) -> None:
-        """Passed over."""
+        """The end is passed over."""
 
 
 class ProgressLine:
@@ -58,17 +58,17 @@ class ProgressLine:
         """Show how much is left."""
         self._total, self._done, self._before = max(total, 1.0), done, done
         self._start = self._shown_at = time.monotonic()
-        self._shown_share = done / self._total
+        self._shown_lines = self._lines()
         if self._redraws or done > 0.0:
             self._show()
 
     def advance(self, work: float) -> None:
         """Add work, and redraw when it is time."""
         self._done += work
-        now, share = time.monotonic(), self._done / self._total
-        due = now - self._shown_at >= REDRAW_SECONDS
-        if (self._redraws and due) or (not self._redraws and share - self._shown_share >= PLAIN_SHARE):
-            self._shown_at, self._shown_share = now, share
+        now, lines = time.monotonic(), self._lines()
+        due = now - self._shown_at >= REDRAW_SECONDS if self._redraws else lines > self._shown_lines
+        if due:
+            self._shown_at, self._shown_lines = now, lines
             self._show()
 
     def finish(self) -> None:
@@ -77,6 +77,9 @@ class ProgressLine:
             self._show()
             self._stream.write("\n")
             self._stream.flush()
+
+    def _lines(self) -> int:
+        return int(PLAIN_LINES * self._done / self._total + 1e-9)
 
     def _show(self) -> None:
         text = f"solving: {100 * min(self._done / self._total, 1.0):.0f} %"

@@ -9,7 +9,7 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
-from aleafield.archive.durable import make_folder, remove_partials
+from aleafield.archive.durable import remove_partials
 from aleafield.archive.ensemble_file import Summary
 from aleafield.archive.layout import Layout
 from aleafield.archive.lock import locked
@@ -91,9 +91,7 @@ def run(
     """
     layout = Layout(Path(out))
     count = worker_count(workers)
-    if layout.folder.exists() and not layout.folder.is_dir():
-        raise InputError("out", f"{layout.folder} is a file", "a folder is needed")
-    make_folder(layout.folder)
+    _make_results_folder(layout)
     with locked(layout):
         remove_partials(layout.folder)
         plan = claimed_plan(layout, study)
@@ -131,10 +129,20 @@ def worker_count(asked: int | None) -> int:
         For less than one.
     """
     if asked is None:
-        return len(os.sched_getaffinity(0))
+        return len(os.sched_getaffinity(0)) if hasattr(os, "sched_getaffinity") else os.cpu_count() or 1
     if asked < 1:
         raise InputError("workers", f"{asked} given", "at least one is needed")
     return asked
+
+
+def _make_results_folder(layout: Layout) -> None:
+    if layout.folder.exists() and not layout.folder.is_dir():
+        raise InputError("out", f"{layout.folder} is a file", "a folder is needed")
+    try:
+        layout.folder.mkdir(parents=True, exist_ok=True)
+    except OSError as error:
+        found = f"{layout.folder} cannot be made ({error.strerror})"
+        raise InputError("out", found, "a folder in a place where you may write is needed") from None
 
 
 def _up_to_date(layout: Layout, study: Study) -> bool:

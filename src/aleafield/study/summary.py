@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+import math
+from collections.abc import Mapping, Sequence
 from typing import Any
 
 import numpy as np
@@ -19,6 +20,8 @@ from aleafield.study.study import Study
 SCHEMA = 1
 MOST_LISTED = 100
 """Failed samples that are listed one by one; all are flagged in ensemble.nc and ensemble.csv."""
+MOST_NAMED = 3
+"""Failed samples that the message of a run names."""
 FAILED_SHARE = 0.05
 """Above this share of failed samples the run does not meet what every study demands."""
 
@@ -38,14 +41,13 @@ def summarise(reader: EnsembleReader, study: Study, plan: Plan, cost: Cost) -> S
             entry.path: {
                 "law": entry.law.text,
                 "units": entry.units,
-                "mean": entry.law.mean,
-                "sd": entry.law.sd,
+                "mean": _finite(entry.law.mean),
+                "sd": _finite(entry.law.sd),
             }
             for entry in study.inputs
         },
         "scheme": _scheme(study, plan),
         "sampling": _sampling(study, plan),
-        "sensitivity": None,
         "aim": _aim(study, quantities),
         "plan": None,
         "cost": {
@@ -69,7 +71,10 @@ def unmet(study: Study, summary: Mapping[str, Any]) -> tuple[str, ...]:
         found.append(f"the aim is missed: {aim['reason']}")
     failed, samples = summary["failed"]["count"], summary["cost"]["samples"]
     if failed > FAILED_SHARE * samples:
-        found.append(f"{failed} of {samples} samples failed, more than {100 * FAILED_SHARE:.0f} %")
+        found.append(
+            f"{failed} of {samples} samples failed, more than {100 * FAILED_SHARE:.0f} %: "
+            f"{_first_failures(summary['failed']['list'])}; summary.json lists them with their inputs"
+        )
     for name, entry in summary["quantities"].items():
         asked = {f"P(above {level})": statement for level, statement in entry["exceed"].items()}
         if any(key.startswith("report.quantiles") for key in study.source.lines):
@@ -80,10 +85,26 @@ def unmet(study: Study, summary: Mapping[str, Any]) -> tuple[str, ...]:
     return tuple(found)
 
 
+def _first_failures(entries: Sequence[Mapping[str, Any]]) -> str:
+    """The first failed samples in words."""
+    named = [
+        f"sample {entry['sample']} ({entry['reason'].replace('_', ' ')}"
+        + ("" if entry["time"] is None else f" at t = {entry['time']:.4g}")
+        + ")"
+        for entry in entries[:MOST_NAMED]
+    ]
+    return ", ".join(named) + (", .." if len(entries) > MOST_NAMED else "")
+
+
 def _quantity(reader: EnsembleReader, study: Study, plan: Plan, quantity: Quantity) -> dict[str, object]:
     asked = Asked(study.report.quantiles, study.report.exceed.get(quantity.name, ()), study.confidence)
     statements = statements_of(reader, plan, quantity.name, asked, certain=not study.inputs)
     return statements.as_json(study.quantity_units(quantity))
+
+
+def _finite(value: float) -> float | None:
+    """JSON has no infinity: the mean of a very wide law may overflow."""
+    return float(value) if math.isfinite(value) else None
 
 
 def _scheme(study: Study, plan: Plan) -> dict[str, object]:

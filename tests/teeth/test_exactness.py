@@ -1,0 +1,235 @@
+"""Faults in rules, spaces, kernels, operators, formulas and steps that the exactness tests must see."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import replace
+from typing import Any
+
+import numpy as np
+
+from aleafield.arrays import FloatArray, batch_product
+from aleafield.field.kernels import CosineKernel, ExponentialKernel, GaussianKernel
+from aleafield.formula.parser import _Compiler
+from aleafield.geometry import Interval, Ring
+from aleafield.quadrature import (
+    Rule,
+    clenshaw_curtis,
+    composite_gauss,
+    crossing_weights,
+    gauss_legendre,
+    periodic_trapezoid,
+    simpson,
+    trapezoid,
+)
+from aleafield.spaces.fourier import Fourier
+from aleafield.stepping import runge_kutta
+from tests.exactness import (
+    test_batch_product,
+    test_crossings,
+    test_kernels,
+    test_operators,
+    test_rates,
+    test_rules,
+    test_stepping,
+)
+from tests.properties import test_formula_properties
+from tests.teeth.biting import Check, Tooth, assert_bites, everywhere, member, teeth
+
+RuleMaker = Callable[..., Rule]
+
+
+def halved_weight(weights: FloatArray) -> FloatArray:
+    """One weight halved."""
+    changed = weights.copy()
+    changed[len(changed) // 2] *= 0.5
+    return changed
+
+
+def shuffled_weights(weights: FloatArray) -> FloatArray:
+    """All weights there, in other places: the length is still right."""
+    return np.roll(weights, 1)
+
+
+def half_the_volume(weights: FloatArray) -> FloatArray:
+    """Every weight halved: orders of convergence to a wrong limit stay right."""
+    return 0.5 * weights
+
+
+def with_weights(make: RuleMaker, change: Callable[[FloatArray], FloatArray]) -> RuleMaker:
+    """The rule with other weights."""
+
+    def faulty(*arguments: Any) -> Rule:
+        rule = make(*arguments)
+        return replace(rule, weights=change(rule.weights))
+
+    return faulty
+
+
+def polynomials(name: str, count: int, degree: int, miss: float) -> Check:
+    """The exactness of a rule on an interval, made when the check runs."""
+
+    def check() -> None:
+        rule = getattr(test_rules, name)(test_rules.INTERVAL, count)
+        test_rules.test_polynomials_up_to_the_claimed_degree_and_no_further(rule, degree, miss)
+
+    return check
+
+
+def waves(name: str, at_n: float) -> Check:
+    """The exactness of a rule on a ring."""
+    return lambda: test_rules.test_waves_below_the_number_of_panels_and_not_that_number(
+        getattr(test_rules, name), at_n, 8
+    )
+
+
+MISS = test_rules.first_miss_of_composite
+RULES: list[tuple[RuleMaker, Check]] = [
+    (trapezoid, polynomials("trapezoid", 7, 1, MISS("trapezoid", 7))),
+    (simpson, polynomials("simpson", 7, 3, MISS("simpson", 7))),
+    (composite_gauss, polynomials("composite_gauss", 5, 3, MISS("gauss", 5))),
+    (gauss_legendre, polynomials("gauss_legendre", 6, 11, test_rules.missed_by_gauss(6))),
+    (
+        clenshaw_curtis,
+        lambda: test_rules.test_clenshaw_curtis_integrates_its_polynomials_and_aliases_the_next(9),
+    ),
+    (periodic_trapezoid, waves("periodic_trapezoid", 1.0)),
+]
+EQUAL_WEIGHTS = (composite_gauss, periodic_trapezoid)
+"""Rules that no shuffling changes."""
+
+
+@teeth(
+    *[
+        Tooth(f"{make.__name__}: {change.__name__}", everywhere(make, with_weights(make, change)), check)
+        for make, check in RULES
+        for change in (halved_weight, shuffled_weights, half_the_volume)
+        if not (change is shuffled_weights and make in EQUAL_WEIGHTS)
+    ]
+)
+def test_rules_of_quadrature(tooth: Tooth) -> None:
+    assert_bites(tooth)
+
+
+def not_periodised(kernel: type[GaussianKernel | ExponentialKernel]) -> Callable[..., FloatArray]:
+    """The shortest distance in place of the sum over all images."""
+    real = kernel.matrix
+
+    def matrix(self: Any, x: FloatArray, y: FloatArray, domain: Interval | Ring) -> FloatArray:
+        if not isinstance(domain, Ring):
+            return real(self, x, y, domain)
+        return real(self, domain.distance(x, y), np.zeros_like(x + y), Interval(-1.0, 1.0))
+
+    return matrix
+
+
+def without_the_half(self: CosineKernel, k: Any, length: float) -> FloatArray:
+    """a_k times the length for every k: the factor 2 of cos^2 = 1/2 is forgotten."""
+    waves = [np.reshape(a, (-1, 1)) * length * (k == order) for order, a in enumerate(self.coefficients)]
+    return np.asarray(sum(waves))
+
+
+def doubled_symbol(real: Callable[..., Any]) -> Callable[..., Any]:
+    """Twice the symbol of the waves, as where the two halves of a real transform are both counted."""
+
+    def symbol(self: Any, k: Any, length: float) -> FloatArray:
+        return np.asarray(real(self, k, length) * np.where(k > 0, 2.0, 1.0))
+
+    return symbol
+
+
+@teeth(
+    *[
+        Tooth(
+            f"a {name} kernel that is not periodised",
+            member(kernel, "matrix", not_periodised(kernel)),
+            lambda name=name: test_kernels.test_on_a_ring_it_is_the_sum_over_all_images(name),
+        )
+        for name, kernel in (("gaussian", GaussianKernel), ("exponential", ExponentialKernel))
+    ],
+    *[
+        Tooth(
+            f"a factor 2 in the symbol of a {name} kernel",
+            member(kernel, "symbol", doubled_symbol(kernel.symbol)),
+            lambda name=name: test_kernels.test_the_symbol_is_the_cosine_transform_over_the_line(name),
+        )
+        for name, kernel in (("gaussian", GaussianKernel), ("exponential", ExponentialKernel))
+    ],
+    Tooth(
+        "the factor 1/2 forgotten in the symbol of a cosine kernel",
+        member(CosineKernel, "symbol", without_the_half),
+        test_kernels.test_the_symbol_of_a_cosine_kernel_is_that_of_its_matrix,
+    ),
+    Tooth(
+        "widths and strengths exchanged",
+        member(
+            GaussianKernel,
+            "matrix",
+            lambda self, x, y, domain, real=GaussianKernel.matrix: real(
+                GaussianKernel(self.width, np.abs(self.strength)), x, y, domain
+            ),
+        ),
+        lambda: test_kernels.test_on_an_interval_the_kernel_is_the_density_times_its_strength("gaussian"),
+    ),
+)
+def test_kernels_and_symbols(tooth: Tooth) -> None:
+    assert_bites(tooth)
+
+
+def width_decides(batch: FloatArray, matrix: FloatArray) -> FloatArray:
+    """One product of all rows, whose order of summation follows their number, as in a BLAS library."""
+    if len(batch) % 16:
+        return np.asarray(batch[:, ::-1] @ matrix[::-1])
+    return np.asarray(batch @ matrix)
+
+
+def place_decides(batch: FloatArray, matrix: FloatArray) -> FloatArray:
+    """The second half of the rows is summed in the other order."""
+    half = len(batch) // 2
+    return np.concatenate([batch[:half] @ matrix, batch[half:, ::-1] @ matrix[::-1]])
+
+
+@teeth(
+    Tooth(
+        "a plain matrix product, bits by the width of the batch",
+        everywhere(batch_product, width_decides),
+        lambda: test_batch_product.test_every_width_gives_the_same_bits(257, 257),
+    ),
+    Tooth(
+        "a plain matrix product, bits by the place in the batch",
+        everywhere(batch_product, place_decides),
+        lambda: test_batch_product.test_every_order_of_the_rows_gives_the_same_bits(257, 257),
+    ),
+    Tooth(
+        "a product in single precision",
+        everywhere(batch_product, lambda a, b: (a.astype(np.float32) @ b.astype(np.float32)).astype(float)),
+        lambda: test_batch_product.test_values(64, 253, 8),
+    ),
+    Tooth(
+        "a kernel operator with its source reversed",
+        member(
+            test_operators.SharedDenseOperator,
+            "apply",
+            lambda self, source: batch_product(source[:, ::-1], self._transposed),
+        ),
+        lambda: test_operators.test_choice_by_operations(test_operators.INTERVAL, 65, False, "shared dense"),
+    ),
+    Tooth(
+        "a circular product where a linear one is needed",
+        member(
+            test_operators.ToeplitzOperator,
+            "apply",
+            lambda self, source, real=test_operators.ToeplitzOperator.apply: np.roll(
+                real(self, source), 1, axis=-1
+            ),
+        ),
+        lambda: test_operators.test_choice_by_operations(test_operators.INTERVAL, 1025, False, "toeplitz"),
+    ),
+    Tooth(
+        "a last mode that is counted twice",
+        member(Fourier, "coefficients", lambda self, nodal: 2.0 * nodal),
+        lambda: test_operators_of_spaces(),
+    ),
+)
+def test_products_and_operators(tooth: Tooth) -> None:
+    assert_bites(tooth)
