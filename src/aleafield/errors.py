@@ -66,9 +66,7 @@ class InputError(AleafieldError):
 
     def placed(self, file: str | Path, line: int | None) -> InputError:
         """The same error with the place where the entry stands."""
-        return InputError(
-            self.key, self.found, self.needed, nearest=self.nearest, file=file, line=line
-        )
+        return InputError(self.key, self.found, self.needed, nearest=self.nearest, file=file, line=line)
 
 
 def _rebuild(

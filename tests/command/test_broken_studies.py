@@ -1,4 +1,4 @@
-"""Every broken study of tests/messages through the real command: one message, its exit status, no traceback."""
+"""Every broken study of tests/messages through the command: one message, its exit status, no traceback."""
 
 from __future__ import annotations
 
@@ -13,7 +13,9 @@ FILES = broken_files()
 
 
 @pytest.mark.parametrize("entry", FILES, ids=lambda entry: entry.path.stem)
-def test_run_says_what_is_wrong(capsys: pytest.CaptureFixture[str], tmp_path: Path, entry: Expectation) -> None:
+def test_run_says_what_is_wrong(
+    capsys: pytest.CaptureFixture[str], tmp_path: Path, entry: Expectation
+) -> None:
     said = say(capsys, "run", entry.path, "--out", tmp_path / "out", "--workers", 1, "--quiet")
     assert_one_message(said, entry.status)
     assert entry.says in said.err

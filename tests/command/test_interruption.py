@@ -1,4 +1,7 @@
-"""Ctrl-C: exit status 3, one message, the stored chunks stay, and the same command ends with the same values."""
+"""Ctrl-C: exit status 3, one message; the stored chunks stay, and the same command ends with the same values.
+
+Compared is everything in the ensemble, to the bit.
+"""
 
 from __future__ import annotations
 

@@ -1,4 +1,4 @@
-"""A run that ends without what its study demands: everything is written, exit status 1, and one line says why."""
+"""A run that ends without what its study demands: all is written, exit status 1, and one line says why."""
 
 from __future__ import annotations
 
@@ -44,13 +44,17 @@ measure = "maximum"
 method = "monte carlo"
 samples = 200
 """
-"""u' = -u + 2 u^3 from a: 1/u^2 = 2 + (1/a^2 - 2) exp(2 t), infinite in finite time for a > sqrt(1/2) = 0.7071."""
+"""u' = -u + 2 u^3 from a: 1/u^2 = 2 + (1/a^2 - 2) exp(2 t), infinite in finite time for a > sqrt(1/2)."""
 
 
 def test_an_aim_that_is_missed_and_one_that_is_met(
     capsys: pytest.CaptureFixture[str], tmp_path: Path
 ) -> None:
-    for name, tolerance, status in (("tight", '"0.000001 %"', 1), ("loose", '"50 %"', 0), ("absolute", "1e-9", 1)):
+    for name, tolerance, status in (
+        ("tight", '"0.000001 %"', 1),
+        ("loose", '"50 %"', 0),
+        ("absolute", "1e-9", 1),
+    ):
         study = study_file(tmp_path / f"{name}.toml", more=f"[aim]\ntolerance = {tolerance}\n")
         said = say(capsys, "run", study, "--out", tmp_path / name, "--workers", 1, "--quiet")
         assert (said.status, said.out) == (status, "")
@@ -64,9 +68,7 @@ def test_an_aim_that_is_missed_and_one_that_is_met(
             assert said.err == ""
 
 
-def test_the_finished_run_goes_on_missing_its_aim(
-    capsys: pytest.CaptureFixture[str], tmp_path: Path
-) -> None:
+def test_the_finished_run_goes_on_missing_its_aim(capsys: pytest.CaptureFixture[str], tmp_path: Path) -> None:
     study = study_file(tmp_path / "study.toml", more='[aim]\ntolerance = "0.000001 %"\n')
     words = ["run", study, "--out", tmp_path / "out", "--workers", 1, "--quiet"]
     first = say(capsys, *words)
@@ -86,7 +88,9 @@ def test_samples_that_fail_are_named(capsys: pytest.CaptureFixture[str], tmp_pat
     assert failed["reasons"] == {"field_not_finite": failed["count"]}
     assert all(entry["inputs"]["initial.a"] > 0.5**0.5 for entry in failed["list"])
     lines = said.err.splitlines()
-    assert lines[0].startswith(f"aleafield: not met: {failed['count']} of 200 samples failed, more than 5 %: ")
+    assert lines[0].startswith(
+        f"aleafield: not met: {failed['count']} of 200 samples failed, more than 5 %: "
+    )
     for entry in failed["list"][:3]:
         assert f"sample {entry['sample']} (field not finite at t = {entry['time']:.4g})" in lines[0]
     assert "Traceback" not in said.err
@@ -115,6 +119,8 @@ def test_a_statistic_that_was_asked_and_is_not_determined(
     said = say(capsys, "run", study, "--out", tmp_path / "out", "--workers", 1, "--quiet")
     assert said.status == 1
     assert "not met: peak, quantile 0.001: not determined by 64 samples" in said.err
-    statistic = read_summary((tmp_path / "out" / "summary.json").read_text())["quantities"]["peak"]["quantiles"]
+    statistic = read_summary((tmp_path / "out" / "summary.json").read_text())["quantities"]["peak"][
+        "quantiles"
+    ]
     assert statistic["0.001"]["value"] is None
     assert statistic["0.5"]["value"] is not None

@@ -81,7 +81,9 @@ def test_quiet_says_nothing(capsys: pytest.CaptureFixture[str], tmp_path: Path) 
 
 
 @pytest.mark.parametrize("name", ["check", "run", "report", "compare", "extend"])
-def test_every_result_as_json(capsys: pytest.CaptureFixture[str], home: Path, tmp_path: Path, name: str) -> None:
+def test_every_result_as_json(
+    capsys: pytest.CaptureFixture[str], home: Path, tmp_path: Path, name: str
+) -> None:
     if name == "extend":
         home = tmp_path
         study_file(home / "study.toml")

@@ -79,7 +79,7 @@ def test_the_symbol_is_the_cosine_transform_over_the_line(name: str) -> None:
 
 
 def test_the_symbol_of_a_cosine_kernel_is_that_of_its_matrix() -> None:
-    """The periodic trapezoid rule on 16 points is exact for waves below 8; a_k gives a_k length / 2, a_0 length."""
+    """16 points of the periodic trapezoid rule are exact for waves below 8; a_k gives a_k length / 2."""
     kernel = CosineKernel((0.3, np.array([0.5, -1.0]), 0.0, 0.25))
     y = RING.length * np.arange(16) / 16
     values = kernel.matrix(np.zeros((1, 1)), y[None, :], RING)[:, 0]

@@ -61,7 +61,7 @@ def test_defaults() -> None:
 def test_step_linear_and_formula() -> None:
     u = np.tile(U, (3, 1))
     step = StepRate(THRESHOLD, MAXIMUM)
-    np.testing.assert_array_equal(step(u), np.where(U > THRESHOLD[:, None], MAXIMUM[:, None], 0.0))
+    np.testing.assert_array_equal(step(u), np.where(THRESHOLD[:, None] < U, MAXIMUM[:, None], 0.0))
     assert not step(np.array([[0.3], [-0.2], [1.5]])).any(), "a field at its threshold is inactive"
     assert (step.slope(), step.smoothness) == (None, "step")
     linear = LinearRate(GAIN, THRESHOLD)

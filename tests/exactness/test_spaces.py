@@ -104,14 +104,20 @@ class Case:
         return np.stack([getattr(e, part)(row) for e, row in zip(self.elements, rows, strict=True)])
 
 
-@pytest.fixture(params=CASES, ids=lambda c: f"{c[0]}-{'ring' if c[1].periodic else 'interval'}-{c[2]}")
-def case(request: pytest.FixtureRequest) -> Case:
-    projector, domain, n, make_element = request.param
+def make_case(
+    projector: str, domain: Domain, n: int, make_element: Callable[[Space, np.random.Generator], Element]
+) -> Case:
+    """Elements of a space of dimension n; the same ones whenever it is called."""
     space = make_space(projector, domain, n)
     rng = np.random.default_rng(n)
     elements = [make_element(space, rng) for _ in range(N_SAMPLES)]
     nodal = np.stack([e.value(space.nodes) for e in elements])
     return Case(space, elements, space.coefficients(nodal))
+
+
+@pytest.fixture(params=CASES, ids=lambda c: f"{c[0]}-{'ring' if c[1].periodic else 'interval'}-{c[2]}")
+def case(request: pytest.FixtureRequest) -> Case:
+    return make_case(*request.param)
 
 
 @pytest.fixture

@@ -1,10 +1,10 @@
 """The shipped studies solved a second time, by other means: oracles that owe nothing to the package.
 
-Each takes the inputs of S samples (path -> array (S,)) and gives the quantities (name -> array (S,), NaN where
-they do not occur).  The
-numbers that the studies hold as certain are written here again.  Integrals are Gauss-Legendre or periodic
-trapezoid sums of smooth functions at more points than the studies have, time is left to scipy's adaptive method
-of order 8, positions are found by bisection in the interpolant; the front is followed by its interface equation.
+Each takes the inputs of S samples (path -> array (S,)) and gives the quantities (name -> array (S,), NaN
+where they do not occur).  The numbers that the studies hold as certain are written here again.  Integrals are
+Gauss-Legendre or periodic trapezoid sums of smooth functions at more points than the studies have, time is
+left to scipy's adaptive method of order 8, positions are found by bisection in the interpolant; the front is
+followed by its interface equation.
 """
 
 from __future__ import annotations
@@ -82,7 +82,7 @@ def evoked_response(inputs: Mapping[str, Array]) -> dict[str, Array]:
 
 
 def bump_on_a_ring(inputs: Mapping[str, Array]) -> dict[str, Array]:
-    """A bump after 300 ms on the ring of length 2 pi, even about 0; kernels summed over nine images each way."""
+    """A bump after 300 ms on the ring of length 2 pi, even about 0; kernels summed over 19 images."""
     n_samples, n = len(inputs["rate.gain"]), 192
     x = 2 * np.pi * np.arange(n) / n
     images = 2 * np.pi * np.arange(-9, 10)

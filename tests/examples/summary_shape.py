@@ -85,7 +85,10 @@ def assert_is_quantity(entry: Mapping[str, Any], name: str) -> None:
     assert_is_statistic(entry["sd"], f"{name}.sd", low=0.0)
     if entry["occurs"] is not None:
         assert_is_statistic(entry["occurs"], f"{name}.occurs", 0.0, 1.0)
-    for key, group, bounds in (("quantiles", entry["quantiles"], ()), ("exceed", entry["exceed"], (0.0, 1.0))):
+    for key, group, bounds in (
+        ("quantiles", entry["quantiles"], ()),
+        ("exceed", entry["exceed"], (0.0, 1.0)),
+    ):
         for label, statistic in group.items():
             assert repr(float(label)) == label, f"{name}.{key}: {label!r} is not how Python prints a number"
             assert_is_statistic(statistic, f"{name}.{key}.{label}", *bounds)
@@ -156,7 +159,9 @@ def assert_is_interval(entry: Mapping[str, Any], place: str, low: float, high: f
     longer = max(value - ends[0], ends[1] - value)
     assert longer <= total + rounding, place
     if ends[0] > low and ends[1] < high:
-        assert longer == pytest.approx(total, rel=1e-9, abs=rounding), f"{place}: total is not the longer side"
+        assert longer == pytest.approx(total, rel=1e-9, abs=rounding), (
+            f"{place}: total is not the longer side"
+        )
 
 
 def assert_is_scheme(scheme: Mapping[str, Any]) -> None:

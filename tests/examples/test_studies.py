@@ -1,7 +1,7 @@
 """Every shipped study reads, is checked and runs with few samples; its numbers are those of another solver.
 
-The samples of run and oracle are the same, so that the means differ by the discretisation alone: at most by the
-sum of the parts that the run states for its mean, and the noise of these.
+The samples of run and oracle are the same, so that the means differ by the discretisation alone: at most by
+the sum of the parts that the run states for its mean, and the noise of these.
 """
 
 from __future__ import annotations

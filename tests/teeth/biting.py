@@ -78,6 +78,7 @@ def member(owner: Any, name: str, faulty: Any) -> Plant:
 
 
 def _modules() -> Iterator[ModuleType]:
+    """Loaded modules of the product and of its tests; the teeth keep what they know to be right."""
     for name, module in list(sys.modules.items()):
-        if name.split(".")[0] in ("aleafield", "tests") and name != __name__:
+        if name.split(".")[0] in ("aleafield", "tests") and not name.startswith("tests.teeth"):
             yield module

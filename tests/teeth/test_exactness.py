@@ -10,7 +10,8 @@ import numpy as np
 
 from aleafield.arrays import FloatArray, batch_product
 from aleafield.field.kernels import CosineKernel, ExponentialKernel, GaussianKernel
-from aleafield.formula.parser import _Compiler
+from aleafield.field.parameter import per_sample
+from aleafield.field.rates import LogisticRate, RampRate, StepRate
 from aleafield.geometry import Interval, Ring
 from aleafield.quadrature import (
     Rule,
@@ -22,8 +23,7 @@ from aleafield.quadrature import (
     simpson,
     trapezoid,
 )
-from aleafield.spaces.fourier import Fourier
-from aleafield.stepping import runge_kutta
+from aleafield.spaces import Chebyshev, Legendre, PiecewiseLinear
 from tests.exactness import (
     test_batch_product,
     test_crossings,
@@ -31,9 +31,8 @@ from tests.exactness import (
     test_operators,
     test_rates,
     test_rules,
-    test_stepping,
+    test_spaces,
 )
-from tests.properties import test_formula_properties
 from tests.teeth.biting import Check, Tooth, assert_bites, everywhere, member, teeth
 
 RuleMaker = Callable[..., Rule]
@@ -225,11 +224,125 @@ def place_decides(batch: FloatArray, matrix: FloatArray) -> FloatArray:
         ),
         lambda: test_operators.test_choice_by_operations(test_operators.INTERVAL, 1025, False, "toeplitz"),
     ),
-    Tooth(
-        "a last mode that is counted twice",
-        member(Fourier, "coefficients", lambda self, nodal: 2.0 * nodal),
-        lambda: test_operators_of_spaces(),
-    ),
 )
 def test_products_and_operators(tooth: Tooth) -> None:
+    assert_bites(tooth)
+
+
+def space_check(projector: str, domain: Interval | Ring, n: int, check: Callable[..., None]) -> Check:
+    """A test of the spaces on one of their cases, made when the check runs."""
+    found = next(case for case in test_spaces.CASES if case[:3] == (projector, domain, n))
+    return lambda: check(test_spaces.make_case(*found))
+
+
+def sum_of_squares(self: Any, u: FloatArray) -> FloatArray:
+    """The trapezoid rule at the nodes in place of the exact integral."""
+    return np.asarray((u**2 * self.integral_weights).sum(axis=-1))
+
+
+@teeth(
+    Tooth(
+        "the integral of a square by the nodes alone",
+        member(PiecewiseLinear, "square_integral", sum_of_squares),
+        space_check("piecewise linear", test_spaces.INTERVAL, 33, test_spaces.test_integral_of_the_square),
+    ),
+    Tooth(
+        "the spectrum of the nodes in place of the interpolant's",
+        member(
+            PiecewiseLinear,
+            "fourier_coefficient",
+            lambda self, u, k: (u * np.exp(-2j * np.pi * k * self.nodes / self.domain.length)).mean(axis=-1),
+        ),
+        space_check(
+            "piecewise linear", test_spaces.RING, 33, test_spaces.test_fourier_coefficients_of_the_interpolant
+        ),
+    ),
+    Tooth(
+        "a derivative per node in place of per length",
+        member(
+            Chebyshev,
+            "derivative_matrix",
+            lambda self, x, order=1, real=Chebyshev.derivative_matrix: (
+                real(self, x, order) * (self.domain.length / 2.0) ** order
+            ),
+        ),
+        space_check(
+            "chebyshev", test_spaces.INTERVAL, 17, lambda case: test_spaces.test_derivatives(case, 1, "slope")
+        ),
+    ),
+    Tooth(
+        "coefficients in the reverse order",
+        member(
+            Legendre,
+            "nodal",
+            lambda self, u, real=Legendre.nodal: real(self, np.ascontiguousarray(u[:, ::-1])),
+        ),
+        space_check(
+            "legendre", test_spaces.INTERVAL, 8, test_spaces.test_nodal_values_and_unknowns_are_one_element
+        ),
+    ),
+    Tooth(
+        "a mass matrix that is lumped",
+        member(PiecewiseLinear, "mass_matrix", lambda self: np.diag(self.integral_weights)),
+        space_check("piecewise linear", test_spaces.INTERVAL, 8, test_spaces.test_mass_matrix),
+    ),
+)
+def test_spaces_of_functions(tooth: Tooth) -> None:
+    assert_bites(tooth)
+
+
+def nodal_sampling(values: FloatArray, threshold: Any, spacing: float, periodic: bool) -> FloatArray:
+    """A point counts whole where it is above the threshold: order 1, and bumps pinned to the points."""
+    weights = np.where(values > np.reshape(threshold, (-1, 1)), spacing, 0.0)
+    if not periodic:
+        weights[:, [0, -1]] *= 0.5
+    return weights
+
+
+def exchanged_sides(values: FloatArray, threshold: Any, spacing: float, periodic: bool) -> FloatArray:
+    """The weights of the field turned round: left and right parts of a segment are taken for one another."""
+    return crossing_weights(values[:, ::-1], threshold, spacing, periodic)
+
+
+@teeth(
+    Tooth(
+        "a step rate sampled at the nodes",
+        everywhere(crossing_weights, nodal_sampling),
+        lambda: test_crossings.test_exact_for_a_linear_function_under_a_linear_kernel(1.0, 33),
+    ),
+    Tooth(
+        "a step rate sampled at the nodes, seen by its order",
+        everywhere(crossing_weights, nodal_sampling),
+        test_crossings.test_order_two_for_a_smooth_function_on_a_ring,
+    ),
+    Tooth(
+        "left and right of a crossing exchanged",
+        everywhere(crossing_weights, exchanged_sides),
+        test_crossings.test_weights_of_single_segments_as_published_in_the_study_file,
+    ),
+    Tooth(
+        "a field at its threshold that is active",
+        member(
+            StepRate,
+            "__call__",
+            lambda self, u: np.where(u >= per_sample(self.threshold, 1), per_sample(self.maximum, 1), 0.0),
+        ),
+        test_rates.test_step_linear_and_formula,
+    ),
+    Tooth(
+        "a gain that is dropped",
+        member(
+            LogisticRate,
+            "__call__",
+            lambda self, u, real=LogisticRate.__call__: real(replace(self, gain=1.0), u),
+        ),
+        lambda: test_rates.test_a_bounded_rate_is_a_distribution_function("logistic"),
+    ),
+    Tooth(
+        "a slope of the half of the gain",
+        member(RampRate, "slope", lambda self: abs(self.maximum * self.gain) / 2),
+        lambda: test_rates.test_the_largest_slope("ramp"),
+    ),
+)
+def test_rates_and_crossings(tooth: Tooth) -> None:
     assert_bites(tooth)

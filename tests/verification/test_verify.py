@@ -1,4 +1,4 @@
-"""`aleafield verify` prints what it finds, passes, and goes red when an answer or an expectation is changed."""
+"""`aleafield verify` prints what it finds, passes, and goes red when an answer or expectation is changed."""
 
 from __future__ import annotations
 

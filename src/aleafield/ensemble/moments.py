@@ -69,7 +69,9 @@ class FieldMoments:
         if self.count < 2:
             return np.zeros_like(self.first[0])
         high, low = self.first
-        square = (self.second[0] - high * (high / self.count)) + (self.second[1] - 2 * low * (high / self.count))
+        square = (self.second[0] - high * (high / self.count)) + (
+            self.second[1] - 2 * low * (high / self.count)
+        )
         return np.sqrt(np.maximum(square, 0.0) / (self.count - 1))
 
 

@@ -153,7 +153,9 @@ class ExponentialKernel(Kernel):
         width = _broadcast(self.width, z)  # type: ignore[arg-type]
         scale = _broadcast(self.strength, z) / (2 * width)  # type: ignore[arg-type]
         if domain.periodic:  # geometric series of the images
-            total = (np.exp(-z / width) + np.exp(-(domain.length - z) / width)) / -np.expm1(-domain.length / width)
+            total = (np.exp(-z / width) + np.exp(-(domain.length - z) / width)) / -np.expm1(
+                -domain.length / width
+            )
         else:
             total = np.exp(-z / width)
         return np.asarray(scale * total)

@@ -107,7 +107,11 @@ class Bindable:
                     yield path, value, spec.metadata
             elif "beside" in spec.metadata:
                 for name, entry in value.items():
-                    yield f"{prefix}.{name}", entry, {"dimension": DIMENSIONLESS, "positive": False, "beside": True}
+                    yield (
+                        f"{prefix}.{name}",
+                        entry,
+                        {"dimension": DIMENSIONLESS, "positive": False, "beside": True},
+                    )
 
     def uncertain(self, prefix: str) -> Iterator[Uncertain]:
         """The laws written in this object, with their paths."""

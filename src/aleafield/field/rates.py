@@ -25,7 +25,7 @@ class Rate(Bindable, ABC):
     @property
     @abstractmethod
     def smoothness(self) -> Smoothness:
-        """"smooth", "kinked" (continuous, derivative jumps) or "step"."""
+        """ "smooth", "kinked" (continuous, derivative jumps) or "step"."""
 
     @property
     def bounded(self) -> bool:

@@ -69,7 +69,9 @@ class FieldModel:
         self.design = design
         self.time_step = time_step
         self.quantities = tuple(
-            replace(q, reference=references[q.name]) if isinstance(q, PeakPosition) and q.name in references else q
+            replace(q, reference=references[q.name])
+            if isinstance(q, PeakPosition) and q.name in references
+            else q
             for q in quantities
         )
         self._inputs = tuple(inputs)

@@ -65,7 +65,9 @@ def bracketed_roots(
             # so short a Newton step squares the error to below rounding, and may leave the bracket by rounding
             last = np.abs(newton - x) <= _LAST_NEWTON * resolution
         following = np.where(inside & quick, newton, 0.5 * (top + bottom))
-        following = np.where(last, np.clip(newton, np.minimum(top, bottom), np.maximum(top, bottom)), following)
+        following = np.where(
+            last, np.clip(newton, np.minimum(top, bottom), np.maximum(top, bottom)), following
+        )
         following = np.where(value == 0, x, following)
         length = np.abs(following - x)
         place[searching], step[searching] = following, length

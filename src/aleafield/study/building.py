@@ -192,9 +192,13 @@ def _numbers(item: Any) -> list[str]:
 
 def _term(term: FormulaTerm | Number) -> list[str]:
     if isinstance(term, Law):
-        raise InputError("drive", f"{term.text} given", "a law needs a name beside a formula: term('a', a=law)")
+        raise InputError(
+            "drive", f"{term.text} given", "a law needs a name beside a formula: term('a', a=law)"
+        )
     if not isinstance(term, FormulaTerm):
-        text = term if isinstance(term, str) else term.text if isinstance(term, Formula) else repr(float(term))
+        text = (
+            term if isinstance(term, str) else term.text if isinstance(term, Formula) else repr(float(term))
+        )
         return [f"formula = {_quoted(text)}"]
     return [f"formula = {_quoted(term.formula.text)}", *_entries(term.names)]
 

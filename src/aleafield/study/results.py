@@ -78,7 +78,9 @@ class Result:
         import xarray
 
         if not 0 <= index < self._plan.samples:
-            raise InputError("index", f"{index} given", f"a sample from 0 to {self._plan.samples - 1} is needed")
+            raise InputError(
+                "index", f"{index} given", f"a sample from 0 to {self._plan.samples - 1} is needed"
+            )
         model = planned_model(self.study, self._plan)
         times = model.schedule().times
         if len(times) > MOST_STEPS_KEPT + 1:

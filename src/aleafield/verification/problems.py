@@ -299,7 +299,9 @@ duration = 1.7
 """,
     exact=_front,
     points=np.linspace(0.1, 3.0, 201),
-    series=(Series("piecewise linear", "collocation", "nodes", (151, 301, 601), 2, 1e-3, order_tolerance=0.5),),
+    series=(
+        Series("piecewise linear", "collocation", "nodes", (151, 301, 601), 2, 1e-3, order_tolerance=0.5),
+    ),
 )
 
 PROBLEMS = (_SMOOTH, _KINKED, _DIAGONAL, _LEGENDRE, _POISSON, _ROTATING, _BUMP, _FRONT)

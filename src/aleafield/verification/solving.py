@@ -150,4 +150,6 @@ def table(verdicts: list[Verdict]) -> str:
             )
         )
     widths = [max(len(row[i]) for row in rows) for i in range(len(header))]
-    return "\n".join("  ".join(cell.ljust(w) for cell, w in zip(row, widths, strict=True)).rstrip() for row in rows)
+    return "\n".join(
+        "  ".join(cell.ljust(w) for cell, w in zip(row, widths, strict=True)).rstrip() for row in rows
+    )

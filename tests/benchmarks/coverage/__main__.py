@@ -49,7 +49,9 @@ def main() -> int:
             rows.extend(found)
             elapsed = time.monotonic() - start
             left = elapsed / done * (arguments.instances - done)
-            print(f"\r{done} of {arguments.instances}, {left:.0f} s left ", end="", file=sys.stderr, flush=True)
+            print(
+                f"\r{done} of {arguments.instances}, {left:.0f} s left ", end="", file=sys.stderr, flush=True
+            )
     print(file=sys.stderr)
     seconds = time.monotonic() - start
     if arguments.rows:
@@ -58,7 +60,9 @@ def main() -> int:
     passed = all(c.passed for c in cells) and all(
         c.coverage < c.floor for c in negative if c.instances >= LEAST_INSTANCES
     )
-    command = f"python -m tests.benchmarks.coverage --instances {arguments.instances} --block {arguments.block}"
+    command = (
+        f"python -m tests.benchmarks.coverage --instances {arguments.instances} --block {arguments.block}"
+    )
     page = INTRODUCTION.format(
         command=command, date=time.strftime("%Y-%m-%d"), seconds=seconds, cores=arguments.workers
     )
@@ -71,10 +75,15 @@ def main() -> int:
 
 
 def _table(cells: list[Cell], verdict: str) -> str:
-    lines = [f"| stratum | instances | coverage | floor | total / true error | {verdict} |", "|---|---|---|---|---|---|"]
+    lines = [
+        f"| stratum | instances | coverage | floor | total / true error | {verdict} |",
+        "|---|---|---|---|---|---|",
+    ]
     for c in cells:
         kept = "not judged" if c.instances < LEAST_INSTANCES else "yes" if c.coverage >= c.floor else "**no**"
-        lines.append(f"| {c.name} | {c.instances} | {c.coverage:.3f} | {c.floor:.3f} | {c.ratio:.2f} | {kept} |")
+        lines.append(
+            f"| {c.name} | {c.instances} | {c.coverage:.3f} | {c.floor:.3f} | {c.ratio:.2f} | {kept} |"
+        )
     return "\n".join(lines) + "\n"
 
 

@@ -119,7 +119,9 @@ def _row(
     if value is not None and interval is not None and None not in interval:
         inside = bool(interval[0] <= truth <= interval[1])
         bias = float(sum(error[part] or 0.0 for part in BIAS_PARTS))
-        bare = [(error[p] or 0.0) / (stated.get("orders", {}).get(p, {}).get("factor") or 1.0) for p in BIAS_PARTS]
+        bare = [
+            (error[p] or 0.0) / (stated.get("orders", {}).get(p, {}).get("factor") or 1.0) for p in BIAS_PARTS
+        ]
         half = float(np.sqrt(sum(b**2 for b in bare) + (error["sampling"] or 0.0) ** 2))
         inside_rss = bool(abs(truth - value) <= half)
         inside_sampling = bool(abs(truth - value) <= (error["sampling"] or 0.0))

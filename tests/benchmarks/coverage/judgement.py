@@ -74,7 +74,9 @@ def cell(name: str, rows: Sequence[Row], hit: Callable[[Row], bool | None] = lam
         for r in rows
         if r.inside is not None and r.total is not None and r.value is not None and r.value != r.truth
     ]
-    return Cell(name, len(instances), coverage, floor(len(instances)), float(np.median(ratios)) if ratios else np.nan)
+    return Cell(
+        name, len(instances), coverage, floor(len(instances)), float(np.median(ratios)) if ratios else np.nan
+    )
 
 
 def group(row: Row) -> str:
@@ -114,7 +116,11 @@ def controls(rows: Sequence[Row]) -> Iterator[Cell]:
 
 def wald(row: Row) -> bool | None:
     """Whether the textbook normal interval of a rare probability holds the truth (plain Monte Carlo)."""
-    if row.method != "monte carlo" or row.statistic not in ("exceed 0.02", "exceed 0.98") or row.value is None:
+    if (
+        row.method != "monte carlo"
+        or row.statistic not in ("exceed 0.02", "exceed 0.98")
+        or row.value is None
+    ):
         return None
     if row.samples > 128 or row.bias is None or row.bias > (row.sampling or 0.0) / 3:
         return None

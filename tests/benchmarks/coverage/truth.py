@@ -35,7 +35,9 @@ def random_law(rng: np.random.Generator, low: float, high: float) -> Law:
     if kind == 2:
         mean, sd = low + 0.5 * span, span * float(rng.uniform(0.2, 0.6))
         a, b = (low - mean) / sd, (high - mean) / sd
-        return Law(f"truncated_normal({mean!r}, {sd!r}, {low!r}, {high!r})", stats.truncnorm(a, b, mean, sd).ppf)
+        return Law(
+            f"truncated_normal({mean!r}, {sd!r}, {low!r}, {high!r})", stats.truncnorm(a, b, mean, sd).ppf
+        )
     p, q = float(rng.uniform(1.5, 4)), float(rng.uniform(1.5, 4))
     return Law(f"beta({p!r}, {q!r}, {low!r}, {high!r})", stats.beta(p, q, low, span).ppf)
 
