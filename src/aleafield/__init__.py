@@ -56,11 +56,11 @@ if TYPE_CHECKING:
         TruncatedNormal,
         Uniform,
     )
+    from aleafield.runs.check import check
+    from aleafield.runs.compare import compare
+    from aleafield.runs.results import Result, extend, open_run, run
     from aleafield.study.building import build_study, term
-    from aleafield.study.check import check
-    from aleafield.study.compare import compare
     from aleafield.study.reading import read_study
-    from aleafield.study.results import Result, extend, open_run, run
 
 _HOMES: dict[str, tuple[str, ...]] = {
     "aleafield.errors": ("AleafieldError", "ArchiveError", "InputError", "Interrupted"),
@@ -106,10 +106,10 @@ _HOMES: dict[str, tuple[str, ...]] = {
         "Uniform",
     ),
     "aleafield.study.building": ("build_study", "term"),
-    "aleafield.study.check": ("check",),
-    "aleafield.study.compare": ("compare",),
+    "aleafield.runs.check": ("check",),
+    "aleafield.runs.compare": ("compare",),
     "aleafield.study.reading": ("read_study",),
-    "aleafield.study.results": ("Result", "extend", "open_run", "run"),
+    "aleafield.runs.results": ("Result", "extend", "open_run", "run"),
 }
 _HOME = {name: module for module, names in _HOMES.items() for name in names}
 

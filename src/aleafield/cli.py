@@ -19,8 +19,8 @@ from aleafield.errors import AleafieldError, InputError
 from aleafield.report.caution import CAUTION
 
 if TYPE_CHECKING:
-    from aleafield.study.progress import Progress
-    from aleafield.study.run import RunResult
+    from aleafield.runs.progress import Progress
+    from aleafield.runs.run import RunResult
 
 DONE, UNMET, AT_FAULT, INTERRUPTED = 0, 1, 2, 3
 
@@ -135,7 +135,7 @@ def _check(arguments: argparse.Namespace) -> int:
         error = InputError("", "there is no such file", "a minimal valid study is:", file=arguments.study)
         print(f"aleafield: {error}\n\n{MINIMAL_STUDY}", file=sys.stderr)
         return AT_FAULT
-    from aleafield.study.check import check
+    from aleafield.runs.check import check
 
     result = check(read_study(arguments.study))
     if arguments.json:
@@ -146,23 +146,23 @@ def _check(arguments: argparse.Namespace) -> int:
 
 
 def _run(arguments: argparse.Namespace) -> int:
+    from aleafield.runs.run import run
     from aleafield.study.reading import read_study
-    from aleafield.study.run import run
 
     study = read_study(arguments.study)
     return _say(arguments, run(study, arguments.out, arguments.workers, _progress(arguments)))
 
 
 def _report(arguments: argparse.Namespace) -> int:
+    from aleafield.runs.report import report
     from aleafield.study.reading import read_study
-    from aleafield.study.report import report
 
     study = None if arguments.study is None else read_study(arguments.study)
     return _say(arguments, report(arguments.folder, study))
 
 
 def _extend(arguments: argparse.Namespace) -> int:
-    from aleafield.study.extend import extend
+    from aleafield.runs.extend import extend
 
     return _say(
         arguments, extend(arguments.folder, arguments.samples, arguments.workers, _progress(arguments))
@@ -170,7 +170,7 @@ def _extend(arguments: argparse.Namespace) -> int:
 
 
 def _compare(arguments: argparse.Namespace) -> int:
-    from aleafield.study.compare import compare
+    from aleafield.runs.compare import compare
 
     comparison = compare(arguments.folder_a, arguments.folder_b)
     if arguments.json:
@@ -201,7 +201,7 @@ def _verify(arguments: argparse.Namespace) -> int:
 
 
 def _progress(arguments: argparse.Namespace) -> Progress | None:
-    from aleafield.study.progress import ProgressLine
+    from aleafield.runs.progress import ProgressLine
 
     return None if arguments.quiet else ProgressLine()
 

@@ -19,9 +19,7 @@ from aleafield.archive.ensemble_file import Summary
 from aleafield.archive.ensemble_reader import EnsembleReader
 from aleafield.archive.layout import Layout
 from aleafield.archive.lock import locked
-from aleafield.sampling.allocation import Allocation
-from aleafield.sampling.request import SamplingMethod
-from aleafield.study.execution import (
+from aleafield.runs.execution import (
     Cost,
     Question,
     clear_parts,
@@ -30,9 +28,11 @@ from aleafield.study.execution import (
     put_together,
     stored_ensemble,
 )
-from aleafield.study.plan_file import Plan, count_probes, read_plan, with_more_samples, write_plan
-from aleafield.study.progress import NoProgress
-from aleafield.study.statements import Asked, statements_of
+from aleafield.runs.plan_file import Plan, count_probes, read_plan, with_more_samples, write_plan
+from aleafield.runs.progress import NoProgress
+from aleafield.runs.statements import Asked, statements_of
+from aleafield.sampling.allocation import Allocation
+from aleafield.sampling.request import SamplingMethod
 from tests.archive.analytic_model import DURATION, AnalyticModel
 
 ROOT = Path(__file__).resolve().parents[2]

@@ -9,7 +9,7 @@ import numpy as np
 import pytest
 
 from aleafield.archive.ensemble_reader import open_ensemble
-from aleafield.study.run import run
+from aleafield.runs.run import run
 from tests.archive.campaign import campaign
 from tests.archive.studies import linear_ring
 

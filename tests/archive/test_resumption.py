@@ -116,7 +116,7 @@ def test_extension_beyond_the_kept_samples(tmp_path: Path) -> None:
 
 def test_an_extension_that_was_stopped_is_finished_by_a_plain_call(undisturbed: Path, tmp_path: Path) -> None:
     from aleafield.archive.layout import Layout
-    from aleafield.study.plan_file import read_plan, with_more_samples, write_plan
+    from aleafield.runs.plan_file import read_plan, with_more_samples, write_plan
     from tests.archive.analytic_model import AnalyticModel
     from tests.archive.campaign import allocation_of
 

@@ -11,9 +11,9 @@ import pytest
 from aleafield.archive.ensemble_reader import open_ensemble, reading
 from aleafield.archive.layout import Layout
 from aleafield.errors import ArchiveError, InputError
-from aleafield.study.compare import compare
-from aleafield.study.extend import extend
-from aleafield.study.run import run
+from aleafield.runs.compare import compare
+from aleafield.runs.extend import extend
+from aleafield.runs.run import run
 from tests.archive.campaign import assert_same_values
 from tests.archive.studies import linear_ring, peak_of_linear_ring
 
@@ -74,7 +74,7 @@ def test_every_chunk_width(finished: Path, tmp_path: Path, width: int) -> None:
 def test_every_number_of_workers(
     finished: Path, tmp_path: Path, workers: int, monkeypatch: pytest.MonkeyPatch
 ) -> None:
-    monkeypatch.setattr("aleafield.study.execution.WORTH_A_PROCESS", 1.0)
+    monkeypatch.setattr("aleafield.runs.execution.WORTH_A_PROCESS", 1.0)
     run(linear_ring(128), tmp_path / "out", workers=workers, chunk_width=16)
     assert_same_values(tmp_path / "out", finished)
 

@@ -12,10 +12,10 @@ from scipy.stats import norm
 from aleafield.errors import InputError
 from aleafield.forward.field_model import FieldModel
 from aleafield.randomness.design import Design
-from aleafield.study.check import CheckResult, check
+from aleafield.runs.check import CheckResult, check
+from aleafield.stepping.runge_kutta import REAL_AXIS
 from aleafield.study.minimal import MINIMAL_STUDY
 from aleafield.study.reading import read_text
-from aleafield.stepping.runge_kutta import REAL_AXIS
 
 INTERVAL = 'shape = "interval"\nfrom = -10.0\nto = 10.0'
 RING = 'shape = "ring"\nlength = 20.0'

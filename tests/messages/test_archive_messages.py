@@ -17,11 +17,11 @@ from aleafield.arrays import IntArray
 from aleafield.ensemble.level import Level
 from aleafield.ensemble.records import Records
 from aleafield.errors import AleafieldError, ArchiveError, InputError, Interrupted
-from aleafield.study.compare import compare
-from aleafield.study.extend import extend
-from aleafield.study.progress import ProgressLine
-from aleafield.study.run import run
-from aleafield.study.workers import Solver, solved
+from aleafield.runs.compare import compare
+from aleafield.runs.extend import extend
+from aleafield.runs.progress import ProgressLine
+from aleafield.runs.run import run
+from aleafield.runs.workers import Solver, solved
 from tests.archive.analytic_model import AnalyticModel
 from tests.archive.studies import linear_ring
 

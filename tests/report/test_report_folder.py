@@ -10,12 +10,12 @@ from pathlib import Path
 import pytest
 
 from aleafield.errors import ArchiveError
-from aleafield.study.planning import make_plan
+from aleafield.runs.planning import make_plan
+from aleafield.runs.report import report
+from aleafield.runs.run import run
+from aleafield.runs.wording import model_text
 from aleafield.study.reading import read_text
-from aleafield.study.report import report
-from aleafield.study.run import run
 from aleafield.study.study import Study
-from aleafield.study.wording import model_text
 from tests.report.reading import number, page_tree, rows, section, words
 
 STUDY = """title = "A small ring"

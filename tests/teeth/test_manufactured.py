@@ -9,17 +9,17 @@ from typing import Any
 import numpy as np
 
 from aleafield.arrays import FloatArray
-from aleafield.field.kernels import FormulaKernel
+from aleafield.field.kernels import ExponentialKernel, FormulaKernel, GaussianKernel
 from aleafield.projection.integral import RateSources
 from aleafield.projection.restriction import MassRestriction
 from aleafield.projection.semidiscrete import ProjectedTerm, SemiDiscreteField
-from aleafield.quadrature import Rule, clenshaw_curtis, crossing_weights
+from aleafield.quadrature import Rule, active_moments, clenshaw_curtis, crossing_weights
 from aleafield.stepping import runge_kutta
 from aleafield.verification.problems import PROBLEMS
 from aleafield.verification.solving import verdict
 from tests.manufactured import problems, test_interval, test_line, test_ring
 from tests.teeth.biting import Check, Tooth, assert_bites, everywhere, member, teeth
-from tests.teeth.test_exactness import nodal_sampling
+from tests.teeth.test_exactness import doubled_symbol, nodal_sampling, not_periodised
 from tests.teeth.test_stepping import wrong_weight
 
 
@@ -34,7 +34,9 @@ REAL_MATRIX = FormulaKernel.matrix
 def without_time_constant(real: Callable[..., None]) -> Callable[..., None]:
     """tau = 1 whatever the study says."""
 
-    def constructed(self: Any, space: Any, integral: Any, drive: Any, initial: Any, _: Any, *rest: Any) -> None:
+    def constructed(
+        self: Any, space: Any, integral: Any, drive: Any, initial: Any, _: Any, *rest: Any
+    ) -> None:
         real(self, space, integral, drive, initial, 1.0, *rest)
 
     return constructed
@@ -44,6 +46,20 @@ def shuffled_rule(*arguments: Any) -> Rule:
     """Clenshaw-Curtis weights in other places."""
     rule = clenshaw_curtis(*arguments)
     return replace(rule, weights=np.roll(rule.weights, 2))
+
+
+def nodal_moments(
+    values: FloatArray,
+    points: FloatArray,
+    threshold: Any,
+    spacing: float,
+    domain: Any,
+    wavenumbers: FloatArray,
+) -> tuple[FloatArray, FloatArray]:
+    """Moments of the active set with its points counted whole."""
+    weights = nodal_sampling(values, threshold, spacing, domain.periodic)
+    phases = np.outer(points, wavenumbers)
+    return weights @ np.cos(phases), weights @ np.sin(phases)
 
 
 def growing(self: Any, t: float, u: FloatArray, inside: float | None = None) -> FloatArray:
@@ -95,9 +111,7 @@ BUMP: Check = lambda: test_ring.test_bump_under_a_step_rate("piecewise linear", 
         member(SemiDiscreteField, "__init__", without_time_constant(SemiDiscreteField.__init__)),
         verified(-1, "piecewise linear", "nodes"),
     ),
-    Tooth(
-        "shuffled weights", everywhere(clenshaw_curtis, shuffled_rule), solved("chebyshev", "collocation")
-    ),
+    Tooth("shuffled weights", everywhere(clenshaw_curtis, shuffled_rule), solved("chebyshev", "collocation")),
     Tooth(
         "shuffled weights, seen by verify",
         everywhere(clenshaw_curtis, shuffled_rule),
@@ -107,16 +121,19 @@ BUMP: Check = lambda: test_ring.test_bump_under_a_step_rate("piecewise linear", 
         "a weight of the integral that is halved",
         member(
             RateSources,
-            "__call__",
-            lambda self, values, real=RateSources.__call__: real(self, values)
-            * np.where(np.arange(values.shape[-1]) == 3, 0.5, 1.0),
+            "of",
+            lambda self, values, real=RateSources.of: (
+                real(self, values) * np.where(np.arange(values.shape[-1]) == 3, 0.5, 1.0)
+            ),
         ),
         ORDER_TWO,
     ),
     Tooth("a decay that is left out", member(SemiDiscreteField, "rate_of_change", growing), ORDER_TWO),
     Tooth(
         "a drive taken at the start of the run",
-        member(ProjectedTerm, "at", lambda self, t, inside=None, real=ProjectedTerm.at: real(self, 0.0, inside)),
+        member(
+            ProjectedTerm, "at", lambda self, t, inside=None, real=ProjectedTerm.at: real(self, 0.0, inside)
+        ),
         ORDER_TWO,
     ),
     Tooth(
@@ -125,7 +142,17 @@ BUMP: Check = lambda: test_ring.test_bump_under_a_step_rate("piecewise linear", 
         lambda: test_interval.test_piecewise_linear_matched_is_of_order_two(problems.analytic, "galerkin"),
     ),
     Tooth("a step rate sampled at the nodes", everywhere(crossing_weights, nodal_sampling), FRONT),
-    Tooth("a step rate sampled at the nodes, on a ring", everywhere(crossing_weights, nodal_sampling), BUMP),
+    Tooth("a step rate sampled at the nodes, on a ring", everywhere(active_moments, nodal_moments), BUMP),
+    Tooth(
+        "a kernel that is not periodised",
+        member(ExponentialKernel, "matrix", not_periodised(ExponentialKernel)),
+        test_ring.test_sampling_a_kinked_kernel_is_of_order_two,
+    ),
+    Tooth(
+        "a factor 2 in the symbol",
+        member(GaussianKernel, "symbol", doubled_symbol(GaussianKernel.symbol)),
+        test_ring.test_exact_symbol_needs_no_smooth_kernel,
+    ),
     Tooth(
         "a stage weight, seen by the growth of modes",
         everywhere(runge_kutta._step, wrong_weight),

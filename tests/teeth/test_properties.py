@@ -1,4 +1,4 @@
-"""Faults that the property tests must see: formulas that run, rows that see each other, studies that crash."""
+"""Faults that the property tests must see: formulas that run, rows that see others, studies that crash."""
 
 from __future__ import annotations
 

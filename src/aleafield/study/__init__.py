@@ -1,1 +1,1 @@
-"""From a study file to its answers: reading, checking, planning, running; sees both halves."""
+"""What a study says: the records, the study file and its reader, studies built in Python."""

@@ -11,10 +11,10 @@ import numpy as np
 
 from aleafield.arrays import FloatArray
 from aleafield.ensemble.level import Level
+from aleafield.runs.model import Choices, field_model
 from aleafield.sampling.allocation import Allocation
 from aleafield.stepping.runge_kutta import integrate
 from aleafield.stepping.view import StepView
-from aleafield.study.model import Choices, field_model
 from aleafield.study.reading import read_text
 from aleafield.verification.problem import KnownProblem, Series
 

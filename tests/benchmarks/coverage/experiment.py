@@ -78,8 +78,8 @@ def study_text(instance: Instance, method: str, samples: int, seed: int) -> str:
 
 def run_instance(block: int, index: int) -> list[Row]:
     """Run one instance through the same code as ``aleafield run`` and judge its summary."""
+    from aleafield.runs.run import run
     from aleafield.study.reading import read_text
-    from aleafield.study.run import run
 
     instance, method, samples = instance_of(block, index)
     text = study_text(instance, method, samples, seed=1 + index + 100_000 * block)

@@ -8,15 +8,15 @@ from pathlib import Path
 from aleafield.archive.layout import Layout
 from aleafield.archive.lock import locked
 from aleafield.errors import ArchiveError
-from aleafield.study.execution import is_complete, put_together
-from aleafield.study.folder import stored_study, stored_text, write_study
-from aleafield.study.plan_file import read_plan
-from aleafield.study.planning import planned_model
-from aleafield.study.question import question_of
-from aleafield.study.reporting import write_report
-from aleafield.study.run import RunResult
+from aleafield.runs.execution import is_complete, put_together
+from aleafield.runs.folder import stored_study, stored_text, write_study
+from aleafield.runs.plan_file import read_plan
+from aleafield.runs.planning import planned_model
+from aleafield.runs.question import question_of
+from aleafield.runs.reporting import write_report
+from aleafield.runs.run import RunResult
+from aleafield.runs.summary import unmet
 from aleafield.study.study import Study
-from aleafield.study.summary import unmet
 
 
 def report(folder: Path | str, study: Study | None = None) -> RunResult:

@@ -22,9 +22,9 @@ from aleafield.archive.table import write_table
 from aleafield.ensemble.forward_model import ForwardModel
 from aleafield.ensemble.level import Level
 from aleafield.errors import Interrupted
-from aleafield.study.plan_file import Plan
-from aleafield.study.progress import Progress
-from aleafield.study.workers import Solver, solved
+from aleafield.runs.plan_file import Plan
+from aleafield.runs.progress import Progress
+from aleafield.runs.workers import Solver, solved
 
 WORTH_A_PROCESS = 4e9
 """Operations below which a worker process is not worth its start, about two seconds of work."""

@@ -15,8 +15,8 @@ from aleafield.geometry import Domain
 from aleafield.projection.pairing import Pairing, resolve
 from aleafield.randomness.laws import Law
 from aleafield.report.data import ModelText
+from aleafield.runs.plan_file import Plan
 from aleafield.stepping.schedule import Schedule
-from aleafield.study.plan_file import Plan
 from aleafield.study.study import Study
 from aleafield.units import LENGTH, TIME, Dimension, Units
 

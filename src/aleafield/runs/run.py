@@ -15,15 +15,15 @@ from aleafield.archive.layout import Layout
 from aleafield.archive.lock import locked
 from aleafield.errors import InputError
 from aleafield.forward.field_model import FieldModel
-from aleafield.study.execution import clear_parts, execute, is_complete, put_together, stored_ensemble
-from aleafield.study.folder import claimed_plan, stored_text, write_study
-from aleafield.study.plan_file import Plan, write_plan
-from aleafield.study.planning import make_plan, planned_model
-from aleafield.study.progress import NoProgress, Progress
-from aleafield.study.question import question_of
-from aleafield.study.reporting import write_report
+from aleafield.runs.execution import clear_parts, execute, is_complete, put_together, stored_ensemble
+from aleafield.runs.folder import claimed_plan, stored_text, write_study
+from aleafield.runs.plan_file import Plan, write_plan
+from aleafield.runs.planning import make_plan, planned_model
+from aleafield.runs.progress import NoProgress, Progress
+from aleafield.runs.question import question_of
+from aleafield.runs.reporting import write_report
+from aleafield.runs.summary import unmet
 from aleafield.study.study import Study
-from aleafield.study.summary import unmet
 
 
 @dataclass(frozen=True)

@@ -12,9 +12,9 @@ from aleafield.archive.ensemble_file import Summary
 from aleafield.archive.ensemble_reader import EnsembleReader
 from aleafield.ensemble.records import FAILURE_MEANINGS
 from aleafield.quantities import Quantity
-from aleafield.study.execution import Cost
-from aleafield.study.plan_file import Plan
-from aleafield.study.statements import Asked, statements_of
+from aleafield.runs.execution import Cost
+from aleafield.runs.plan_file import Plan
+from aleafield.runs.statements import Asked, statements_of
 from aleafield.study.study import Study
 
 SCHEMA = 1

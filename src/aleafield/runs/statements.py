@@ -10,7 +10,7 @@ from aleafield.accounting import LevelValues, Pair, PartDifferences, QuantitySta
 from aleafield.archive.ensemble_reader import EnsembleReader
 from aleafield.ensemble.level import Level, PathPart
 from aleafield.estimates import Sample
-from aleafield.study.plan_file import Plan
+from aleafield.runs.plan_file import Plan
 
 
 @dataclass(frozen=True)

@@ -10,12 +10,12 @@ import numpy as np
 
 from aleafield.archive.layout import Layout
 from aleafield.errors import ArchiveError, InputError
-from aleafield.study.folder import stored_study
-from aleafield.study.plan_file import Plan, read_plan
-from aleafield.study.planning import MOST_STEPS_KEPT, planned_model
-from aleafield.study.progress import Progress, ProgressLine
+from aleafield.runs.folder import stored_study
+from aleafield.runs.plan_file import Plan, read_plan
+from aleafield.runs.planning import MOST_STEPS_KEPT, planned_model
+from aleafield.runs.progress import Progress, ProgressLine
+from aleafield.runs.summary import unmet
 from aleafield.study.study import Study
-from aleafield.study.summary import unmet
 
 if TYPE_CHECKING:
     import xarray
@@ -134,7 +134,7 @@ def run(
     ------
     InputError, ArchiveError, Interrupted
     """
-    from aleafield.study.run import run as run_study
+    from aleafield.runs.run import run as run_study
 
     done = run_study(study, out, workers, _progress(quiet), chunk_width)
     return Result(done.folder, study, read_plan(Layout(done.folder)), done.summary)
@@ -171,7 +171,7 @@ def extend(result: Result, samples: int, *, workers: int = 1, quiet: bool = True
     ------
     InputError, ArchiveError, Interrupted
     """
-    from aleafield.study.extend import extend as extend_run
+    from aleafield.runs.extend import extend as extend_run
 
     done = extend_run(result.folder, samples, workers, _progress(quiet), result.study)
     return Result(done.folder, result.study, read_plan(Layout(done.folder)), done.summary)

@@ -6,10 +6,10 @@ from datetime import UTC, datetime
 
 from aleafield.archive.description import Axes, Description, InputColumn, QuantityColumn
 from aleafield.arrays import FloatArray
-from aleafield.study.execution import Cost, Question
-from aleafield.study.plan_file import Plan
+from aleafield.runs.execution import Cost, Question
+from aleafield.runs.plan_file import Plan
+from aleafield.runs.summary import summarise
 from aleafield.study.study import Study
-from aleafield.study.summary import summarise
 
 
 def question_of(study: Study, x: FloatArray) -> Question:

@@ -9,7 +9,7 @@ from pathlib import Path, PurePosixPath
 from aleafield.archive.durable import make_folder, write_bytes
 from aleafield.archive.layout import Layout
 from aleafield.errors import ArchiveError
-from aleafield.study.plan_file import Plan, read_plan
+from aleafield.runs.plan_file import Plan, read_plan
 from aleafield.study.reading import read_text
 from aleafield.study.study import Study
 

@@ -8,15 +8,15 @@ from aleafield.archive.durable import remove_partials
 from aleafield.archive.layout import Layout
 from aleafield.archive.lock import locked
 from aleafield.errors import ArchiveError, InputError
+from aleafield.runs.execution import clear_parts, is_complete, stored_ensemble
+from aleafield.runs.folder import stored_study
+from aleafield.runs.model import design_of
+from aleafield.runs.plan_file import read_plan, with_more_samples, write_plan
+from aleafield.runs.planning import planned_model
+from aleafield.runs.progress import NoProgress, Progress
+from aleafield.runs.run import RunResult, finish, worker_count
 from aleafield.sampling.allocation import extended
-from aleafield.study.execution import clear_parts, is_complete, stored_ensemble
-from aleafield.study.folder import stored_study
 from aleafield.study.impossible import refuse_impossible_samples
-from aleafield.study.model import design_of
-from aleafield.study.plan_file import read_plan, with_more_samples, write_plan
-from aleafield.study.planning import planned_model
-from aleafield.study.progress import NoProgress, Progress
-from aleafield.study.run import RunResult, finish, worker_count
 from aleafield.study.study import Study
 
 

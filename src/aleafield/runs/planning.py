@@ -11,11 +11,11 @@ import numpy as np
 from aleafield.archive.chunks import LANE
 from aleafield.errors import InputError
 from aleafield.forward.field_model import FieldModel
+from aleafield.runs.folder import data_folder
+from aleafield.runs.model import Choices, design_of, field_model, make_choices
+from aleafield.runs.plan_file import Plan, count_probes, default_width, plan_notes
 from aleafield.sampling.allocation import allocate
-from aleafield.study.folder import data_folder
 from aleafield.study.impossible import refuse_impossible_samples
-from aleafield.study.model import Choices, design_of, field_model, make_choices
-from aleafield.study.plan_file import Plan, count_probes, default_width, plan_notes
 from aleafield.study.study import Keep, Study
 
 MOMENT_TIMES = 41

@@ -15,9 +15,9 @@ from aleafield.report.data import FieldRecord, Provenance, ReportData
 from aleafield.report.figures import figure_files, report_figures
 from aleafield.report.findings import quantity_findings
 from aleafield.report.page import page
-from aleafield.study.plan_file import Plan
+from aleafield.runs.plan_file import Plan
+from aleafield.runs.wording import model_text
 from aleafield.study.study import Study
-from aleafield.study.wording import model_text
 
 MOST_VALUES = 1 << 16
 """Values of a quantity that a histogram shows, the first ones: memory does not grow with the samples."""

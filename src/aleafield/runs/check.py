@@ -17,12 +17,12 @@ from aleafield.forward.field_model import FieldModel
 from aleafield.projection.discretisation import Discretisation
 from aleafield.projection.pairing import Pairing
 from aleafield.projection.smoothness import drive_is_smooth, initial_is_smooth, kernel_is_smooth, typical
+from aleafield.runs.model import Choices, design_of, field_model
+from aleafield.runs.plan_file import count_probes
+from aleafield.runs.resolution import COARSE, MeshWidth, Stability, domain_notes, mesh_width, stability
 from aleafield.sampling.allocation import Allocation, allocate
 from aleafield.study.impossible import refuse_impossible_samples
-from aleafield.study.model import Choices, design_of, field_model
-from aleafield.study.plan_file import count_probes
 from aleafield.study.positions import located
-from aleafield.study.resolution import COARSE, MeshWidth, Stability, domain_notes, mesh_width, stability
 from aleafield.study.study import Study
 
 FIRST_SAMPLES = 64
