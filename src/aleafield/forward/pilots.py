@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
 
 import numpy as np
 
@@ -12,24 +13,47 @@ from aleafield.ensemble.level import Level
 from aleafield.ensemble.records import Records
 
 PILOTS = 32
-"""Samples 0 to 31 are the pilots of every study."""
-FIELD_TOLERANCE = 1e-5
-"""Accepted change of the field on halving the step, relative to the largest |u| of the pilots."""
-SPREAD_TOLERANCE = 1e-3
-"""Accepted change of a quantity, relative to its standard deviation over the pilots."""
-MOST_HALVINGS = 10
+"""Samples 0 to 31 are the pilots of every study with inputs, however many samples it has."""
+TOLERANCES: Mapping[float, tuple[float, float]] = {4: (1e-5, 1e-3), 2: (1e-4, 2e-3), 1: (1e-2, 1e-2)}
+"""By the expected order in time, what may change on halving the step: the field relative to the largest |u|,
+and a quantity relative to its standard deviation over the pilots.  A lower order pays more for every digit."""
+TINY = 1e-9
+"""Changes below this share of the largest |u| are nothing: a quantity may be zero by symmetry."""
+MOST_HALVINGS = 8
 
 
-def pilot_samples(available: int) -> IntArray:
-    """Indices of the pilots, padded by the last one to a multiple of 8."""
-    count = min(PILOTS, available)
-    padded = -(-count // 8) * 8
-    return np.minimum(np.arange(padded, dtype=np.int64), count - 1)
+@dataclass(frozen=True)
+class Settled:
+    """What the pilots found.
+
+    Attributes
+    ----------
+    halvings : int
+        How often the model's step is halved.
+    note : str
+        What did not settle within the most halvings; empty where all did.
+    """
+
+    halvings: int
+    note: str = ""
+
+
+@dataclass(frozen=True)
+class Demand:
+    """A half-width that is demanded of a quantity; a twentieth of it may come from the time step."""
+
+    quantity: str
+    tolerance: float
+
+
+def pilot_samples(n_inputs: int) -> IntArray:
+    """Indices of the pilots, a multiple of 8; sample 0 alone, repeated, where nothing is uncertain."""
+    return np.arange(PILOTS, dtype=np.int64) if n_inputs else np.zeros(8, dtype=np.int64)
 
 
 def choose_halvings(
-    model: ForwardModel, level: Level, samples: IntArray, times: Sequence[float], tolerance: float | None
-) -> int:
+    model: ForwardModel, level: Level, samples: IntArray, times: Sequence[float], demand: Demand | None
+) -> Settled:
     """The least number of halvings of the model's step after which halving it again changes next to nothing.
 
     Judged over the whole run, since any step gets a steady state right: the field at `times` by its largest
@@ -41,34 +65,42 @@ def choose_halvings(
     level : Level
     samples : pilots
     times : model times spread over the run
-    tolerance : float or None
-        A demanded half-width: no quantity's change may exceed a twentieth of it.
+    demand : Demand or None
     """
+    order = next(part.expected_order for part in model.path(level) if part.name == "time") or 1.0
+    tolerances = TOLERANCES[max(known for known in TOLERANCES if known <= max(order, 1.0))]
     coarse = model.evaluate(_halved(level, 0), samples, times)
+    restless = ""
     for halvings in range(MOST_HALVINGS):
         fine = model.evaluate(_halved(level, halvings + 1), samples, times)
-        if _settled(coarse, fine, tolerance):
-            return halvings
+        restless = _restless(coarse, fine, tolerances, demand)
+        if not restless:
+            return Settled(halvings)
         coarse = fine
-    return MOST_HALVINGS
+    return Settled(
+        MOST_HALVINGS,
+        f'time_step = "auto": after {MOST_HALVINGS} halvings {restless} still changes with the step; '
+        "the time part of the error says by how much",
+    )
 
 
 def _halved(level: Level, halvings: int) -> Level:
     return Level(level.nodes, level.quadrature_points, halvings)
 
 
-def _settled(coarse: Records, fine: Records, tolerance: float | None) -> bool:
+def _restless(coarse: Records, fine: Records, tolerances: tuple[float, float], demand: Demand | None) -> str:
+    """What still changes with the step, in words; empty where nothing does."""
+    of_field, of_spread = tolerances
     both = coarse.valid & fine.valid
     if not np.array_equal(coarse.valid, fine.valid):
-        return False
+        return "which samples stay finite"
     if not both.any():
-        return True  # no step helps: the run itself will report the failures
+        return ""  # no step helps: the run itself will report the failures
     assert coarse.fields is not None
     assert fine.fields is not None
-    change = np.abs(coarse.fields[both] - fine.fields[both]).max()
-    scale = np.abs(fine.fields[both]).max()
-    if change > FIELD_TOLERANCE * scale:
-        return False
+    scale = float(np.abs(fine.fields[both]).max())
+    if np.abs(coarse.fields[both] - fine.fields[both]).max() > of_field * scale:
+        return "the field"
     for name, values in fine.values.items():
         difference = (coarse.values[name] - values)[both]
         difference = difference[np.isfinite(difference)]
@@ -76,12 +108,12 @@ def _settled(coarse: Records, fine: Records, tolerance: float | None) -> bool:
             continue
         size = float(np.sqrt(np.mean(difference**2)))
         spread = float(np.nanstd(values[both]))
-        allowed = max(SPREAD_TOLERANCE * spread, FIELD_TOLERANCE * float(np.nanmax(np.abs(values[both]))))
-        if tolerance is not None:
-            allowed = min(allowed, tolerance / 20)
+        allowed = max(of_spread * spread, of_field * float(np.nanmax(np.abs(values[both]))), TINY * scale)
+        if demand is not None and demand.quantity == name:
+            allowed = min(allowed, demand.tolerance / 20)
         if size > allowed:
-            return False
-    return True
+            return f"the quantity {name}"
+    return ""
 
 
 def circular_mean(positions: FloatArray, length: float) -> float:
