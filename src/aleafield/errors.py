@@ -79,12 +79,6 @@ class ArchiveError(AleafieldError):
     """A results folder cannot be used as it is: another study, damaged, or not a results folder."""
 
 
-class RequirementMissed(AleafieldError):
-    """The run ended, but what the study demands is not reached."""
-
-    exit_status = 1
-
-
 class Interrupted(AleafieldError):
     """The run was stopped; the same command goes on where it stopped."""
 

@@ -28,6 +28,7 @@ PAIRS: dict[str, tuple[tuple[Level, Level], tuple[Level, Level]]] = {
     "quadrature": (((1, 1, 1), (1, 2, 1)), ((0.5, 0.5, 1), (0.5, 1, 1))),
     "space": (((1, 2, 1), (2, 2, 1)), ((0.5, 1, 1), (1, 1, 1))),
     "time": (((1, 1, 1), (1, 1, 2)), ((1, 1, 0.5), (1, 1, 1))),
+    "mesh": (((1, 1, 1), (2, 2, 1)), ((0.5, 0.5, 1), (1, 1, 1))),
 }
 """The finer and the coarser pair of each part."""
 DIRECTION = {"space": 0, "quadrature": 1, "time": 2}

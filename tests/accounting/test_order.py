@@ -139,4 +139,4 @@ def test_bad_records_are_refused() -> None:
     with pytest.raises(ValueError, match="shape"):
         PartDifferences("space", np.arange(5), pair, None)
     with pytest.raises(ValueError, match="none of the parts"):
-        PartDifferences("mesh", np.arange(4), pair, None)
+        PartDifferences("grid", np.arange(4), pair, None)

@@ -257,20 +257,21 @@ def test_failed_probes_are_left_out_and_said() -> None:
     assert "space: 8 of 32 probes failed and are left out" in statement.notes
 
 
-def test_a_part_whose_probes_all_failed_leaves_no_interval() -> None:
+def test_a_part_whose_probes_all_failed_leaves_no_statement() -> None:
     part = PLANTED.part("space", DRAWS)
     gone = LevelValues.of(np.full(32, np.nan), valid=np.zeros(32, dtype=bool))
     statement = split_error(
         PLANTED.sample(DRAWS), [replace(part, fine=Pair(part.fine.coarser, gone))], MEAN, 0.95
     )
-    assert statement.value is not None
+    assert statement.value is None
     assert statement.interval is None
     assert statement.error["total"] is None
+    assert statement.error["sampling"] is not None
     assert statement.reason == "the space part cannot be measured: every probe failed"
 
 
 def test_too_few_occurrences_among_the_probes() -> None:
-    """30 of 1000 samples, but only 1 probe: the mean has no interval, P(exceed) a wide one."""
+    """30 of 1000 samples, but only 1 probe: the mean is not determined, P(exceed) has a wide interval."""
     margin = -np.ones(1000)
     margin[[3, *range(100, 129)]] = 1.0
     values = np.where(margin >= 0, np.linspace(1.0, 2.0, 1000), np.nan)
@@ -278,6 +279,7 @@ def test_too_few_occurrences_among_the_probes() -> None:
     part = PartDifferences("space", np.arange(32), Pair(level, level), Pair(level, level))
     sample = Sample.of(values, margin=margin)
     mean = split_error(sample, [part], MEAN, 0.95)
+    assert mean.value is None
     assert mean.interval is None
     assert mean.reason == "the space part cannot be measured: the quantity occurs on too few probes"
     above = split_error(sample, [part], exceed(1.0), 0.95)
@@ -372,5 +374,6 @@ def test_parts_that_together_leave_nothing_are_said() -> None:
     sample = Sample.of(q, margin=margin)
     assert split_error(sample, parts[:1], quantile(0.5), 0.95).interval is not None
     both = split_error(sample, parts, quantile(0.5), 0.95)
+    assert both.value is None
     assert both.interval is None
     assert both.reason == "with all parts together the quantity might not occur at all"

@@ -51,11 +51,6 @@ class AnalyticModel:
         """Two of them."""
         return INPUTS
 
-    @property
-    def quantity_names(self) -> Sequence[str]:
-        """Two of them."""
-        return ["peak", "time of return"]
-
     def points(self, level: Level) -> FloatArray:
         """Equally spaced."""
         return np.linspace(-1.0, 1.0, level.nodes)

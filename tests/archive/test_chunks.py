@@ -43,9 +43,9 @@ def chunks(draw: st.DrawFn) -> Chunk:
     )
     state = kept = None
     if draw(st.booleans()):
-        sums = [draw(arrays(np.float64, (2, 3), elements=DOUBLES)) for _ in range(4)]
+        sums = [draw(arrays(np.float64, (2, 3), elements=DOUBLES)) for _ in range(5)]
         band = draw(arrays(np.float64, (draw(st.integers(0, 2)), 2, 3), elements=DOUBLES))
-        state = FieldState(FieldMoments(count, (sums[0], sums[1]), (sums[2], sums[3])), band)
+        state = FieldState(FieldMoments(count, sums[0], (sums[1], sums[2]), (sums[3], sums[4])), band)
         kept = draw(arrays(np.float64, (count, 1, 3), elements=DOUBLES))
     return Chunk(first, records, state, kept, draw(st.floats(0, 1e6)))
 
@@ -57,7 +57,8 @@ def arrays_of(chunk: Chunk) -> list[tuple[str, bytes]]:
     for group in (records.inputs, records.values, records.margins):
         found += list(group.items())
     if chunk.state is not None:
-        found += [("sum", a) for a in (*chunk.state.moments.first, *chunk.state.moments.second)]
+        moments = chunk.state.moments
+        found += [("sum", a) for a in (moments.reference, *moments.first, *moments.second)]
         found += [("band", chunk.state.band), ("count", np.array(chunk.state.moments.count))]
     if chunk.kept is not None:
         found.append(("kept", chunk.kept))

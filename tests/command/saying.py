@@ -5,6 +5,7 @@ from __future__ import annotations
 import os
 import subprocess
 import sys
+import traceback
 from collections.abc import Sequence
 from dataclasses import dataclass
 from pathlib import Path
@@ -27,12 +28,15 @@ class Said:
 
 
 def say(capsys: pytest.CaptureFixture[str], *arguments: object) -> Said:
-    """Call the command in this process."""
+    """Call the command in this process; an exception ends it as it would end the interpreter."""
     capsys.readouterr()
     try:
         status = main([str(argument) for argument in arguments])
     except SystemExit as ended:  # how the parser of arguments ends
         status = int(ended.code or 0)
+    except Exception:
+        traceback.print_exc()
+        status = 1
     captured = capsys.readouterr()
     return Said(status, captured.out, captured.err)
 

@@ -11,7 +11,7 @@ from tests.command.saying import command_line, ended, start, study_file
 
 BYTES_PER_SAMPLE = 400
 """Between 10,000 and 100,000 samples 110 were measured, the columns of the one quantity that is being judged;
-for fewer samples what the allocator keeps ready counts too.  The fields at 41 moment times alone are 5,248."""
+for fewer samples what the allocator keeps ready counts too.  The fields at 41 moment times are 5,248."""
 
 
 def peak_memory(folder: Path, samples: int) -> int:

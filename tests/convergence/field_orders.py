@@ -57,14 +57,18 @@ def _known(name: str, problem: Problem, smooth: bool) -> Case:
 
 
 def _step(name: str, domain: Domain, kernel: GaussianKernel | ExponentialKernel, smooth: bool) -> Case:
-    """A patch of activity whose edges move; eight samples spread the edges over a panel and more."""
+    """A patch of activity whose edges move; eight samples spread the edges over a panel and more.
+
+    Two edges on the ring, near 1.2 and -1.2; on the interval near 0.6 and -0.6.
+    """
+    start = "cos(x - shift)" if domain.periodic else "cos(2*(x - shift))"
     equation = FieldEquation(
         domain,
         lone(kernel),
         StepRate(0.4),
         Dynamics(1.0, 1.0),
         term("0.3*sin(shift + t)", {"shift": SHIFTED}),
-        term("cos(x - shift)", {"shift": SHIFTED}),
+        term(start, {"shift": SHIFTED}),
     )
     return Case(name, equation, None, smooth)
 

@@ -2,13 +2,17 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
+
 import numpy as np
 import pytest
 from scipy.optimize import minimize_scalar
 
 from aleafield.arrays import FloatArray
+from aleafield.field.formula_term import FormulaTerm
+from aleafield.formula import Formula
 from aleafield.geometry import Domain
-from aleafield.quantities import Maximum, Minimum, PeakPosition
+from aleafield.quantities import FormulaQuantity, Maximum, Minimum, PeakPosition
 from tests.exactness.trajectories import (
     EPS,
     INTERVAL,
@@ -158,3 +162,63 @@ def test_of_nearly_equal_peaks_the_highest_one_is_found_off_the_grid() -> None:
     position = of_function(PeakPosition("q"), space, triple)[0]
     np.testing.assert_allclose(RING.distance(position, shifts[:, 0]), np.zeros(33), atol=1e3 * EPS)
     np.testing.assert_allclose(of_function(Maximum("q"), space, triple)[0], np.full(33, 1 + d), rtol=20 * EPS)
+
+
+def plateau(x: FloatArray) -> FloatArray:
+    """0.5 on intervals about 0 that end at eight places between the nodes, else 0: a jump at either end."""
+    return 0.5 * (np.abs(x) < np.linspace(1.9, 2.4, 8)[:, None])
+
+
+def clipped(x: FloatArray) -> FloatArray:
+    """Parabolas cut off at eight heights: kinks between the nodes, with at least three on the plateau."""
+    return np.minimum(1.0 - 0.3 * x**2, np.linspace(0.15, 0.8, 8)[:, None])
+
+
+@pytest.mark.parametrize("domain", [INTERVAL, RING])
+@pytest.mark.parametrize("n", [15, 16, 57, 200])
+@pytest.mark.parametrize("shape", [plateau, clipped])
+def test_no_parabola_overshoots_at_a_jump_or_at_the_edge_of_a_plateau(
+    domain: Domain, n: int, shape: Callable[[FloatArray], FloatArray]
+) -> None:
+    """The interpolant's own maximum is the plateau, which a parabola over a jump d would exceed by d / 8."""
+    space = space_of(("piecewise linear", domain), n)
+    nodal = shape(space.nodes)
+    assert np.all(np.isin(shape(np.zeros(1)), nodal)), "a node lies on every plateau"
+    np.testing.assert_array_equal(of_function(Maximum("q"), space, shape)[0], nodal.max(axis=1))
+    lowest = of_function(Minimum("q"), space, lambda x: -shape(x))[0]
+    np.testing.assert_array_equal(lowest, -nodal.max(axis=1))
+
+
+def test_a_kink_at_the_peak_is_not_rounded() -> None:
+    """A tent's triple has all the bend, its neighbours none: the highest node stands for it."""
+    space = space_of(("piecewise linear", INTERVAL), 50)
+
+    def tent(x: FloatArray) -> FloatArray:
+        return -np.abs(x - PLACES[3:6])
+
+    np.testing.assert_array_equal(
+        of_function(Maximum("q"), space, tent)[0], tent(space.nodes).max(axis=1)
+    )
+
+
+@pytest.mark.parametrize("n", [3, 4])
+def test_a_triple_without_a_neighbour_is_not_confirmed(n: int) -> None:
+    """Three nodes have one triple and the node stands for it; four have two, and a parabola is exact."""
+    space = space_of(("piecewise linear", INTERVAL), n)
+
+    def parabola(x: FloatArray) -> FloatArray:
+        return 1.0 - np.square(x - 0.7)[None, :]
+
+    expected = parabola(space.nodes).max() if n == 3 else 1.0
+    np.testing.assert_allclose(of_function(Maximum("q"), space, parabola)[0], [expected], rtol=100 * EPS)
+
+
+@pytest.mark.parametrize("text", ["minimum(u, 0.2)", "(u > 0.3)", "where(u > 0.3, 1, u)", "u * (x < 0.511)"])
+def test_the_maximum_of_a_formula_with_a_kink_is_a_value_of_it(text: str) -> None:
+    """A parabola through kinked values would give 0.2209 for the first and 1.125 for the second."""
+    quantity = FormulaQuantity("q", FormulaTerm(Formula(text)), "maximum")
+    for domain in (INTERVAL, RING):
+        space = space_of(("piecewise linear", domain), 64)
+        u = np.exp(-((space.nodes - np.linspace(-1.0, 1.0, 16)[:, None]) ** 2))
+        nodal = quantity.term.evaluate({"u": u, "x": space.nodes}, axes=1)
+        np.testing.assert_array_equal(of_state(quantity, space, u)[0], nodal.max(axis=1))

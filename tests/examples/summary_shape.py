@@ -28,7 +28,10 @@ def read_summary(text: str) -> dict[str, Any]:
     def refuse(word: str) -> NoReturn:
         raise AssertionError(f"{word} is not JSON")
 
-    document: dict[str, Any] = json.loads(text, parse_constant=refuse)
+    try:
+        document: dict[str, Any] = json.loads(text, parse_constant=refuse)
+    except ValueError as error:
+        raise AssertionError(f"not one JSON document: {error}") from error
     assert_is_summary(document)
     return document
 
@@ -132,6 +135,8 @@ def assert_is_statistic(
 def assert_is_error(error: Mapping[str, Any], place: str) -> None:
     """All parts are there; each is null or a number that is not negative."""
     assert set(error) == ERROR, place
+    assert error["noise_modes"] is None, f"{place}: there is no noise"
+    assert error["surrogate"] is None, f"{place}: there is no surrogate"
     for key, value in error.items():
         assert value is None or number(value, f"{place}.{key}") >= 0, f"{place}.{key}"
 
@@ -209,10 +214,10 @@ def assert_is_cost(cost: Mapping[str, Any], sampling: Mapping[str, Any] | None) 
 
 def assert_are_failures(failed: Mapping[str, Any], samples: int, inputs: set[str]) -> None:
     """As many reasons as failures, and the failures with their inputs."""
-    assert set(failed) == {"count", "reasons", "list"}
+    assert set(failed) == {"count", "reasons", "listed", "list"}
     assert count(failed["count"], "failed") <= samples
     assert sum(failed["reasons"].values()) == failed["count"]
-    assert len(failed["list"]) == min(failed["count"], 100)
+    assert len(failed["list"]) == failed["listed"] == min(failed["count"], 100)
     for entry in failed["list"]:
         assert set(entry) == {"sample", "reason", "time", "inputs"}
         assert count(entry["sample"], "failed") < samples

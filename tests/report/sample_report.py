@@ -191,6 +191,7 @@ def sample_summary() -> dict[str, Any]:
         "failed": {
             "count": 2,
             "reasons": {"not_finite": 2},
+            "listed": 2,
             "list": [
                 {"sample": 411, "time": 3.5, "inputs": {"h": 0.2513, "rate.gain": 13.91}},
                 {"sample": 1902, "time": None, "inputs": {"h": 0.2498, "rate.gain": 14.02}},

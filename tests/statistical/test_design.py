@@ -42,10 +42,9 @@ PRODUCT_VARIANCE = (13 / 12) ** 4 - 1
 
 
 class SamplerContract:
-    """What every method of sampling promises; derived classes say which method and how many parts it has."""
+    """What every method of sampling promises; derived classes say which method."""
 
     method: Method
-    replicates: int
 
     def test_the_seed_decides_and_nothing_else(self) -> None:
         indices = np.arange(100)
@@ -106,12 +105,6 @@ class SamplerContract:
         correlation = np.corrcoef(points.T) - np.eye(8)
         assert np.abs(correlation).max() < 5.5 / math.sqrt(len(points))  # the largest of 28 pairs
 
-    def test_parts(self) -> None:
-        design = cube(self.method, 2)
-        assert design.replicates == self.replicates
-        expected = {1: [0, 0, 0, 0, 0], 16: [0, 1, 15, 0, 1]}[self.replicates]
-        np.testing.assert_array_equal(design.replicate(np.array([0, 1, 15, 16, 33])), expected)
-
     @pytest.mark.parametrize("indices", [[-1], [[1, 2]]])
     def test_other_indices_are_refused(self, indices: list[int]) -> None:
         with pytest.raises(ValueError, match="not negative"):
@@ -120,7 +113,6 @@ class SamplerContract:
 
 class TestMonteCarlo(SamplerContract):
     method: Method = "monte carlo"
-    replicates = 1
 
     def test_mean_square_error(self) -> None:
         """Means of N points have variance V / N; over 1,000 blocks it is known to sqrt(2 / 1000) relative."""
@@ -133,7 +125,6 @@ class TestMonteCarlo(SamplerContract):
 
 class TestQuasiMonteCarlo(SamplerContract):
     method: Method = "quasi-monte carlo"
-    replicates = 16
 
     @pytest.mark.parametrize("exponent", [2, 4, 8, 11])
     def test_each_scrambling_is_a_net(self, exponent: int) -> None:

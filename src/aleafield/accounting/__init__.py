@@ -5,17 +5,21 @@ neighbouring levels.  Output are statements: a value, the parts of its error, an
 `docs/error_split.md` states the mathematics.
 """
 
-from aleafield.accounting.probes import number_of_probes, share_of_probes
+from aleafield.accounting.order import RELATIVE_ROUND_OFF
+from aleafield.accounting.probes import SHARE, number_of_probes, share_of_probes
 from aleafield.accounting.quantity import QuantityStatements, quantity_statements
-from aleafield.accounting.records import LevelValues, Pair, PartDifferences
+from aleafield.accounting.records import MESH, LevelValues, Pair, PartDifferences
 from aleafield.accounting.split import split_error
 from aleafield.accounting.statement import Statement
 from aleafield.accounting.statistic import MEAN, OCCURS, SD, Statistic, exceed, quantile
 
 __all__ = [
     "MEAN",
+    "MESH",
     "OCCURS",
+    "RELATIVE_ROUND_OFF",
     "SD",
+    "SHARE",
     "LevelValues",
     "Pair",
     "PartDifferences",

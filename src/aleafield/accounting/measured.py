@@ -82,15 +82,11 @@ class MeasuredPart:
 
     @cached_property
     def candidates(self) -> tuple[PairedValues, ...]:
-        """The difference that is the part; for a peak also the coarser one, brought down by its order.
-
-        A piecewise-linear field's peak jumps with the mesh, so the finer difference may vanish by chance.
-        """
+        """The difference that is the part; where chance may make it small, the coarser one brought down too."""
         part = self.part
         found = [pair_with_run(self.sample, part.probes, part.fine, 1.0)]
-        if part.peak and part.coarse is not None:
-            order = 2.0 if part.expected_order is None else part.expected_order
-            divisor = reduction(order, part.ratio_fine, part.ratio_coarse)
+        if part.order_of_chance is not None and part.coarse is not None:
+            divisor = reduction(part.order_of_chance, part.ratio_fine, part.ratio_coarse)
             found.append(pair_with_run(self.sample, part.probes, part.coarse, divisor))
         return tuple(found)
 

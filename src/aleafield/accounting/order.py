@@ -7,17 +7,17 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from aleafield.accounting.records import PartDifferences
+from aleafield.accounting.records import LARGEST_SPECTRAL_ORDER, PartDifferences
 from aleafield.arrays import FloatArray
 
 AGREEMENT = 0.3
 SMALLEST_ORDER = 0.5
-LARGEST_SPECTRAL_ORDER = 4.0
 LARGEST_UNPROVEN_ORDER = 2.0
 SAFETY = 1.25
 CAUTIOUS_SAFETY = 3.0
 SEARCHED_ORDERS = (-10.0, 60.0)
 RELATIVE_ROUND_OFF = 1e-13
+"""Differences below this share of the largest value (of the domain, for a length) are rounding."""
 
 
 @dataclass(frozen=True)

@@ -2,8 +2,8 @@
 
 from __future__ import annotations
 
-BLOCK = 16
-"""Probes come in multiples of the number of scramblings."""
+from aleafield.randomness.points import SCRAMBLINGS
+
 LEAST = 32
 SHARE = 0.25
 """The extra levels may cost this share of the main samples."""
@@ -31,8 +31,9 @@ def number_of_probes(
         1 <= n_p <= samples.
     """
     affordable = SHARE * samples * main_cost_per_sample / extra_cost_per_probe
-    count = BLOCK * int(min(affordable, samples) // BLOCK)
-    return min(samples, max(count, BLOCK * -(-at_least // BLOCK)))
+    # a multiple of the number of scramblings
+    count = SCRAMBLINGS * int(min(affordable, samples) // SCRAMBLINGS)
+    return min(samples, max(count, SCRAMBLINGS * -(-at_least // SCRAMBLINGS)))
 
 
 def share_of_probes(

@@ -10,6 +10,10 @@ from aleafield.arrays import BoolArray, FloatArray, IntArray
 
 PART_NAMES = ("space", "quadrature", "time", "noise_modes")
 """The discretisation parts in the order of the summary."""
+LARGEST_SPECTRAL_ORDER = 4.0
+"""No more than this order is counted on where the error falls faster than any power."""
+MESH = "mesh"
+"""Space and quadrature refined together: no part of its own, but it may bound the sum of the two."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -71,11 +75,12 @@ class PartDifferences:
     quadrature (a, b)    (a0, b0)
     space      (b, c)    (b0, a)
     time       (a, d)    (d0, a)
+    mesh       (a, c)    (a0, a)
     ========== ========= =============
 
     Attributes
     ----------
-    name : "space", "quadrature", "time" or "noise_modes"
+    name : "space", "quadrature", "time", "noise_modes" or "mesh"
     probes : int array (n_p,)
         Positions of the probes in the sample of the run.
     fine : Pair
@@ -109,10 +114,24 @@ class PartDifferences:
     round_off: float = 0.0
 
     def __post_init__(self) -> None:
-        if self.name not in PART_NAMES:
-            raise ValueError(f"{self.name!r} is none of the parts {', '.join(PART_NAMES)}")
+        if self.name not in (*PART_NAMES, MESH):
+            raise ValueError(f"{self.name!r} is none of the parts {', '.join((*PART_NAMES, MESH))}")
         if self.ratio_fine <= 1.0 or self.ratio_coarse <= 1.0:
             raise ValueError("the ratios of mesh widths or steps are coarser over finer, above 1")
         pairs = [self.fine] + ([] if self.coarse is None else [self.coarse])
         if any(level.values.shape != self.probes.shape for p in pairs for level in (p.coarser, p.finer)):
             raise ValueError("all arrays of a part need the shape (n_p,) of its probes")
+
+    @property
+    def order_of_chance(self) -> float | None:
+        """Order at which the coarser difference, brought down, bounds a finer one that is small by chance.
+
+        A piecewise-linear field's peak jumps with the mesh: its expected order.  Refined together, space and
+        quadrature may cancel on one mesh, or on all: twice the expected order lets the sum converge faster
+        than its parts, but not vanish.  None: the finer difference stands alone.
+        """
+        if self.peak:
+            return 2.0 if self.expected_order is None else self.expected_order
+        if self.name == MESH:
+            return 2.0 * (LARGEST_SPECTRAL_ORDER if self.expected_order is None else self.expected_order)
+        return None

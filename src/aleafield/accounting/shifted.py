@@ -8,7 +8,7 @@ from aleafield.accounting.statistic import Statistic
 from aleafield.arrays import FloatArray
 from aleafield.estimates import Sample
 from aleafield.estimates.quantile import empirical_quantile
-from aleafield.estimates.sd import standard_deviation
+from aleafield.estimates.sd import block_factor, standard_deviation
 
 NEIGHBOURS = 10
 """Samples just inside the margin whose values bound those of samples that come to occur."""
@@ -79,9 +79,10 @@ def range_of(
 ) -> tuple[float, float] | None:
     """Smallest and largest value of the statistic over `shifted_values`; None where nothing occurs."""
     found = []
+    scale = block_factor(sample) if statistic.kind == "sd" else 1.0
     for values in shifted_values(sample, value_shift, margin_shift):
         value = value_of(statistic, values, sample.n_valid)
         if value is None:
             return None
-        found.append(value)
+        found.append(scale * value)
     return min(found), max(found)

@@ -10,14 +10,18 @@ import numpy as np
 
 from aleafield.accounting.bias import Bias, Unmeasured, bias_of, joint_change
 from aleafield.accounting.measured import MeasuredPart
-from aleafield.accounting.order import SMALLEST_ORDER, Order
-from aleafield.accounting.records import PartDifferences
+from aleafield.accounting.order import AGREEMENT, SMALLEST_ORDER, Order
+from aleafield.accounting.records import MESH, PartDifferences
 from aleafield.accounting.statement import ERROR_KEYS, Statement, no_statement, representable
 from aleafield.accounting.statistic import MEAN, Statistic
 from aleafield.estimates import Sample
 
 RESOLUTION = 0.1
 """A part below this share of the total is honest only inside the total."""
+MESH_PARTS = ("quadrature", "space")
+"""The parts that `MESH` refines together."""
+CANCELLATION = 0.5
+"""Below this share of the sum of its parts a bound of both together is worth a note."""
 MODEL_TERM = 0.25
 """Share of the biases that stays in the interval of a corrected value."""
 
@@ -50,7 +54,9 @@ def split_error(
     Statement
         With T -+ (l, r) the sampling interval, B the sum of the sizes and N^2 that of the squared noises of
         the biases: interval [T - B - sqrt(l^2 + N^2), T + B + sqrt(r^2 + N^2)], `total` its longer side.
-        Biases add linearly: they are not random, and their root-sum-square misses the truth too often.
+        Biases add linearly: they are not random, and their root-sum-square misses the truth too often.  Given
+        a part "mesh", it bounds space and quadrature together where that is tighter and converges.  Where
+        a bias is not determined nothing is stated but the parts that are, and the reason.
     """
     return combine(sample, [MeasuredPart(sample, part) for part in parts], statistic, confidence)
 
@@ -65,31 +71,93 @@ def combine(
             return no_statement(estimate.reason or "not determined")
         if not math.isfinite(estimate.value):
             return no_statement("it is beyond the range of double precision")
-        biases = {m.part.name: bias_of(m, statistic, estimate.value, confidence) for m in measured}
-    orders = {m.part.name: _order_for(m, statistic) for m in measured if m.usable.any()}
-    lost = [bias.reason for bias in biases.values() if isinstance(bias, Unmeasured)]
-    known = {name: bias for name, bias in biases.items() if isinstance(bias, Bias)}
+        parts = [m for m in measured if m.part.name != MESH]
+        found = _measure(parts, statistic, estimate.value, confidence)
+        for mesh in measured:
+            if mesh.part.name == MESH and _converges(_order_for(mesh, statistic)):
+                rest = [m for m in parts if m.part.name not in MESH_PARTS]
+                found = _together(found, _measure([mesh, *rest], statistic, estimate.value, confidence))
+    orders = {m.part.name: _order_for(m, statistic) for m in parts if m.usable.any()}
     sampled = Sampled(estimate.value, estimate.value - estimate.low, estimate.high - estimate.value)
     sampling = None if sample.certain else max(sampled.left, sampled.right)
-    joint = 0.0
-    if not lost and not statistic.has_influence and len(measured) > 1:
-        joint = joint_change(measured, statistic, sampled.value)
-        if math.isinf(joint):
-            lost.append("with all parts together the quantity might not occur at all")
-    if lost:
+    sizes = {name: bias.size for name, bias in found.known.items()}
+    if found.lost:
         error: dict[str, float | None] = dict.fromkeys(ERROR_KEYS)
-        error.update({name: bias.size for name, bias in known.items()}, sampling=sampling)
-        return representable(Statement(estimate.value, error, None, reason="; ".join(lost), orders=orders))
-    sizes = _raised_to(joint, {name: bias.size for name, bias in known.items()})
-    noise = math.hypot(*(bias.noise for bias in known.values()))
-    plain = _statement(statistic, sampled, sizes, noise if known else None, sampling)
-    notes = _notes(plain, orders, measured)
+        error.update(sizes, sampling=sampling)
+        return representable(Statement(None, error, None, reason="; ".join(found.lost), orders=orders))
+    noise = math.hypot(*(bias.noise for bias in found.known.values()))
+    plain = _statement(statistic, sampled, sizes, noise if sizes else None, sampling)
+    notes = (*found.notes, *_notes(plain, orders, parts))
     corrected = None
-    if statistic == MEAN and known and not _diverges(plain, orders):
-        corrected = _corrected(sampled, known, noise, sampling)
+    if statistic == MEAN and sizes and not _diverges(plain, orders):
+        corrected = _corrected(sampled, found.known, noise, sampling)
     return representable(
         Statement(plain.value, plain.error, plain.interval, corrected, notes=notes, orders=orders)
     )
+
+
+@dataclass(frozen=True)
+class _Biases:
+    """Biases of all parts of a statistic, why some are not determined, and what to say of them."""
+
+    known: dict[str, Bias]
+    lost: tuple[str, ...] = ()
+    notes: tuple[str, ...] = ()
+
+    @property
+    def size(self) -> float:
+        """Sum of the sizes."""
+        return math.fsum(bias.size for bias in self.known.values())
+
+
+def _measure(
+    measured: Sequence[MeasuredPart], statistic: Statistic, value: float, confidence: float
+) -> _Biases:
+    """Biases one by one; quantiles and probabilities raised to what all parts do at once."""
+    biases = {m.part.name: bias_of(m, statistic, value, confidence) for m in measured}
+    lost = [bias.reason for bias in biases.values() if isinstance(bias, Unmeasured)]
+    known = {name: bias for name, bias in biases.items() if isinstance(bias, Bias)}
+    if not lost and not statistic.has_influence and len(measured) > 1:
+        joint = joint_change(measured, statistic, value)
+        if math.isinf(joint):
+            lost.append("with all parts together the quantity might not occur at all")
+        else:
+            sizes = _raised_to(joint, {name: bias.size for name, bias in known.items()})
+            known = {name: replace(bias, size=sizes[name]) for name, bias in known.items()}
+    return _Biases(known, tuple(lost))
+
+
+def _together(apart: _Biases, joined: _Biases) -> _Biases:
+    """The biases with space and quadrature bounded together, where that is the tighter bound.
+
+    Along the path the two may be of opposite sign: nodal values of a collocation scheme, for one, feel the
+    integrals alone, and refining the projector takes back what refining the rule had added.  Each part then
+    keeps its share of the sum.
+    """
+    comparable = not joined.lost and set(MESH_PARTS) <= set(apart.known)
+    if not comparable or (not apart.lost and joined.size >= apart.size):
+        return apart
+    mesh = joined.known[MESH]
+    sizes = {name: apart.known[name].size for name in MESH_PARTS}
+    total = math.fsum(sizes.values())
+    shares = {name: size / total if total > 0.0 else 0.5 for name, size in sizes.items()}
+    known = {name: bias for name, bias in joined.known.items() if name != MESH}
+    for name in MESH_PARTS:
+        # noise in quadrature and corrections in a line give back those of the two together
+        known[name] = Bias(
+            mesh.size * shares[name], mesh.noise * math.sqrt(shares[name]), mesh.correction * shares[name]
+        )
+    note = (
+        f"space and quadrature cancel in part: {total:.2g} one by one, {mesh.size:.2g} together; each is "
+        "shown with its share of the latter"
+    )
+    return _Biases(known, (), (note,) if mesh.size < CANCELLATION * total else ())
+
+
+def _converges(order: Order) -> bool:
+    """Whether the observed order is not below the expected one (1 for faster than any power)."""
+    wanted = 1.0 if order.expected is None else order.expected - AGREEMENT
+    return order.observed is None or order.observed >= wanted
 
 
 def _raised_to(joint: float, sizes: dict[str, float]) -> dict[str, float]:

@@ -20,7 +20,7 @@ class Statement:
     Attributes
     ----------
     value : float or None
-        In the units of the statistic; None where it is not determined.
+        In the units of the statistic; None where it, or a part of its error, is not determined.
     error : mapping of ERROR_KEYS to float or None
         Bounds on biases (space, quadrature, time, noise_modes, surrogate), half-widths (bias_noise, sampling)
         and their total, in the units of the statistic; None where a part does not apply or is not determined.

@@ -36,7 +36,9 @@ class EnsembleVariables:
         self._description = description
         self.names = Names()
         self.found: dict[Key, Any] = {}
+        # a study's own names first: what is derived from one of them makes way
         inputs = [self.names.take(column.path) for column in description.inputs]
+        names = [self.names.take(quantity.name) for quantity in description.quantities]
         self._coordinates = " ".join(["sample", "repeat", "replicate", *inputs])
         self._make_dimensions()
         self._make_numbers()
@@ -44,8 +46,8 @@ class EnsembleVariables:
             about = {"long_name": f"uncertain input {column.path}", "path": column.path, "law": column.law}
             self._make(("input", column.path, ""), name, ALONG, {**about, "units": column.units})
         self._make_failures()
-        for quantity in description.quantities:
-            self._make_quantity(quantity)
+        for quantity, name in zip(description.quantities, names, strict=True):
+            self._make_quantity(quantity, name)
         if description.extra_levels:
             self._make_probes()
         self._make_moments()
@@ -113,8 +115,8 @@ class EnsembleVariables:
         }
         self._make(("failed", "", level), name, along, {**about, **flags}, "i4")
 
-    def _make_quantity(self, quantity: QuantityColumn) -> None:
-        name, ancillary = self.names.take(quantity.name), "failed"
+    def _make_quantity(self, quantity: QuantityColumn, name: str) -> None:
+        ancillary = "failed"
         if quantity.may_not_occur:
             margin = self.names.take(f"{quantity.name}_margin")
             about = {

@@ -58,7 +58,7 @@ class FieldState:
 
 def put_state(dataset: Any, state: FieldState) -> None:
     """Add a state to an open netCDF dataset."""
-    sums = np.stack([*state.moments.first, *state.moments.second])
+    sums = np.stack([state.moments.reference, *state.moments.first, *state.moments.second])
     for name, length in zip(("sum", "moment_time", "x"), sums.shape, strict=True):
         dataset.createDimension(name, length)
     variable = dataset.createVariable("moments", "f8", ("sum", "moment_time", "x"), contiguous=True)
@@ -77,7 +77,7 @@ def get_state(dataset: Any) -> FieldState | None:
     sums = dataset["moments"][:]
     count = int(dataset["moments"].getncattr("count"))
     band = dataset["band"][:] if "band" in dataset.variables else np.zeros((0, *sums.shape[1:]))
-    return FieldState(FieldMoments(count, (sums[0], sums[1]), (sums[2], sums[3])), band)
+    return FieldState(FieldMoments(count, sums[0], (sums[1], sums[2]), (sums[3], sums[4])), band)
 
 
 def encode_state(state: FieldState) -> bytes:

@@ -24,11 +24,6 @@ class ForwardModel(Protocol):
         """The uncertain inputs, in the order of the sampling dimensions."""
         ...
 
-    @property
-    def quantity_names(self) -> Sequence[str]:
-        """Names of the quantities in the order of the study."""
-        ...
-
     def evaluate(self, level: Level, samples: IntArray, times: Sequence[float] = ()) -> Records:
         """Quantities (and the fields at `times`) of the samples at a level.
 

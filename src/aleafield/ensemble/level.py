@@ -54,8 +54,6 @@ class PathPart:
         By quantity: a lower bound of the safety factor (2 for a value off the nodes).
     peaks : frozenset
         Names of quantities that are positions of a peak.
-    locator_order : mapping
-        By quantity: order at which the quantity itself is located, where that may be the smaller one.
     note : str
         Why the expected order is what it is, in words.
     """
@@ -69,7 +67,6 @@ class PathPart:
     observed_only: bool = False
     least_factor: Mapping[str, float] = field(default_factory=dict)
     peaks: frozenset[str] = frozenset()
-    locator_order: Mapping[str, float] = field(default_factory=dict)
     note: str = ""
 
     @property

@@ -68,16 +68,3 @@ class Records:
             failed_at=self.failed_at[:count],
             fields=None if self.fields is None else self.fields[:count],
         )
-
-
-def joined(parts: list[Records]) -> Records:
-    """Records of several batches as one, in the order given; fields are left out."""
-    first = parts[0]
-    return Records(
-        samples=np.concatenate([p.samples for p in parts]),
-        inputs={k: np.concatenate([p.inputs[k] for p in parts]) for k in first.inputs},
-        values={k: np.concatenate([p.values[k] for p in parts]) for k in first.values},
-        margins={k: np.concatenate([p.margins[k] for p in parts]) for k in first.margins},
-        failed=np.concatenate([p.failed for p in parts]),
-        failed_at=np.concatenate([p.failed_at for p in parts]),
-    )

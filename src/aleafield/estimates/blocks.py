@@ -10,6 +10,10 @@ from scipy.special import ndtri, stdtrit
 from aleafield.arrays import FloatArray, IntArray
 
 
+FEW = 10
+"""With fewer hits or misses, or samples beyond a quantile, than this, blocks are not trusted alone."""
+
+
 def student(confidence: float, degrees: int) -> float:
     """Two-sided quantile of Student's t: the half-width in standard errors at a confidence."""
     return float(stdtrit(degrees, 0.5 + 0.5 * confidence))

@@ -30,6 +30,13 @@ def exact(value: float) -> Estimate:
     return Estimate(value, value, value)
 
 
+def nothing_given(valid: int) -> Estimate:
+    """The estimate of what occurs in none of so many samples that did not fail."""
+    if valid == 0:
+        return Estimate(None, None, None, "not determined: all samples failed")
+    return undetermined(valid, "it does not occur in any of them")
+
+
 def undetermined(samples: int, needed: str = "") -> Estimate:
     """The estimate that so many samples cannot give; never a clipped guess.
 

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from aleafield.estimates.blocks import mean_of
-from aleafield.estimates.estimate import Estimate, exact, undetermined
+from aleafield.estimates.estimate import Estimate, exact, nothing_given, undetermined
 from aleafield.estimates.sample import Sample
 
 
@@ -27,7 +27,7 @@ def estimate_mean(sample: Sample, confidence: float) -> Estimate:
     """
     values = sample.given
     if len(values) == 0:
-        return undetermined(sample.n_valid, "it does not occur in any of them")
+        return nothing_given(sample.n_valid)
     if sample.certain:
         return exact(float(values[0]))
     mean = mean_of(values, sample.given_block, sample.replicates)

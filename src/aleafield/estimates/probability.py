@@ -7,12 +7,10 @@ import math
 import numpy as np
 
 from aleafield.arrays import BoolArray
-from aleafield.estimates.blocks import block_mean, normal, student
-from aleafield.estimates.estimate import Estimate, exact, undetermined
+from aleafield.estimates.blocks import FEW, block_mean, normal, student
+from aleafield.estimates.estimate import Estimate, exact, nothing_given, undetermined
 from aleafield.estimates.sample import Sample
 
-FEW = 10
-"""With fewer hits or misses than this, blocks may not claim more than independent samples would give."""
 MOST_GAIN = 50.0
 """No claim of more than this many times the number of samples, however well the blocks agree."""
 
@@ -78,7 +76,7 @@ def _probability(sample: Sample, hits: BoolArray, confidence: float) -> Estimate
     """Wilson's interval of the share of hits (S,) among the valid samples."""
     n = sample.n_valid
     if n == 0:
-        return undetermined(n)
+        return nothing_given(n)
     n_hits = int(hits.sum())
     share = n_hits / n
     if sample.certain:

@@ -6,12 +6,9 @@ import numpy as np
 
 from aleafield.arrays import FloatArray
 from aleafield.errors import InputError
-from aleafield.estimates.blocks import block_mean
-from aleafield.estimates.estimate import Estimate, exact, undetermined
+from aleafield.estimates.blocks import FEW, block_mean
+from aleafield.estimates.estimate import Estimate, exact, nothing_given, undetermined
 from aleafield.estimates.sample import Sample
-
-FEW = 10
-"""With fewer samples than this beyond the quantile, an interval from blocks is not trusted alone."""
 
 
 def empirical_quantile(values: FloatArray, p: float) -> float:
@@ -74,7 +71,7 @@ def estimate_quantile(sample: Sample, p: float, confidence: float) -> Estimate:
         raise InputError("report.quantiles", f"{p!r} is not between 0 and 1", needed)
     n = len(sample.given)
     if n == 0:
-        return undetermined(sample.n_valid, "it does not occur in any of them")
+        return nothing_given(sample.n_valid)
     if sample.certain:
         return exact(float(sample.given[0]))
     ordered = np.sort(sample.given)

@@ -7,8 +7,8 @@ import math
 import numpy as np
 
 from aleafield.arrays import FloatArray, IntArray
-from aleafield.estimates.blocks import student
-from aleafield.estimates.estimate import Estimate, exact, undetermined
+from aleafield.estimates.blocks import block_mean, student
+from aleafield.estimates.estimate import Estimate, exact, nothing_given, undetermined
 from aleafield.estimates.sample import Sample
 
 LEAST_SAMPLES = 64
@@ -22,12 +22,29 @@ def standard_deviation(values: FloatArray) -> float:
     return float(values.std(ddof=1))
 
 
+def block_factor(sample: Sample) -> float:
+    """What the standard deviation with divisor n - 1 is multiplied by where samples come in blocks.
+
+    The mean square about the sample's mean falls short of the variance by the variance of that mean.  For
+    independent samples the divisor n - 1 makes up for it; scrambled points know their mean far better, and
+    n - 1 would then leave a bias of s / (2 n), more than their whole error.  So the square of the standard
+    error that the blocks show is added instead.
+    """
+    values = sample.given
+    n = len(values)
+    s = standard_deviation(values)
+    if sample.plain or s == 0.0:
+        return 1.0
+    error = block_mean(values, sample.given_block, sample.replicates).standard_error
+    return math.sqrt((n - 1) / n + (error / s) ** 2) if math.isfinite(error) else 1.0
+
+
 def estimate_sd(sample: Sample, confidence: float) -> Estimate:
     """Standard deviation s of the quantity, given that it occurs, with the interval s exp(+-t SE).
 
     SE is the jackknife standard error of ln s (Quenouille, Tukey), leaving out one sample (plain Monte Carlo)
     or one block at a time, and t has as many degrees of freedom as samples or blocks, less one.  The
-    logarithm keeps the interval positive.  Plain Monte Carlo of a skew quantity often misses its tail, and
+    logarithm keeps the interval positive.  With blocks the divisor is n, see `block_factor`.  Plain Monte Carlo of a skew quantity often misses its tail, and
     then both s and SE are too small: the upper end is s exp((t + k (2 t^2 + 1)) SE),
 
         k = max(0, skewness of the jackknife deviations) / (6 sqrt(n)),
@@ -49,12 +66,12 @@ def estimate_sd(sample: Sample, confidence: float) -> Estimate:
     values = sample.given
     n = len(values)
     if n == 0:
-        return undetermined(sample.n_valid, "it does not occur in any of them")
+        return nothing_given(sample.n_valid)
     if sample.certain:
         return exact(0.0)
     if n < LEAST_SAMPLES:
         return undetermined(n, f"a standard deviation needs {LEAST_SAMPLES}")
-    s = standard_deviation(values)
+    s = standard_deviation(values) * block_factor(sample)
     if s == 0.0:
         return exact(0.0)
     variances = (

@@ -17,7 +17,6 @@ from aleafield.field.parameter import (
     number,
 )
 from aleafield.field.rates import Rate
-from aleafield.formula import Formula
 from aleafield.geometry import Domain
 from aleafield.randomness.laws import Law
 from aleafield.units import DIMENSIONLESS, TIME
@@ -88,7 +87,3 @@ class FieldEquation:
         yield "drive", self.drive
         yield "initial", self.initial
         yield "dynamics", self.dynamics
-
-    def switch_formulas(self) -> tuple[Formula, ...]:
-        """Sides of the drive's comparisons with t that hold neither x nor t: the times at which it switches."""
-        return tuple(side for f in self.drive.formulas() for side in f.switches())

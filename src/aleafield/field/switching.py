@@ -1,4 +1,4 @@
-"""Times at which a drive switches: sides of comparisons with t that hold neither x nor t."""
+"""Times at which a formula switches: sides of comparisons with t that hold neither x nor t."""
 
 from __future__ import annotations
 
@@ -7,13 +7,14 @@ from dataclasses import dataclass
 from typing import Any
 
 from aleafield.field.equation import FieldEquation
+from aleafield.field.formula_term import FormulaTerm
 from aleafield.formula import Formula
 from aleafield.randomness.laws import Law
 
 
 @dataclass(frozen=True)
 class Switching:
-    """How a drive switches in time.
+    """How a drive, or another formula of t, switches in time.
 
     Attributes
     ----------
@@ -30,10 +31,22 @@ class Switching:
 
 def switching(equation: FieldEquation) -> Switching:
     """The switch times of an equation's drive."""
+    return switch_times(equation.drive, equation.parameters)
+
+
+def switch_times(term: FormulaTerm, parameters: Mapping[str, Any]) -> Switching:
+    """The switch times of an unbound term.
+
+    Parameters
+    ----------
+    term : FormulaTerm
+    parameters : mapping
+        The study's named numbers, which those beside the term hide.
+    """
     times: set[float] = set()
-    uncertain = any(f.mixed_switches for f in equation.drive.formulas())
-    for side in equation.switch_formulas():
-        value = _certain_value(side, equation.drive.names, equation.parameters)
+    uncertain = any(f.mixed_switches for f in term.formulas())
+    for side in (side for f in term.formulas() for side in f.switches()):
+        value = _certain_value(side, term.names, parameters)
         if value is None:
             uncertain = True
         else:

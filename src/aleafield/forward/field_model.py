@@ -12,13 +12,13 @@ from aleafield.arrays import FloatArray, IntArray
 from aleafield.ensemble.level import Level, PathPart
 from aleafield.ensemble.records import FIELD_NOT_FINITE, FINITE, QUANTITY_NOT_FINITE, Records
 from aleafield.field.equation import FieldEquation
-from aleafield.field.switching import switching
+from aleafield.field.switching import switch_times, switching
 from aleafield.forward.recorder import FieldRecorder
 from aleafield.projection.discretisation import Discretisation
 from aleafield.projection.pairing import Pairing, resolve
 from aleafield.projection.path import split_path
 from aleafield.projection.scheme import Scheme
-from aleafield.quantities import PeakPosition, Quantity
+from aleafield.quantities import FormulaQuantity, PeakPosition, Quantity
 from aleafield.randomness.design import Design
 from aleafield.randomness.inputs import Input
 from aleafield.spaces import make_space
@@ -89,11 +89,6 @@ class FieldModel:
         return self._inputs
 
     @property
-    def quantity_names(self) -> Sequence[str]:
-        """Names of the quantities in the order of the study."""
-        return [q.name for q in self.quantities]
-
-    @property
     def level(self) -> Level:
         """The run's level."""
         return Level(self.pairing.nodes, self.pairing.quadrature_points)
@@ -105,9 +100,14 @@ class FieldModel:
 
     @property
     def schedule_times(self) -> tuple[float, ...]:
-        """Times that every schedule holds: those of the quantities and of certain switches of the drive."""
+        """Times that every schedule holds: those of the quantities, and of certain switches of the drive and of
+        quantities given by a formula."""
         times = {t for q in self.quantities for t in q.times(self.duration)}
-        times.update(t for t in self.switching.times if 0 < t < self.duration)
+        switches = set(self.switching.times)
+        for quantity in self.quantities:
+            if isinstance(quantity, FormulaQuantity):
+                switches.update(switch_times(quantity.term, self.equation.parameters).times)
+        times.update(t for t in switches if 0 < t < self.duration)
         return tuple(sorted(times))
 
     def schedule(self, halvings: int = 0) -> Schedule:

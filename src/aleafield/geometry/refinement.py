@@ -12,8 +12,9 @@ class Refinement:
     """Counts of points when every gap between them is halved or doubled.
 
     Points that hold both ends of an interval go from n to 2n - 1 and back to (n + 1)/2, which needs an odd n;
-    all others (inside an interval, or on a ring) go from n to 2n and back to n // 2.  The ratio of two levels
-    is therefore not always 2, and orders are observed with the true one.
+    all others (inside an interval, or on a ring) go from n to 2n and back to n // 2, which needs an even n
+    where the coarser gaps must be unions of finer ones.  The ratio of two levels is therefore not always 2,
+    and orders are observed with the true one.
 
     Parameters
     ----------
@@ -23,11 +24,14 @@ class Refinement:
         The smallest count that makes sense on any level.
     key : str
         The entry of the study file that gives the count; named in notes and errors.
+    unions : bool
+        Whether every gap of the coarser level must be a union of gaps: always so where both ends are counted.
     """
 
     both_ends: bool
     smallest: int
     key: str
+    unions: bool = False
 
     @property
     def minimum(self) -> int:
@@ -51,10 +55,12 @@ class Refinement:
             raise InputError(self.key, f"{n}", needed)
         if self.both_ends and n % 2 == 0:
             return n + 1, f"{self.key} = {n} is even; a coarser level needs an odd number, {n + 1} is used"
+        if self.unions and not self.both_ends and n % 2 == 1:
+            return n + 1, f"{self.key} = {n} is odd; a coarser level needs an even number, {n + 1} is used"
         return n, None
 
     def coarsened(self, n: int) -> tuple[int, str | None]:
-        """The count with every gap doubled, and a note where an even n stands for n + 1.
+        """The count with every gap doubled, and a note where n stands for n + 1.
 
         Raises
         ------

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from aleafield.operators.choice import OperatorChoice, choose_operator
+from aleafield.operators.choice import KernelUse, OperatorChoice, choose_operator, cosine_orders
 from aleafield.operators.dense import SampleDenseOperator, SharedDenseOperator
 from aleafield.operators.lattice import CirculantOperator, LatticePair, ToeplitzOperator
 from aleafield.operators.operator import KernelOperator
@@ -11,6 +11,7 @@ from aleafield.operators.symbol import SymbolOperator
 __all__ = [
     "CirculantOperator",
     "KernelOperator",
+    "KernelUse",
     "LatticePair",
     "OperatorChoice",
     "SampleDenseOperator",
@@ -18,4 +19,5 @@ __all__ = [
     "SymbolOperator",
     "ToeplitzOperator",
     "choose_operator",
+    "cosine_orders",
 ]

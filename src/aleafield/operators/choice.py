@@ -18,15 +18,19 @@ from typing import Literal
 import numpy as np
 
 from aleafield.arrays import FloatArray
-from aleafield.field.kernels import Connectivity
+from aleafield.field.kernels import Connectivity, CosineKernel
 from aleafield.geometry import Domain
 from aleafield.operators.dense import SampleDenseOperator, SharedDenseOperator
 from aleafield.operators.lattice import CirculantOperator, LatticePair, ToeplitzOperator
-from aleafield.operators.operator import KernelOperator, transform_operations
+from aleafield.operators.operator import UNIT_ROUNDING, KernelOperator, transform_operations
 from aleafield.operators.symbol import SymbolOperator, sampling_length
 from aleafield.quadrature import Rule
 
-Kind = Literal["exact symbol", "circulant", "toeplitz", "shared dense", "dense per sample"]
+Kind = Literal[
+    "exact symbol", "circulant", "toeplitz", "shared dense", "dense per sample", "closed between crossings"
+]
+KernelUse = Literal["sampled", "exact symbol", "closed"]
+"""Kernel values at the points; its exact Fourier symbol; closed integrals between threshold crossings."""
 
 WEIGHTS: dict[str, float] = {
     "exact symbol": 6.0,
@@ -34,6 +38,7 @@ WEIGHTS: dict[str, float] = {
     "toeplitz": 6.0,
     "shared dense": 1.0,
     "dense per sample": 4.0,
+    "closed between crossings": 1.0,
 }
 """Cost of one operation, that of a shared matrix product being 1."""
 
@@ -56,6 +61,7 @@ class OperatorChoice:
     Attributes
     ----------
     name : str
+        "closed between crossings" names no operator: a step rate under cosine kernels needs none.
     reason : str
         Why it was chosen, in words.
     operations : float
@@ -91,6 +97,7 @@ class OperatorChoice:
         fold : function of a matrix (.., T, Q) to one (.., n, Q)
             The projection of values at the test points, used where `folded`.
         """
+        assert self.name != "closed between crossings"
         domain, test, source = self._domain, self._test, self._source
         if self.name == "exact symbol":
             q = len(source.points)
@@ -106,6 +113,11 @@ class OperatorChoice:
         return SharedDenseOperator(matrix) if matrix.ndim == 2 else SampleDenseOperator(matrix)
 
 
+def cosine_orders(kernel: Connectivity) -> int:
+    """Number of coefficients, that of the constant included, of a kernel all of whose parts are cosines."""
+    return max(len(part.coefficients) for part in kernel.parts.values() if isinstance(part, CosineKernel))
+
+
 def choose_operator(
     kernel: Connectivity,
     domain: Domain,
@@ -113,7 +125,7 @@ def choose_operator(
     source: Rule,
     unknowns: int,
     projection_operations: float,
-    exact_symbol: bool,
+    use: KernelUse,
     truncated: bool,
 ) -> OperatorChoice:
     """The cheapest operator by weighted count of operations.
@@ -129,20 +141,28 @@ def choose_operator(
         n; dense operators give unknowns directly.
     projection_operations : float
         Operations, for one sample, of the projection that the other operators need besides.
-    exact_symbol : bool
-        Whether the pairing asks for the exact Fourier symbol (then nothing else will do).
+    use : "sampled", "exact symbol" or "closed"
+        What the pairing asks for; only sampled kernels leave a choice.
     truncated : bool
         Whether the exact symbol keeps the modes of the space only.
     """
     q = len(source.points)
 
     def chosen(one: _Candidate, reason: str) -> OperatorChoice:
-        folded = one.kind in ("shared dense", "dense per sample")
+        folded = one.kind in ("shared dense", "dense per sample", "closed between crossings")
         return OperatorChoice(
             one.kind, reason, one.operations, one.error, folded, domain, test, source, truncated
         )
 
-    if exact_symbol:
+    if use == "closed":
+        waves = 2 * cosine_orders(kernel)
+        error = (q + waves) * UNIT_ROUNDING
+        return chosen(
+            _Candidate("closed between crossings", 2.0 * waves * (q + unknowns), error),
+            "step rate under cosine kernels: between the threshold crossings the integral is a difference of "
+            "sines, and no kernel matrix is needed",
+        )
+    if use == "exact symbol":
         points = sampling_length(q, len(test.points), truncated)
         count = transform_operations(q) + transform_operations(points) + 2 * q
         error = SymbolOperator.rounding(max(points, q))

@@ -30,7 +30,7 @@ _PER_POINT = 300.0
 _PER_UNKNOWN = 150.0
 """The same for the arithmetic of a Runge-Kutta stage on an unknown."""
 _ROWS = 9
-"""Rows of the kernel matrix from which its largest row sum is taken."""
+"""Rows of the kernel matrix from which its largest row sum is sampled."""
 
 
 class Discretisation:
@@ -77,7 +77,7 @@ class Discretisation:
             self.rule,
             unknowns=self.space.n,
             projection_operations=self.restriction.operations,
-            exact_symbol=pairing.kernel_use == "exact symbol",
+            use=pairing.kernel_use,
             truncated=pairing.method == "galerkin",
         )
         self._shared: KernelOperator | None = None
@@ -113,10 +113,12 @@ class Discretisation:
         )
 
     def gain(self, equation: FieldEquation) -> FloatArray | None:
-        """Bound of the linearised integral term: max |f'| times the largest row sum of |w|; shape () or (S,).
+        """Size of the linearised integral term: max |f'| times a sampled largest row sum of |w|; () or (S,).
 
-        The modes of the linearised field change at rates of at most (1 + gain) / time constant.  None where
-        the slope of the rate is not known.
+        The modes of the linearised field change at rates of at most (1 + gain) / time constant.  The row sums
+        are sampled at about nine test points spread over the domain: for a kernel of the distance the rows
+        next to the middle are as large as any, for a formula of x and y a larger one may lie between them, and
+        the number is no bound.  None where the slope of the rate is not known.
 
         Parameters
         ----------

@@ -7,7 +7,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
-from aleafield.field.rates import Smoothness
+from aleafield.projection.smoothness import RateSmoothness
 
 RULE_ORDERS: dict[str, float | None] = {
     "trapezoid": 2.0,
@@ -44,6 +44,9 @@ class Expected:
         return f"{words} (observed only)" if self.observed_only else words
 
 
+_JUMP = Expected(1.0, "the rate jumps and is sampled at the points, which pins where it jumps to them", True)
+
+
 @dataclass(frozen=True)
 class Ingredients:
     """What the orders depend on.
@@ -54,7 +57,8 @@ class Ingredients:
     rule : str
         Of the integral over y.
     periodic : bool
-    rate : "smooth", "kinked" or "step"
+    rate : "smooth", "kinked", "jump" or "step"
+        "jump" is a formula that jumps; a step has its crossings resolved.
     kernel_smooth : bool
     data_smooth : bool
         Whether drive and initial state are smooth in x.
@@ -72,7 +76,7 @@ class Ingredients:
     method: str
     rule: str
     periodic: bool
-    rate: Smoothness
+    rate: RateSmoothness
     kernel_smooth: bool
     data_smooth: bool
     sampled: bool
@@ -88,6 +92,8 @@ class Ingredients:
 
 def space_order(of: Ingredients) -> Expected:
     """Order of the error that the projector makes, the quadrature points held."""
+    if of.rate == "jump":
+        return _JUMP
     step = of.rate == "step"
     if not of.data_smooth:
         reason = "the drive or the initial state has a kink or a jump: "
@@ -107,6 +113,8 @@ def space_order(of: Ingredients) -> Expected:
 
 def quadrature_order(of: Ingredients) -> Expected:
     """Order of the error of the integrals, the projector held."""
+    if of.rate == "jump":
+        return _JUMP
     if of.rate == "step" and of.closed and not of.spectral:
         return _closed_order(of)
     if of.rate == "step":
@@ -153,6 +161,8 @@ def time_order(of: Ingredients) -> Expected:
         return Expected(
             1.0, "the drive switches at times that are uncertain or depend on x: not on the schedule"
         )
+    if of.rate == "jump":
+        return _JUMP
     if of.rate != "smooth":
         return Expected(2.0, "the rate is not differentiable: nor is the right-hand side in time", True)
     return Expected(4.0, "classical Runge-Kutta")

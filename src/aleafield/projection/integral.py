@@ -11,7 +11,7 @@ from aleafield.field.kernels import Connectivity, CosineKernel
 from aleafield.field.parameter import per_sample
 from aleafield.field.rates import Rate, StepRate
 from aleafield.geometry import Domain
-from aleafield.operators import KernelOperator
+from aleafield.operators import KernelOperator, cosine_orders
 from aleafield.projection.restriction import Restriction
 from aleafield.quadrature import Rule, active_moments, crossing_weights
 from aleafield.spaces import Prolongation
@@ -119,10 +119,7 @@ class ClosedIntegral(IntegralTerm):
         assert rule.spacing is not None
         self._prolongation, self._rule, self._rate, self._domain = prolongation, rule, rate, domain
         self._spacing = rule.spacing
-        orders = 0
-        for part in kernel.parts.values():
-            assert isinstance(part, CosineKernel)
-            orders = max(orders, len(part.coefficients))
+        orders = cosine_orders(kernel)
         self._wavenumbers = np.asarray(2 * np.pi / domain.length * np.arange(orders), dtype=np.float64)
         self._coefficients = [_coefficient(kernel, k) for k in range(orders)]
         phases = self._wavenumbers[:, None] * test_points

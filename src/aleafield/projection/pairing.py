@@ -2,14 +2,14 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-from typing import Literal
+from dataclasses import dataclass, replace
 
 from aleafield.errors import InputError
 from aleafield.field.equation import FieldEquation
 from aleafield.field.kernels import CosineKernel, FormulaKernel
 from aleafield.field.switching import switching
 from aleafield.geometry import Domain, Refinement
+from aleafield.operators import KernelUse
 from aleafield.projection.expectation import (
     RULE_ORDERS,
     Expected,
@@ -18,19 +18,17 @@ from aleafield.projection.expectation import (
     space_order,
     time_order,
 )
-from aleafield.projection.scheme import METHODS, PROJECTORS, QUADRATURES, Method, Projector, Scheme
-from aleafield.projection.smoothness import drive_is_smooth, initial_is_smooth, kernel_is_smooth, typical
+from aleafield.projection.scheme import METHODS, QUADRATURES, Method, Projector, Scheme
+from aleafield.projection.smoothness import (
+    drive_is_smooth,
+    initial_is_smooth,
+    kernel_is_smooth,
+    rate_smoothness,
+    typical,
+)
 from aleafield.quadrature import Rule, count_refinement, make_rule
 from aleafield.spaces import nodes_refinement
 
-KernelUse = Literal["sampled", "exact symbol", "closed"]
-
-_ON_THE_RING: dict[str, bool | None] = {
-    "piecewise linear": None,
-    "chebyshev": False,
-    "legendre": False,
-    "fourier": True,
-}
 _FORCED: dict[str, tuple[str, ...]] = {
     "piecewise linear": ("trapezoid", "simpson", "gauss-legendre"),
     "chebyshev": ("trapezoid", "simpson", "gauss-legendre", "clenshaw-curtis"),
@@ -48,7 +46,7 @@ class Pairing:
     projector, method : names of the study file
     domain : Interval or Ring
     nodes, quadrature_points : int
-        Counts of the run, made odd where a coarser level needs it.
+        Counts of the run, made odd, or even on a ring, where a coarser level needs it.
     rule : str
         Name of the rule of the integral over y, as `quadrature.make_rule` takes it; its count is
         `quadrature_points`.
@@ -89,7 +87,7 @@ class Pairing:
     @property
     def point_refinement(self) -> Refinement:
         """How `quadrature_points` grows from level to level."""
-        return count_refinement(self.rule, self.domain)
+        return _point_refinement(self.projector, self.rule, self.domain)
 
     def source_rule(self, count: int) -> Rule:
         """The rule of the integral over y with that count."""
@@ -121,12 +119,14 @@ def resolve(scheme: Scheme, equation: FieldEquation) -> Pairing:
     """
     domain = equation.domain
     step = equation.rate.smoothness == "step"
+    node_refinement = nodes_refinement(scheme.projector, domain)
     _refuse(scheme, domain, step)
-    nodes, node_note = nodes_refinement(scheme.projector, domain).admissible(scheme.nodes)
+    nodes, node_note = node_refinement.admissible(scheme.nodes)
     rule = "trapezoid" if step else _rule(scheme, domain)
     default = _default_points(scheme.projector, domain, nodes, step)
     asked = default if scheme.quadrature_points is None else scheme.quadrature_points
-    points, point_note = count_refinement(rule, domain).admissible(asked)
+    point_refinement = _point_refinement(scheme.projector, rule, domain)
+    points, point_note = point_refinement.admissible(asked)
     inner_rule = None
     if scheme.projector == "piecewise linear" and scheme.method == "galerkin":
         inner_rule = "composite gauss" if step else rule
@@ -136,7 +136,7 @@ def resolve(scheme: Scheme, equation: FieldEquation) -> Pairing:
             "scheme.quadrature_points",
             f"{points} with {nodes} nodes",
             "every element must be a whole number of panels under piecewise linear Galerkin: "
-            f"use {default} or its refinement {count_refinement(rule, domain).refined(default)}",
+            f"use {default} or its refinement {point_refinement.refined(default)}",
         )
     sample = typical(equation)
     kernel_use = _kernel_use(scheme, equation, step)
@@ -145,7 +145,7 @@ def resolve(scheme: Scheme, equation: FieldEquation) -> Pairing:
         method=scheme.method,
         rule=rule,
         periodic=domain.periodic,
-        rate=equation.rate.smoothness,
+        rate=rate_smoothness(sample.rate),
         kernel_smooth=kernel_is_smooth(sample),
         data_smooth=initial_is_smooth(sample) and drive_is_smooth(sample),
         sampled=kernel_use == "sampled",
@@ -177,17 +177,10 @@ def _one_of(key: str, value: str, names: tuple[str, ...]) -> None:
 
 
 def _refuse(scheme: Scheme, domain: Domain, step: bool) -> None:
-    """Raise for pairs that make no sense."""
+    """Raise for pairs that make no sense; that the projector exists on the domain is known."""
     projector, method, quadrature = scheme.projector, scheme.method, scheme.quadrature
-    _one_of("scheme.projector", projector, PROJECTORS)
     _one_of("scheme.method", method, METHODS)
     _one_of("scheme.quadrature", quadrature, QUADRATURES)
-    where = "a ring" if domain.periodic else "an interval"
-    if _ON_THE_RING[projector] not in (None, domain.periodic):
-        fitting = [p for p in PROJECTORS if _ON_THE_RING[p] in (None, domain.periodic)]
-        raise InputError(
-            "scheme.projector", f"{projector!r} on {where}", "use " + " or ".join(map(repr, fitting))
-        )
     if projector == "chebyshev" and method == "galerkin":
         raise InputError(
             "scheme.method",
@@ -209,6 +202,7 @@ def _refuse(scheme: Scheme, domain: Domain, step: bool) -> None:
             "use 'matched': it resolves the threshold crossings, and no other rule does",
         )
     if quadrature not in _FORCED[projector]:
+        where = "a ring" if domain.periodic else "an interval"
         allowed = ", ".join(("matched", *_FORCED[projector]))
         raise InputError(
             "scheme.quadrature", f"{quadrature!r} under {projector} on {where}", f"one of {allowed} is needed"
@@ -226,6 +220,11 @@ def _rule(scheme: Scheme, domain: Domain) -> str:
     return {"chebyshev": "clenshaw-curtis", "legendre": "gauss-legendre", "fourier": "trapezoid"}[
         scheme.projector
     ]
+
+
+def _point_refinement(projector: str, rule: str, domain: Domain) -> Refinement:
+    """How the count of a rule grows; the kinks of a piecewise-linear field stay at the ends of panels."""
+    return replace(count_refinement(rule, domain), unions=projector == "piecewise linear")
 
 
 def _default_points(projector: str, domain: Domain, nodes: int, step: bool) -> int:
@@ -262,7 +261,12 @@ def _warnings(of: Ingredients, equation: FieldEquation) -> list[str]:
     else:
         found.extend(_quadrature_warnings(of))
         if of.rate == "kinked":
-            found.append("rate: it has a kink or a jump, so that integrals are of order 2 at best")
+            found.append("rate: it has a kink, so that integrals are of order 2 at best")
+        if of.rate == "jump":
+            found.append(
+                "rate: it jumps; sampled at the points a jump is of order 1 at best and pins bumps and fronts to "
+                'them: use form = "step", whose threshold crossings are resolved'
+            )
         if not equation.rate.bounded:
             found.append(
                 "rate: not known to be bounded, which the convergence theory asks for; solutions may blow up"

@@ -10,21 +10,31 @@ formula would tell how large.
 from __future__ import annotations
 
 from collections.abc import Callable
+from typing import Literal
 
 import numpy as np
 import scipy.fft
 
-from aleafield.arrays import FloatArray
+from aleafield.arrays import BoolArray, FloatArray
 from aleafield.field.equation import FieldEquation
 from aleafield.field.formula_term import FormulaTerm
 from aleafield.field.kernels import Kernel
+from aleafield.field.rates import FormulaRate, Rate, Smoothness
 from aleafield.geometry import Domain, Interval, ring_grid
 from aleafield.quadrature import extremal_points
+
+RateSmoothness = Smoothness | Literal["jump"]
 
 _POINTS = 4096
 _TAIL = 1e-12
 """Size of the last eighth of the coefficients, relative to the largest, above which a function is not smooth:
 a kink whose slope jumps by the function's size over the domain leaves about 1e-7 there."""
+
+_ACTIVITIES = (1e-6, 1e6)
+_HALVINGS = 40
+"""A cell is 1e-12 of itself afterwards; a continuous formula changes by about as little of its size there."""
+_JUMP = 1e-6
+"""Change within such a cell, as a share of the values, that counts as a jump."""
 
 _PLACES = (0.1370, 0.4142, 0.8090)
 """Positions, as shares of the length, at which a kernel is looked at: no nodes of common meshes."""
@@ -69,6 +79,37 @@ def _part_is_smooth(part: Kernel, domain: Domain) -> bool:
     return smooth_on(domain, lambda y: part.matrix(places, y[None, :], domain)) and smooth_on(
         domain, lambda x: part.matrix(x[None, :], places, domain)
     )
+
+
+def rate_smoothness(rate: Rate) -> RateSmoothness:
+    """The smoothness of a bound rate; "jump" for a formula with a kink by its text and a jump by its values.
+
+    A step rate does not count as one that jumps: its crossings are resolved.
+    """
+    if rate.smoothness == "kinked" and isinstance(rate, FormulaRate) and _jumps(rate):
+        return "jump"
+    return rate.smoothness
+
+
+def _jumps(rate: Rate) -> bool:
+    """Whether f(u) has a jump: cells of a grid of activities are halved, each time the half with the larger
+    change kept, until only a jump can change the value within one.
+
+    The activities are those of both signs from 1e-6 to 1e6, with neighbours 0.7 % apart, and 0.
+    """
+    sizes = np.geomspace(_ACTIVITIES[0], _ACTIVITIES[1], _POINTS)
+    ends = np.concatenate((-sizes[::-1], [0.0], sizes))
+    low, high = ends[:-1], ends[1:]
+    with np.errstate(all="ignore"):
+        at_low, at_high = rate(low[None, :])[0], rate(high[None, :])[0]
+        for _ in range(_HALVINGS):
+            middle = 0.5 * (low + high)
+            at_middle = rate(middle[None, :])[0]
+            left: BoolArray = np.abs(at_middle - at_low) >= np.abs(at_high - at_middle)
+            low, high = np.where(left, low, middle), np.where(left, middle, high)
+            at_low, at_high = np.where(left, at_low, at_middle), np.where(left, at_middle, at_high)
+        change, size = np.abs(at_high - at_low), np.abs(at_low) + np.abs(at_high)
+    return bool(np.any(change > _JUMP * size))
 
 
 def initial_is_smooth(equation: FieldEquation) -> bool:

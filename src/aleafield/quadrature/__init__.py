@@ -6,7 +6,7 @@ from aleafield.quadrature.clenshaw_curtis import clenshaw_curtis, extremal_point
 from aleafield.quadrature.composite import composite_gauss, simpson, trapezoid
 from aleafield.quadrature.crossings import active_moments, crossing_weights
 from aleafield.quadrature.gauss import gauss_legendre
-from aleafield.quadrature.named import RULE_NAMES, count_refinement, doubled, halved, make_rule
+from aleafield.quadrature.named import RULE_NAMES, count_refinement, make_rule
 from aleafield.quadrature.periodic import periodic_trapezoid
 from aleafield.quadrature.rule import Lattice, Rule
 
@@ -19,10 +19,8 @@ __all__ = [
     "composite_gauss",
     "count_refinement",
     "crossing_weights",
-    "doubled",
     "extremal_points",
     "gauss_legendre",
-    "halved",
     "make_rule",
     "periodic_trapezoid",
     "simpson",

@@ -41,4 +41,4 @@ def clenshaw_curtis(interval: Interval, n: int) -> Rule:
     weights = np.asarray(dct(moments, type=1), dtype=np.float64) / (n - 1)
     weights[[0, -1]] *= 0.5
     weights *= 0.5 * interval.length
-    return Rule("clenshaw-curtis", extremal_points(interval, n), weights, n, True, None)
+    return Rule("clenshaw-curtis", extremal_points(interval, n), weights, None)

@@ -24,7 +24,7 @@ def trapezoid(domain: Domain, panels: int) -> Rule:
     weights = np.full(panels + 1, spacing)
     weights[[0, -1]] = 0.5 * spacing
     lattice = Lattice(domain.low, spacing, (0.0,))
-    return Rule("trapezoid", interval_grid(domain, panels), weights, panels, True, lattice)
+    return Rule("trapezoid", interval_grid(domain, panels), weights, lattice)
 
 
 def simpson(domain: Domain, panels: int) -> Rule:
@@ -37,11 +37,11 @@ def simpson(domain: Domain, panels: int) -> Rule:
     weights[1::2] = 4.0 * spacing / 3.0
     if not isinstance(domain, Interval):
         lattice = Lattice(0.0, spacing, (0.0,))
-        return Rule("simpson", ring_grid(domain, 2 * panels), weights, panels, False, lattice)
+        return Rule("simpson", ring_grid(domain, 2 * panels), weights, lattice)
     weights[0] = spacing / 3.0
     weights = np.append(weights, spacing / 3.0)
     lattice = Lattice(domain.low, spacing, (0.0,))
-    return Rule("simpson", interval_grid(domain, 2 * panels), weights, panels, True, lattice)
+    return Rule("simpson", interval_grid(domain, 2 * panels), weights, lattice)
 
 
 def composite_gauss(domain: Domain, panels: int, per_panel: int = 2) -> Rule:
@@ -62,4 +62,4 @@ def composite_gauss(domain: Domain, panels: int, per_panel: int = 2) -> Rule:
     points = domain.wrap((starts[:, None] + offsets[None, :]).ravel())
     weights = np.tile(0.5 * spacing * reference_weights, panels)
     lattice = Lattice(origin, spacing, tuple(offsets.tolist()))
-    return Rule("composite gauss", points, weights, panels, False, lattice)
+    return Rule("composite gauss", points, weights, lattice)

@@ -20,4 +20,4 @@ def gauss_legendre(interval: Interval, n: int) -> Rule:
     reference, reference_weights = leggauss(n)
     half = 0.5 * interval.length
     middle = 0.5 * (interval.low + interval.high)
-    return Rule("gauss-legendre", middle + half * reference, half * reference_weights, n, False, None)
+    return Rule("gauss-legendre", middle + half * reference, half * reference_weights, None)

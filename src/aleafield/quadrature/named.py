@@ -52,21 +52,3 @@ def make_rule(name: str, domain: Domain, count: int) -> Rule:
     if isinstance(domain, Interval) and name in INTERVAL_RULES:
         return INTERVAL_RULES[name](domain, count)
     return COMPOSITE_RULES[name](domain, count if domain.periodic else count - 1)
-
-
-def doubled(name: str, domain: Domain, count: int) -> int:
-    """The count with twice the points: every panel halved, n -> 2n - 1 with both ends, else n -> 2n."""
-    return count_refinement(name, domain).refined(count)
-
-
-def halved(name: str, domain: Domain, count: int) -> int:
-    """The count with half the points, the inverse of `doubled`.
-
-    An even count with both ends stands for count + 1.
-
-    Raises
-    ------
-    InputError
-        Where the count has no half.
-    """
-    return count_refinement(name, domain).coarsened(count)[0]

@@ -20,4 +20,4 @@ def periodic_trapezoid(ring: Ring, n: int) -> Rule:
     memory).
     """
     spacing = ring.length / n
-    return Rule("trapezoid", ring_grid(ring, n), np.full(n, spacing), n, False, Lattice(0.0, spacing, (0.0,)))
+    return Rule("trapezoid", ring_grid(ring, n), np.full(n, spacing), Lattice(0.0, spacing, (0.0,)))

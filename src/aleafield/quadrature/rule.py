@@ -41,10 +41,6 @@ class Rule:
         wrapped, so that the points of a doubled trapezoid rule are every second time those of the rule.
     weights : float array (Q,)
         Positive, units of length; they sum to the length of the domain.
-    panels : int
-        Number of panels of a composite rule, number of points of any other.
-    closed : bool
-        Whether both ends of an interval are points.
     lattice : Lattice or None
         The uniform structure of the points, None where there is none.
     """
@@ -52,8 +48,6 @@ class Rule:
     name: str
     points: FloatArray
     weights: FloatArray
-    panels: int
-    closed: bool
     lattice: Lattice | None
 
     def __post_init__(self) -> None:

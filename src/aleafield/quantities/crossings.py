@@ -138,8 +138,8 @@ def _smooth(space: Space, u: FloatArray, column: FloatArray) -> Crossings:
 
     def above_level(which: IntArray, x: FloatArray) -> tuple[FloatArray, FloatArray]:
         chosen, place = rows[which], x[:, None]
-        value = space.evaluate_each(chosen, place)[:, 0] - level[which]
-        return value, space.differentiate_each(chosen, place)[:, 0]
+        value, slope = space.derivatives_each(chosen, place, (0, 1))
+        return value[:, 0] - level[which], slope[:, 0]
 
     start = np.concatenate((chord, 0.5 * (over + under)[len(chord) :]))
     position = bracketed_roots(above_level, over, under, start, resolution(domain))

@@ -37,8 +37,9 @@ class FormulaQuantity(TimedQuantity):
 
     mean and integral: by three Gauss points on each element (piecewise linear), 2n Gauss points (Chebyshev,
     Legendre) or 4n equally spaced points (Fourier).  maximum: of a piecewise-linear field by the parabola
-    through three nodal values of the formula, as for the maximum of the field; else the largest value on the
-    search grid, refined by golden-section search of the formula of the element, which needs no derivative.
+    through three nodal values of the formula, as for the maximum of the field, and for a formula that may have
+    kinks or jumps in u or x the largest nodal value; else the largest value on the search grid, refined by
+    golden-section search of the formula of the element, which needs no derivative and never overshoots.
     value: at a point.
 
     Comparisons with t inside a step of a window take the limit from inside that step.  The unit of a formula
@@ -115,7 +116,8 @@ class FormulaQuantity(TimedQuantity):
             evaluate, point = PointEvaluation(space, self.at), np.array([self.at])
             return lambda u, formula: formula(evaluate(u)[:, None], point)[:, 0]
         if self.in_space == "maximum":
-            return lambda u, formula: largest(space, u, formula)
+            smooth = not (self.term.kinks_in("u") or self.term.kinks_in("x"))
+            return lambda u, formula: largest(space, u, formula, smooth)
         points, weights = formula_rule(space)
         if self.in_space == "mean":
             weights = weights / space.domain.length
@@ -134,8 +136,13 @@ def formula_rule(space: Space) -> tuple[FloatArray, FloatArray]:
     return rule.points, rule.weights
 
 
-def largest(space: Space, u: FloatArray, formula: Pointwise) -> FloatArray:
+def largest(space: Space, u: FloatArray, formula: Pointwise, smooth: bool) -> FloatArray:
     """Largest value in space of a formula of the elements u (S, n); shape (S,).
+
+    Parameters
+    ----------
+    smooth : bool
+        Whether the formula has neither kinks nor jumps in u and x, so that a parabola may pass through it.
 
     References
     ----------
@@ -144,8 +151,8 @@ def largest(space: Space, u: FloatArray, formula: Pointwise) -> FloatArray:
     """
     grid = space.search_grid
     if isinstance(space, PiecewiseLinear):
-        nodal = np.take(u, space.display_order, axis=1)
-        return parabolic_peak(formula(nodal, grid), grid, space.domain).height
+        nodal = formula(np.take(u, space.display_order, axis=1), grid)
+        return parabolic_peak(nodal, grid, space.domain).height if smooth else nodal.max(axis=1)
     values = formula(space.evaluate(u, grid), grid)
     best = values.argmax(axis=1)
     before, after = np.roll(grid, 1), np.roll(grid, -1)

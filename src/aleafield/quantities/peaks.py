@@ -11,6 +11,9 @@ from aleafield.geometry import Domain
 from aleafield.quantities.roots import bracketed_roots
 from aleafield.spaces import PiecewiseLinear, Space
 
+_AGREEMENT = 4.0
+"""Second differences whose ratio is at most this agree: those of a smooth peak differ by O(h) of themselves."""
+
 
 @dataclass(frozen=True)
 class Peak:
@@ -53,6 +56,13 @@ def parabolic_peak(values: FloatArray, points: FloatArray, domain: Domain) -> Pe
     A vertex counts where it lies within half a spacing of its middle node; on an interval, beyond that as far
     as the end of the domain for the first and last three points.  Else the nodal value counts.
 
+    It counts only where the second differences of both neighbouring triples (of the one there is, for the
+    first and last triple of an interval) have its sign and agree with its own within a factor of 4.  At a
+    jump, a kink or the edge of a plateau they do not, and a parabola would overshoot by a share of the jump
+    that no refinement makes smaller; where they do, the rise above the node is bounded by a multiple of a second
+    difference beside it, as for a smooth peak.  A Gaussian bump counts as smooth from about two spacings per
+    standard deviation on.  A triple without a neighbour is not confirmed.
+
     Parameters
     ----------
     values : float array (S, P), finite
@@ -71,13 +81,22 @@ def parabolic_peak(values: FloatArray, points: FloatArray, domain: Domain) -> Pe
     slope, curvature = 0.5 * (right - left), left - 2 * values + right
     with np.errstate(all="ignore"):
         vertex = -slope / curvature
-        inside = (curvature < 0) & (vertex >= reach_left) & (vertex <= reach_right)
+        inside = (vertex >= reach_left) & (vertex <= reach_right) & _confirmed(curvature, domain.periodic)
         vertex = np.where(inside, vertex, 0.0)
     heights = values + np.where(inside, 0.5 * slope * vertex, 0.0)
     best = heights.argmax(axis=1)[:, None]
     position = points[best[:, 0]] + spacing * np.take_along_axis(vertex, best, axis=1)[:, 0]
     position = domain.wrap(position) if domain.periodic else np.clip(position, domain.low, domain.high)
     return Peak(position, np.take_along_axis(heights, best, axis=1)[:, 0])
+
+
+def _confirmed(curvature: FloatArray, periodic: bool) -> BoolArray:
+    """Where a second difference (S, P) is negative and its neighbours agree with it; (S, P)."""
+    ratio_left, ratio_right = (np.roll(curvature, shift, axis=1) / curvature for shift in (1, -1))
+    if not periodic:  # the triples centred at an end do not exist
+        ratio_left[:, 1] = ratio_right[:, -2] = 1.0 if curvature.shape[1] > 3 else np.nan
+    agree = [(ratio >= 1 / _AGREEMENT) & (ratio <= _AGREEMENT) for ratio in (ratio_left, ratio_right)]
+    return np.asarray((curvature < 0) & agree[0] & agree[1])
 
 
 def local_maxima(values: FloatArray, periodic: bool) -> tuple[BoolArray, FloatArray]:
@@ -87,14 +106,14 @@ def local_maxima(values: FloatArray, periodic: bool) -> tuple[BoolArray, FloatAr
     parabola rises above its highest grid point by at most an eighth of the second difference; the bound given
     here is a whole second difference above it.
     """
-    left, right = np.roll(values, 1, axis=1), np.roll(values, -1, axis=1)
-    if not periodic:
-        left[:, 0], right[:, -1] = values[:, 0], values[:, -1]
-    higher_than_left = values > left
+    rise = np.empty((values.shape[0], values.shape[1] + 1))
+    np.subtract(values[:, 1:], values[:, :-1], out=rise[:, 1:-1])
+    rise[:, 0] = rise[:, -1] = values[:, 0] - values[:, -1] if periodic else 0.0
+    before, after = rise[:, :-1], rise[:, 1:]
+    higher_than_left = before > 0
     if not periodic:
         higher_than_left[:, 0] = True
-    bound = values + (2 * values - left - right)
-    return higher_than_left & (values >= right), bound
+    return higher_than_left & (after <= 0), values + (before - after)
 
 
 def refined_summits(
@@ -132,9 +151,8 @@ def refined_summits(
 
     def slope(which: IntArray, x: FloatArray) -> tuple[FloatArray, FloatArray]:
         chosen, place = rows[which], x[:, None]
-        first = space.differentiate_each(chosen, place)[:, 0]
-        second = space.differentiate_each(chosen, place, 2)[:, 0]
-        return sign * first, sign * second
+        first, second = space.derivatives_each(chosen, place, (1, 2))
+        return sign * first[:, 0], sign * second[:, 0]
 
     grid_height = values[sample, point]
     start = _vertex(
@@ -143,7 +161,7 @@ def refined_summits(
         after[point] - at,
         values[sample, (point + 1) % len(grid)] - grid_height,
     )
-    start = np.where((at + start >= left) & (at + start <= right), at + start, 0.5 * (left + right))
+    start = np.where(np.isfinite(start), np.clip(at + start, left, right), 0.5 * (left + right))
     position = bracketed_roots(slope, left, right, start, resolution(space.domain))
     found = sign * space.evaluate_each(rows, position[:, None])[:, 0]
     better = found > grid_height  # rounding, or a slope with several roots in the cell

@@ -13,6 +13,8 @@ WithSlope = Callable[[IntArray, FloatArray], tuple[FloatArray, FloatArray]]
 
 _LAST_NEWTON = 1e5
 """A Newton step of so many resolutions is the last one."""
+_OVERSHOOT = 0.1
+"""A Newton step that leaves the bracket by no more than this share of itself goes to the end of the bracket."""
 _MOST_ITERATIONS = 200
 """Every second iteration halves the bracket or the step, so that about 110 always suffice."""
 
@@ -22,8 +24,8 @@ def bracketed_roots(
 ) -> FloatArray:
     """A root of each function between a place where it is positive and one where it is not.
 
-    Newton's method, kept inside the bracket; a step that leaves it, or that is more than half of the step
-    before, is replaced by bisection.  Each root is frozen as soon as it is found, so that it has the same
+    Newton's method, kept inside the bracket; a step that leaves it by much, or that is more than half of the
+    step before, is replaced by bisection.  Each root is frozen as soon as it is found, so that it has the same
     bits whatever else is searched beside it.
 
     Parameters
@@ -60,14 +62,13 @@ def bracketed_roots(
         above[searching], below[searching] = top, bottom
         with np.errstate(all="ignore"):
             newton = x - value / slope
-            inside = (newton - top) * (newton - bottom) <= 0
-            quick = np.abs(newton - x) <= 0.5 * step[searching]
-            # so short a Newton step squares the error to below rounding, and may leave the bracket by rounding
+            # where the root is an end of the bracket, a step may leave it by rounding or by its own error
+            nearest = np.clip(newton, np.minimum(top, bottom), np.maximum(top, bottom))
+            inside = (np.abs(newton - nearest) <= _OVERSHOOT * np.abs(newton - x)) & (nearest != x)
+            quick = np.abs(nearest - x) <= 0.5 * step[searching]
+            # so short a Newton step squares the error to below rounding
             last = np.abs(newton - x) <= _LAST_NEWTON * resolution
-        following = np.where(inside & quick, newton, 0.5 * (top + bottom))
-        following = np.where(
-            last, np.clip(newton, np.minimum(top, bottom), np.maximum(top, bottom)), following
-        )
+        following = np.where(last | (inside & quick), nearest, 0.5 * (top + bottom))
         following = np.where(value == 0, x, following)
         length = np.abs(following - x)
         place[searching], step[searching] = following, length

@@ -54,8 +54,6 @@ class Design:
     ----------
     inputs, dependence, method, seed
         As given.
-    replicates : int
-        Independent parts of the design: 16 scramblings, or 1.
 
     Raises
     ------
@@ -72,7 +70,6 @@ class Design:
         self._followers = _followers(self.inputs, dependence) if dependence.sampled_together else {}
         points = PlainPoints if method == "monte carlo" else SobolPoints
         self._points: Points = points(2 * len(self.inputs), seed)
-        self.replicates: int = self._points.replicates
 
     def unit_points(self, indices: IntArray) -> FloatArray:
         """Independent uniform points of the samples.
@@ -117,10 +114,6 @@ class Design:
             else:
                 values[entry.path] = follower.values[follower.law.rank(dependent[:, follower.leader])]
         return values
-
-    def replicate(self, indices: IntArray) -> IntArray:
-        """Which independent part of the design each sample belongs to, counted from 0."""
-        return np.asarray(indices, dtype=np.int64) % self.replicates
 
 
 def _followers(inputs: Sequence[Input], dependence: Dependence) -> dict[int, Follower]:

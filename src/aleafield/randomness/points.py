@@ -19,7 +19,8 @@ if TYPE_CHECKING:
     from scipy.stats.qmc import Sobol
 
 SCRAMBLINGS = 16
-"""Independent scramblings of the Sobol' sequence in a quasi-Monte Carlo design."""
+"""Independent scramblings of the Sobol' sequence in a quasi-Monte Carlo design; errors are estimated by t over
+them."""
 _BITS = 32
 """Binary digits of a Sobol' coordinate; scipy skips ahead in the sequence only up to 32."""
 _LARGEST_GAP = 256
@@ -27,15 +28,7 @@ _LARGEST_GAP = 256
 
 
 class Points(ABC):
-    """Uniform points in the unit cube by index.
-
-    Attributes
-    ----------
-    replicates : int
-        Independent parts of which the points consist: index i belongs to part i % replicates.
-    """
-
-    replicates: int
+    """Uniform points in the unit cube by index."""
 
     @abstractmethod
     def at(self, indices: IntArray) -> FloatArray:
@@ -44,8 +37,6 @@ class Points(ABC):
 
 class PlainPoints(Points):
     """Point i takes the Philox counters from i times the counters per point."""
-
-    replicates = 1
 
     def __init__(self, columns: int, seed: int) -> None:
         self._columns = columns
@@ -70,8 +61,6 @@ class SobolPoints(Points):
     digital shift that scipy has: Matousek 1998, "On the L2-discrepancy for anchored boxes" (both from
     memory).
     """
-
-    replicates = SCRAMBLINGS
 
     def __init__(self, columns: int, seed: int) -> None:
         self._columns = columns

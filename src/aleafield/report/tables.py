@@ -83,8 +83,7 @@ def _row(found: Finding) -> tuple[Content, ...]:
     half_width = found.rounded.half_width
     value: Content = value_text(found)
     if found.reason:
-        lead = "" if found.value is None else f"{value_text(found)}; "
-        value = element("span", f"{lead}{found.reason}", class_="reason")
+        value = element("span", found.reason, class_="reason")
     return (
         found.name,
         value,
@@ -146,7 +145,8 @@ def input_table(summary: Summary) -> Markup | None:
 
 def failure_table(summary: Summary) -> Markup | None:
     """Failed samples, as far as they are listed, with their inputs; None without any."""
-    failures = summary["failed"]["list"]
+    failed = summary["failed"]
+    failures = failed["list"]
     if not failures:
         return None
     paths = list(failures[0]["inputs"])
@@ -158,4 +158,6 @@ def failure_table(summary: Summary) -> Markup | None:
         )
         for failure in failures
     ]
-    return table("Failed samples", ("sample", "failed at t", *paths), rows)
+    all_of_them = failed["listed"] == failed["count"]
+    caption = "Failed samples" if all_of_them else f"The first {failed['listed']} failed samples"
+    return table(caption, ("sample", "failed at t", *paths), rows)

@@ -60,8 +60,6 @@ def _estimate(found: Finding) -> str:
         return found.reason or "-"
     rounded = found.rounded
     value = with_units(rounded.value, found.units)
-    if found.interval == (None, None):
-        return f"{value} ({found.reason or 'no interval'})"
     return f"{value} [{rounded.low or '-inf'}, {rounded.high or 'inf'}]"
 
 

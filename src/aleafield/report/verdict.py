@@ -44,10 +44,10 @@ def answer(findings: QuantityFindings, confidence: str) -> str:
         return (
             f"The mean of {findings.name}{condition} is not determined: {mean.reason or 'no reason given'}."
         )
-    text = f"The mean of {findings.name}{condition} is {value_text(mean)}"
-    if mean.interval == (None, None):
-        return f"{text}; its error is not determined: {mean.reason or 'no reason given'}."
-    return f"{text}; with {confidence} confidence it {_within(mean)}."
+    value = value_text(mean)
+    return (
+        f"The mean of {findings.name}{condition} is {value}; with {confidence} confidence it {_within(mean)}."
+    )
 
 
 def _within(found: Finding) -> str:

@@ -27,7 +27,7 @@ from aleafield.study.study import Study
 
 FIRST_SAMPLES = 64
 """Samples over which slopes, kernel masses and widths are taken."""
-MANY_STEPS = 1_000_000
+MANY_STEPS = 20_000
 """Steps from which a run is called long."""
 MOST_DRAWN = 1 << 16
 """Samples drawn to look for impossible numbers."""

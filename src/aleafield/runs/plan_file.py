@@ -7,7 +7,7 @@ from collections.abc import Mapping
 from dataclasses import asdict, dataclass, replace
 from typing import Any
 
-from aleafield.accounting import number_of_probes, share_of_probes
+from aleafield.accounting import SHARE, number_of_probes, share_of_probes
 from aleafield.archive.chunks import LANE
 from aleafield.archive.durable import write_json
 from aleafield.archive.layout import Layout
@@ -19,6 +19,9 @@ from aleafield.sampling.allocation import Allocation
 SCHEMA = 1
 CHUNK_NUMBERS = 1 << 15
 """A chunk's width times the number of nodes, about."""
+MATRIX_NUMBERS = 1 << 24
+"""Numbers in the kernel matrices of a chunk, where every sample has its own: 128 MiB, and about four times as
+much while they are made.  More only where the least width needs more."""
 WIDTHS = (8, 256)
 """Least and largest default width of a chunk."""
 
@@ -93,10 +96,18 @@ def extra_levels(path: tuple[PathPart, ...], level: Level) -> tuple[Level, ...]:
     return tuple(sorted({one for part in path for one in part.levels} - {level}))
 
 
-def default_width(nodes: int, samples: int) -> int:
-    """Samples of a chunk: about 2^15 numbers of state, a multiple of 8, all chunks about equally long."""
+def default_width(nodes: int, samples: int, matrix_numbers: int = 0) -> int:
+    """Samples of a chunk: about 2^15 numbers of state, a multiple of 8, all chunks about equally long.
+
+    Parameters
+    ----------
+    nodes : of the run's level
+    samples : of the run
+    matrix_numbers : numbers of the kernel matrix that a sample has of its own at the finest level
+    """
     least, largest = WIDTHS
-    width = min(max(CHUNK_NUMBERS // nodes // LANE * LANE, least), largest)
+    affordable = MATRIX_NUMBERS // max(matrix_numbers, 1)
+    width = min(max(min(CHUNK_NUMBERS // nodes, affordable) // LANE * LANE, least), largest)
     chunks = -(-samples // width)
     return -(-samples // (chunks * LANE)) * LANE
 
@@ -113,13 +124,16 @@ def count_probes(
     return probes, share_of_probes(probes, samples, main, extra)
 
 
-def plan_notes(allocation: Allocation, probe_share: float) -> tuple[str, ...]:
+def plan_notes(
+    model: ForwardModel, allocation: Allocation, probes: int, probe_share: float
+) -> tuple[str, ...]:
     """What a user must know of the number of samples and probes."""
     notes = [allocation.note] if allocation.note else []
-    if probe_share > 0.25:
+    if probe_share > SHARE and model.inputs:
         notes.append(
-            f"the error split costs {100 * probe_share:.0f} % of the main samples, more than a quarter: it "
-            "needs 32 probes at least, or all samples"
+            f"the error split solves {probes} of the {allocation.samples} samples at finer and coarser levels "
+            f"too, which costs {100 * probe_share:.0f} % of the samples themselves; more samples make it a "
+            "smaller share"
         )
     return tuple(notes)
 
@@ -132,7 +146,7 @@ def with_more_samples(plan: Plan, model: ForwardModel, allocation: Allocation) -
         allocation=allocation,
         probes=probes,
         probe_share=share,
-        notes=plan_notes(allocation, share),
+        notes=plan_notes(model, allocation, probes, share),
     )
 
 

@@ -9,6 +9,7 @@ from importlib.metadata import PackageNotFoundError, version
 import numpy as np
 
 from aleafield.archive.chunks import LANE
+from aleafield.ensemble.level import Level
 from aleafield.errors import InputError
 from aleafield.forward.field_model import FieldModel
 from aleafield.runs.folder import data_folder
@@ -60,13 +61,14 @@ def make_plan(study: Study, chunk_width: int | None = None) -> tuple[Plan, Field
         probes=probes,
         probe_share=share,
         operations={one.label: model.operations(one) for one in sorted(levels)},
-        chunk_width=chunk_width or default_width(level.nodes, allocation.samples),
+        chunk_width=chunk_width
+        or default_width(level.nodes, allocation.samples, max(matrix_numbers(model, one) for one in levels)),
         peak_references=choices.peak_references,
         moment_times=tuple(np.linspace(0.0, duration, MOMENT_TIMES).tolist()),
         kept_times=kept_times(study.keep, np.asarray(model.schedule().times).tolist()),
         data_folder=data_folder(study.source.data_files),
         operators=operators_of(model),
-        notes=plan_notes(allocation, share),
+        notes=(*choices.notes, *plan_notes(model, allocation, probes, share)),
     )
     return plan, model
 
@@ -91,6 +93,13 @@ def kept_times(keep: Keep, steps: list[float]) -> tuple[float, ...]:
         few = len(steps) - 1 <= MOST_STEPS_KEPT
         times.update(steps if few else np.linspace(0.0, steps[-1], MOST_STEPS_KEPT + 1).tolist())
     return tuple(sorted(times))
+
+
+def matrix_numbers(model: FieldModel, level: Level) -> int:
+    """Numbers of the kernel matrix that every sample has of its own at a level; 0 where it has none."""
+    discretisation = model.discretisation(level)
+    own = discretisation.operator_choice.name == "dense per sample"
+    return len(discretisation.test_rule.points) * len(discretisation.rule.points) if own else 0
 
 
 def operators_of(model: FieldModel) -> tuple[Mapping[str, object], ...]:

@@ -15,6 +15,7 @@ from aleafield.runs.plan_file import Plan, read_plan
 from aleafield.runs.planning import MOST_STEPS_KEPT, planned_model
 from aleafield.runs.progress import Progress, ProgressLine
 from aleafield.runs.summary import unmet
+from aleafield.study.reading import read_study
 from aleafield.study.study import Study
 
 if TYPE_CHECKING:
@@ -115,13 +116,18 @@ class Result:
 
 
 def run(
-    study: Study, out: Path | str, *, workers: int = 1, quiet: bool = True, chunk_width: int | None = None
+    study: Study | Path | str,
+    out: Path | str,
+    *,
+    workers: int = 1,
+    quiet: bool = True,
+    chunk_width: int | None = None,
 ) -> Result:
     """Run a study into a folder, or go on where an earlier call stopped.
 
     Parameters
     ----------
-    study : Study
+    study : Study, or the path of a study file
     out : path of the results folder
     workers : int
         Worker processes; the values do not depend on it.  More than one needs an importable main module.
@@ -136,6 +142,7 @@ def run(
     """
     from aleafield.runs.run import run as run_study
 
+    study = study if isinstance(study, Study) else read_study(study)
     done = run_study(study, out, workers, _progress(quiet), chunk_width)
     return Result(done.folder, study, read_plan(Layout(done.folder)), done.summary)
 
@@ -152,7 +159,7 @@ def open_run(folder: Path | str, study: Study | None = None) -> Result:
     Raises
     ------
     ArchiveError
-        When the folder holds no finished run.
+        When the folder holds no finished run, or one of another study.
     """
     import json
 
@@ -161,6 +168,11 @@ def open_run(folder: Path | str, study: Study | None = None) -> Result:
     if not layout.summary.exists():
         raise ArchiveError(f"{layout.folder}: the run is unfinished; the same call of run goes on with it")
     found = stored_study(layout, plan) if study is None else study
+    if found.digest != plan.digest:
+        raise ArchiveError(
+            f"{layout.folder}: holds the results of another study; quantities that are Python functions are in "
+            "no file, so give the study that was run: open_run(folder, study)"
+        )
     return Result(layout.folder, found, plan, json.loads(layout.summary.read_text(encoding="utf-8")))
 
 

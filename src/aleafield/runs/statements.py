@@ -2,11 +2,18 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
-from aleafield.accounting import LevelValues, Pair, PartDifferences, QuantityStatements, quantity_statements
+from aleafield.accounting import (
+    MESH,
+    LevelValues,
+    Pair,
+    PartDifferences,
+    QuantityStatements,
+    quantity_statements,
+)
 from aleafield.archive.ensemble_reader import EnsembleReader
 from aleafield.ensemble.level import Level, PathPart
 from aleafield.estimates import Sample
@@ -30,7 +37,7 @@ class Asked:
 
 
 def statements_of(
-    reader: EnsembleReader, plan: Plan, quantity: str, asked: Asked, *, certain: bool
+    reader: EnsembleReader, plan: Plan, quantity: str, asked: Asked, *, certain: bool, round_off: float = 0.0
 ) -> QuantityStatements:
     """The statements of one quantity; memory holds its columns and no others.
 
@@ -43,6 +50,8 @@ def statements_of(
     asked : Asked
     certain : bool
         Whether there is neither input nor noise.
+    round_off : float
+        As in `PartDifferences`.
     """
     replicates = plan.allocation.replicates
     sample = Sample.of(
@@ -54,7 +63,10 @@ def statements_of(
         certain=certain,
     )
     levels = _LevelColumns(reader, plan, quantity, sample)
-    parts = [_differences(part, levels, plan.probes, quantity) for part in plan.path]
+    parts = [
+        _differences(part, levels, plan.probes, quantity, round_off)
+        for part in (*plan.path, *_mesh(plan.path))
+    ]
     return quantity_statements(sample, parts, asked.quantiles, asked.exceed, asked.confidence)
 
 
@@ -84,10 +96,29 @@ class _LevelColumns:
         )
 
 
-def _differences(part: PathPart, levels: _LevelColumns, probes: int, name: str) -> PartDifferences:
-    order, locator = part.expected_order, part.locator_order.get(name)
-    if locator is not None:
-        order = locator if order is None else min(order, locator)
+def _mesh(path: tuple[PathPart, ...]) -> tuple[PathPart, ...]:
+    """Space and quadrature as one part, where both are expected to fall alike; no level is added.
+
+    Where they fall differently the sum has no order of its own, and nothing bounds it.
+    """
+    parts = {part.name: part for part in path}
+    quadrature, space = parts["quadrature"], parts["space"]
+    alike = quadrature.expected_order == space.expected_order
+    if not alike or quadrature.observed_only != space.observed_only:
+        return ()
+    return (
+        replace(
+            space,
+            name=MESH,
+            pair=(quadrature.pair[0], space.pair[1]),
+            coarse_pair=(quadrature.coarse_pair[0], space.coarse_pair[1]),
+        ),
+    )
+
+
+def _differences(
+    part: PathPart, levels: _LevelColumns, probes: int, name: str, round_off: float
+) -> PartDifferences:
     return PartDifferences(
         name=part.name,
         probes=np.arange(probes, dtype=np.int64),
@@ -95,8 +126,9 @@ def _differences(part: PathPart, levels: _LevelColumns, probes: int, name: str) 
         coarse=Pair(*(levels.at(level) for level in part.coarse_pair)),
         ratio_fine=part.ratio,
         ratio_coarse=part.coarse_ratio,
-        expected_order=order,
+        expected_order=part.expected_order,
         observed_only=part.observed_only,
         least_factor=part.least_factor.get(name, 1.0),
         peak=name in part.peaks,
+        round_off=round_off,
     )

@@ -8,14 +8,19 @@ from typing import Any
 
 import numpy as np
 
+from aleafield.accounting import RELATIVE_ROUND_OFF
 from aleafield.archive.ensemble_file import Summary
 from aleafield.archive.ensemble_reader import EnsembleReader
 from aleafield.ensemble.records import FAILURE_MEANINGS
+from aleafield.geometry import Domain
 from aleafield.quantities import Quantity
+from aleafield.report.rounding import percent
 from aleafield.runs.execution import Cost
 from aleafield.runs.plan_file import Plan
+from aleafield.runs.remarks import remarks
 from aleafield.runs.statements import Asked, statements_of
 from aleafield.study.study import Study
+from aleafield.units import LENGTH
 
 SCHEMA = 1
 MOST_LISTED = 100
@@ -59,7 +64,7 @@ def summarise(reader: EnsembleReader, study: Study, plan: Plan, cost: Cost) -> S
         },
         "failed": failed,
         "confidence": study.confidence,
-        "warnings": [*study.warnings, *plan.notes, *_failure_warnings(failed, plan)],
+        "warnings": [*study.warnings, *plan.notes, *remarks(reader, study), *_failure_warnings(failed, plan)],
     }
 
 
@@ -73,16 +78,22 @@ def unmet(study: Study, summary: Mapping[str, Any]) -> tuple[str, ...]:
     if failed > FAILED_SHARE * samples:
         found.append(
             f"{failed} of {samples} samples failed, more than {100 * FAILED_SHARE:.0f} %: "
-            f"{_first_failures(summary['failed']['list'])}; summary.json lists them with their inputs"
+            f"{_first_failures(summary['failed']['list'])}; summary.json lists "
+            f"{summary['failed']['listed']} of them with their inputs"
         )
     for name, entry in summary["quantities"].items():
         asked = {f"P(above {level})": statement for level, statement in entry["exceed"].items()}
         if any(key.startswith("report.quantiles") for key in study.source.lines):
             asked.update({f"quantile {p}": statement for p, statement in entry["quantiles"].items()})
         for label, statement in asked.items():
-            if statement["value"] is None:
+            if _undetermined(statement):
                 found.append(f"{name}, {label}: {statement.get('reason', 'not determined')}")
     return tuple(found)
+
+
+def _undetermined(statement: Mapping[str, Any]) -> bool:
+    """Whether a statement lacks its value, its interval or its total."""
+    return None in (statement["value"], statement["interval"], statement["error"]["total"])
 
 
 def _first_failures(entries: Sequence[Mapping[str, Any]]) -> str:
@@ -98,8 +109,20 @@ def _first_failures(entries: Sequence[Mapping[str, Any]]) -> str:
 
 def _quantity(reader: EnsembleReader, study: Study, plan: Plan, quantity: Quantity) -> dict[str, object]:
     asked = Asked(study.report.quantiles, study.report.exceed.get(quantity.name, ()), study.confidence)
-    statements = statements_of(reader, plan, quantity.name, asked, certain=not study.inputs)
+    statements = statements_of(
+        reader,
+        plan,
+        quantity.name,
+        asked,
+        certain=not study.inputs,
+        round_off=_round_off(study.equation.domain, quantity),
+    )
     return statements.as_json(study.quantity_units(quantity))
+
+
+def _round_off(domain: Domain, quantity: Quantity) -> float:
+    """Size up to which a difference is rounding: a position may be about 0, and the domain is its measure."""
+    return RELATIVE_ROUND_OFF * domain.length if quantity.dimension == LENGTH else 0.0
 
 
 def _finite(value: float) -> float | None:
@@ -187,13 +210,19 @@ def _failed(reader: EnsembleReader) -> dict[str, object]:
         }
         for row, sample in enumerate(listed)
     ]
-    return {"count": len(which), "reasons": reasons, "list": entries}
+    return {"count": len(which), "reasons": reasons, "listed": len(listed), "list": entries}
 
 
 def _failure_warnings(failed: Mapping[str, Any], plan: Plan) -> list[str]:
     count = failed["count"]
     if count == 0:
         return []
-    share = 100 * count / plan.samples
+    share = percent(count / plan.samples)
     reasons = ", ".join(f"{meaning.replace('_', ' ')}: {n}" for meaning, n in failed["reasons"].items())
-    return [f"{count} of {plan.samples} samples failed ({share:.2g} %: {reasons}); no statistic holds them"]
+    warnings = [f"{count} of {plan.samples} samples failed ({share}: {reasons}); no statistic holds them"]
+    if failed["listed"] < count:
+        warnings.append(
+            f"summary.json lists the first {failed['listed']} of the {count} failed samples; ensemble.nc and "
+            "ensemble.csv flag all of them, with their inputs"
+        )
+    return warnings

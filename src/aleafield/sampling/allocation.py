@@ -4,10 +4,9 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
+from aleafield.randomness.points import SCRAMBLINGS
 from aleafield.sampling.request import SamplingMethod, SamplingRequest
 
-SCRAMBLINGS = 16
-"""Independent scramblings of the Sobol' sequence (error estimated by t over them)."""
 LEAST_POINTS = 4
 """Least number of points of a scrambling, a power of two."""
 

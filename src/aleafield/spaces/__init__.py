@@ -5,13 +5,12 @@ from __future__ import annotations
 from aleafield.spaces.chebyshev import Chebyshev
 from aleafield.spaces.fourier import Fourier
 from aleafield.spaces.legendre import Legendre
-from aleafield.spaces.named import PROJECTORS, make_space, nodes_refinement
+from aleafield.spaces.named import make_space, nodes_refinement
 from aleafield.spaces.piecewise_linear import PiecewiseLinear
 from aleafield.spaces.prolongation import Prolongation
 from aleafield.spaces.space import Space
 
 __all__ = [
-    "PROJECTORS",
     "Chebyshev",
     "Fourier",
     "Legendre",

@@ -6,8 +6,7 @@ import numpy as np
 import scipy.fft
 
 from aleafield.arrays import ComplexArray, FloatArray, IntArray
-from aleafield.errors import InputError
-from aleafield.geometry import Domain, Interval, Refinement, ring_grid
+from aleafield.geometry import Domain, Refinement, Ring, ring_grid
 from aleafield.spaces.prolongation import Prolongation
 from aleafield.spaces.space import Space, apply_each
 
@@ -56,16 +55,14 @@ class Fourier(Space):
     Raises
     ------
     InputError
-        On an interval, or for n < 1.
+        For n < 1.
     """
 
     projector = "fourier"
+    domains = (Ring,)
 
-    def __init__(self, domain: Domain, n: int) -> None:
+    def __init__(self, domain: Ring, n: int) -> None:
         super().__init__(domain, n)
-        if isinstance(domain, Interval):
-            needed = "'piecewise linear', 'chebyshev' or 'legendre' is needed there"
-            raise InputError("scheme.projector", "'fourier' on an interval", needed)
         self._ring = domain
         self.nodes = ring_grid(domain, n)
         self.integral_weights = np.full(n, domain.length / n)
@@ -104,16 +101,27 @@ class Fourier(Space):
 
     def evaluate_each(self, u: FloatArray, x: FloatArray) -> FloatArray:
         """Values of u (S, n) at x (S, P); shape (S, P)."""
-        return self.differentiate_each(u, x, 0)
+        return self.derivatives_each(u, x, (0,))[0]
 
     def differentiate_each(self, u: FloatArray, x: FloatArray, order: int = 1) -> FloatArray:
         """Derivatives of u (S, n) at x (S, P); shape (S, P)."""
+        return self.derivatives_each(u, x, (order,))[0]
+
+    def derivatives_each(
+        self, u: FloatArray, x: FloatArray, orders: tuple[int, ...]
+    ) -> tuple[FloatArray, ...]:
+        """Derivatives of several orders of u (S, n) at the same x (S, P), each (S, P): one spectrum, one set of
+        waves."""
         finite = np.isfinite(x)
         place = self._ring.wrap(np.where(finite, x, 0.0))
-        angles = (2.0 * np.pi / self._ring.length) * place[:, :, None] * self._waves
-        spectrum = np.fft.rfft(u, axis=-1) * self._factor(order)
-        values = apply_each(np.cos(angles), spectrum.real) - apply_each(np.sin(angles), spectrum.imag)
-        return np.where(finite, values, np.nan)
+        cosines, sines = _waves_at((2.0 * np.pi / self._ring.length) * place, len(self._waves))
+        spectrum = np.fft.rfft(u, axis=-1)
+        found = []
+        for order in orders:
+            part = spectrum * self._factor(order)
+            values = apply_each(cosines, part.real) - apply_each(sines, part.imag)
+            found.append(np.where(finite, values, np.nan))
+        return tuple(found)
 
     def square_integral(self, u: FloatArray) -> FloatArray:
         """Trapezoid rule, less what it counts too much of the last cosine of an even n; shape (S,)."""
@@ -125,14 +133,6 @@ class Fourier(Space):
     def _last_cosine(self, u: FloatArray) -> FloatArray:
         signs = np.where(np.arange(self.n) % 2 == 0, 1.0, -1.0)
         return np.asarray((u * signs).sum(axis=-1) / self.n)
-
-    def mass_matrix(self) -> FloatArray:
-        """length / n times the identity, for even n less length / (2 n^2) (-1)^(i + j); shape (n, n)."""
-        matrix = np.eye(self.n) * (self._ring.length / self.n)
-        if self.n % 2 == 0:
-            signs = np.where(np.arange(self.n) % 2 == 0, 1.0, -1.0)
-            matrix -= np.outer(signs, signs) * (0.5 * self._ring.length / self.n**2)
-        return matrix
 
     def fourier_coefficient(self, u: FloatArray, k: int) -> ComplexArray:
         """The discrete coefficient for 2 |k| < n, half the last cosine for 2 |k| = n, 0 above; shape (S,)."""
@@ -165,3 +165,25 @@ class Fourier(Space):
             return None
         order: IntArray = nearest.astype(np.int64) % m
         return order if np.array_equal(np.sort(order), np.arange(m)) else None
+
+
+def _waves_at(angle: FloatArray, count: int) -> tuple[FloatArray, FloatArray]:
+    """cos(k angle) and sin(k angle) for k = 0 .. count - 1 as a last axis.
+
+    From the first of them by the addition theorems, the number known doubled each time: errors grow with k as
+    those of the products k angle do.  Only sums and products of single numbers, so that no bit depends on the
+    shape.
+    """
+    cosines, sines = np.empty((*angle.shape, count)), np.empty((*angle.shape, count))
+    cosines[..., 0], sines[..., 0] = 1.0, 0.0
+    if count > 1:
+        cosines[..., 1], sines[..., 1] = np.cos(angle), np.sin(angle)
+    known = 2
+    while known < count:
+        more = min(known - 1, count - known)
+        low, high = slice(1, more + 1), slice(known - 1, known)
+        new = slice(known, known + more)
+        cosines[..., new] = cosines[..., low] * cosines[..., high] - sines[..., low] * sines[..., high]
+        sines[..., new] = cosines[..., low] * sines[..., high] + sines[..., low] * cosines[..., high]
+        known += more
+    return cosines, sines

@@ -6,7 +6,6 @@ import numpy as np
 from numpy.polynomial.legendre import legder, legvander
 
 from aleafield.arrays import FloatArray, batch_product
-from aleafield.errors import InputError
 from aleafield.geometry import Domain, Interval, Refinement
 from aleafield.quadrature import extremal_points, gauss_legendre
 from aleafield.spaces.prolongation import DenseProlongation, Prolongation
@@ -30,19 +29,18 @@ class Legendre(Space):
     Raises
     ------
     InputError
-        On a ring, or for n < 1.
+        For n < 1.
     """
 
     projector = "legendre"
+    domains = (Interval,)
 
-    def __init__(self, domain: Domain, n: int) -> None:
+    def __init__(self, domain: Interval, n: int) -> None:
         super().__init__(domain, n)
-        if not isinstance(domain, Interval):
-            needed = "'fourier' or 'piecewise linear' is needed there"
-            raise InputError("scheme.projector", "'legendre' on a ring", needed)
         rule = gauss_legendre(domain, n)
         self._interval = domain
         self._scale = np.sqrt((2.0 * np.arange(n) + 1.0) / domain.length)
+        self._derivatives: dict[int, FloatArray] = {}
         self.nodes = rule.points
         self.integral_weights = np.zeros(n)
         self.integral_weights[0] = np.sqrt(domain.length)
@@ -62,7 +60,10 @@ class Legendre(Space):
             return np.asarray(np.ascontiguousarray(legvander(reference, self.n - 1)) * self._scale)
         if order >= self.n:
             return np.zeros((*x.shape, self.n)) * x[..., None]
-        derivative = legder(np.eye(self.n), order) * ((2.0 / self._interval.length) ** order * self._scale)
+        derivative = self._derivatives.get(order)
+        if derivative is None:
+            scale = (2.0 / self._interval.length) ** order * self._scale
+            derivative = self._derivatives[order] = legder(np.eye(self.n), order) * scale
         return np.asarray(np.ascontiguousarray(legvander(reference, self.n - 1 - order)) @ derivative)
 
     def evaluation_matrix(self, x: FloatArray) -> FloatArray:
@@ -96,10 +97,6 @@ class Legendre(Space):
     def square_integral(self, u: FloatArray) -> FloatArray:
         """Sum of the squared coefficients (Parseval); shape (S,)."""
         return np.asarray((u * u).sum(axis=-1))
-
-    def mass_matrix(self) -> FloatArray:
-        """The identity, by orthonormality."""
-        return np.eye(self.n)
 
     @property
     def search_grid(self) -> FloatArray:

@@ -13,13 +13,16 @@ from aleafield.spaces.space import Space
 _SPACES: dict[str, type[Space]] = {
     space.projector: space for space in (PiecewiseLinear, Chebyshev, Legendre, Fourier)
 }
-PROJECTORS = tuple(_SPACES)
 
 
-def _space(projector: str) -> type[Space]:
+def _space(projector: str, domain: Domain) -> type[Space]:
     if projector not in _SPACES:
-        needed = "one of " + ", ".join(PROJECTORS) + " is needed"
+        needed = "one of " + ", ".join(_SPACES) + " is needed"
         raise InputError("scheme.projector", f"{projector!r}", needed)
+    if not isinstance(domain, _SPACES[projector].domains):
+        where = "a ring" if domain.periodic else "an interval"
+        fitting = [repr(name) for name, space in _SPACES.items() if isinstance(domain, space.domains)]
+        raise InputError("scheme.projector", f"{projector!r} on {where}", "use " + " or ".join(fitting))
     return _SPACES[projector]
 
 
@@ -31,7 +34,7 @@ def make_space(projector: str, domain: Domain, n: int) -> Space:
     InputError
         Where the name is unknown, the space does not exist on the domain, or n is too small.
     """
-    return _space(projector)(domain, n)
+    return _space(projector, domain)(domain, n)
 
 
 def nodes_refinement(projector: str, domain: Domain) -> Refinement:
@@ -40,6 +43,6 @@ def nodes_refinement(projector: str, domain: Domain) -> Refinement:
     Raises
     ------
     InputError
-        Where the name is unknown.
+        Where the name is unknown or the space does not exist on the domain.
     """
-    return _space(projector).refinement(domain)
+    return _space(projector, domain).refinement(domain)

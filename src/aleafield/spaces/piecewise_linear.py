@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 
 from aleafield.arrays import ComplexArray, FloatArray, IntArray
-from aleafield.geometry import Domain, Interval, Refinement, interval_grid, ring_grid
+from aleafield.geometry import Domain, Interval, Refinement, Ring, interval_grid, ring_grid
 from aleafield.spaces.prolongation import GatherProlongation, Prolongation
 from aleafield.spaces.space import Space, agree
 
@@ -28,6 +28,7 @@ class PiecewiseLinear(Space):
     """
 
     projector = "piecewise linear"
+    domains = (Interval, Ring)
 
     def __init__(self, domain: Domain, n: int) -> None:
         super().__init__(domain, n)
@@ -46,8 +47,8 @@ class PiecewiseLinear(Space):
 
     @classmethod
     def refinement(cls, domain: Domain) -> Refinement:
-        """n -> 2n - 1 nodes on an interval, n -> 2n on a ring."""
-        return Refinement(both_ends=not domain.periodic, smallest=3, key="scheme.nodes")
+        """n -> 2n - 1 nodes on an interval, n -> 2n on a ring; the elements of a coarser level are unions."""
+        return Refinement(not domain.periodic, smallest=3, key="scheme.nodes", unions=True)
 
     def locate(self, x: FloatArray) -> tuple[IntArray, IntArray, FloatArray]:
         """Left and right node of the element that holds each point, and the fraction of the way between them.
@@ -105,17 +106,6 @@ class PiecewiseLinear(Space):
         else:
             left, right = u[:, :-1], u[:, 1:]
         return np.asarray((left * left + left * right + right * right).sum(axis=-1) * (self.element / 3.0))
-
-    def mass_matrix(self) -> FloatArray:
-        """h / 6 times 1, 4, 1, tridiagonal or circulant; 2 for 4 at the ends of an interval; (n, n)."""
-        left = np.arange(self._elements)
-        right = (left + 1) % self.n
-        matrix = np.zeros((self.n, self.n))
-        matrix[left, left] += self.element / 3.0
-        matrix[right, right] += self.element / 3.0
-        matrix[left, right] += self.element / 6.0
-        matrix[right, left] += self.element / 6.0
-        return matrix
 
     def fourier_coefficient(self, u: FloatArray, k: int) -> ComplexArray:
         """The discrete coefficient times that of a hat, (sin(pi k / n) / (pi k / n))^2; shape (S,)."""

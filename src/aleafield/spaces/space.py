@@ -21,7 +21,7 @@ class Space(ABC):
     An element is a row of n floats; a batch of S elements is an array (S, n), sample first.  Unless the
     subclass says otherwise the unknowns are the values at the nodes.
 
-    To add a space: set `projector`, `nodes` and `integral_weights`, implement the abstract members, and add
+    To add a space: set `projector`, `domains`, `nodes` and `integral_weights`, implement the abstract members, and add
     it to `make_space` and to the table of the exactness tests.  Members ending in `_each` take other points
     for every sample and must give a row the same bits whatever the other rows hold and however many they are.
 
@@ -35,6 +35,8 @@ class Space(ABC):
     ----------
     projector : str
         Name in a study file.
+    domains : tuple of types
+        The kinds of domain that it exists on; `make_space` refuses others.
     nodes : float array (n,)
         Where nodal values live, units of length.  Ascending on an interval; on a ring j length / n wrapped,
         in the order j = 0 .. n - 1.
@@ -48,6 +50,7 @@ class Space(ABC):
     """
 
     projector: ClassVar[str]
+    domains: ClassVar[tuple[type[Domain], ...]]
     nodes: FloatArray
     integral_weights: FloatArray
 
@@ -78,13 +81,17 @@ class Space(ABC):
     def differentiate_each(self, u: FloatArray, x: FloatArray, order: int = 1) -> FloatArray:
         """Derivatives of u (S, n) at points x (S, P) that differ from sample to sample; shape (S, P)."""
 
+    def derivatives_each(
+        self, u: FloatArray, x: FloatArray, orders: tuple[int, ...]
+    ) -> tuple[FloatArray, ...]:
+        """Derivatives of several orders (0 for values) at the same points x (S, P), each (S, P)."""
+        return tuple(
+            self.differentiate_each(u, x, order) if order else self.evaluate_each(u, x) for order in orders
+        )
+
     @abstractmethod
     def square_integral(self, u: FloatArray) -> FloatArray:
         """Exact integral of the square of each element u (S, n); shape (S,)."""
-
-    @abstractmethod
-    def mass_matrix(self) -> FloatArray:
-        """Symmetric matrix M (n, n) with u M v = integral of the product of the elements u and v, exactly."""
 
     @property
     @abstractmethod
@@ -129,18 +136,6 @@ class Space(ABC):
     def evaluate(self, u: FloatArray, x: FloatArray) -> FloatArray:
         """Values (S, P) of the elements u (S, n) at the points x (P,), the same for all samples."""
         return self.prolongation(x).apply(u)
-
-    def refined(self, n: int) -> int:
-        """Dimension of the next finer level of a space of dimension n."""
-        return self.refinement(self.domain).refined(n)
-
-    def coarsened(self, n: int) -> tuple[int, str | None]:
-        """Dimension of the next coarser level, and a note where an even n stands for n + 1."""
-        return self.refinement(self.domain).coarsened(n)
-
-    def admissible(self, n: int) -> tuple[int, str | None]:
-        """The dimension to use for n, and a note where it is not n; InputError where n is too small."""
-        return self.refinement(self.domain).admissible(n)
 
     def _prolongation_to(self, points: FloatArray) -> Prolongation:
         """Choose the map to a set of points, called once for each: identity at the nodes, else dense.

@@ -12,7 +12,7 @@ to = 10.0
 
 [kernel]
 form = "gaussian"
-strength = 1.4
+strength = 0.25
 width = "uniform(0.8, 1.2)"
 
 [rate]

@@ -174,8 +174,8 @@ duration = 2.0
     ),
     points=_LINE,
     series=(
-        Series("legendre", "galerkin", "nodes", (3, 4, 6), None, 1e-9),
-        Series("chebyshev", "collocation", "nodes", (3, 6, 8), None, 1e-9),
+        Series("legendre", "galerkin", "nodes", (3, 4, 6), None, 1e-12, steps=1600),
+        Series("chebyshev", "collocation", "nodes", (3, 6, 8), None, 1e-12, steps=1600),
     ),
 )
 

@@ -7,18 +7,24 @@ from typing import cast
 
 from aleafield.errors import InputError
 from aleafield.field.equation import FieldEquation
+from aleafield.field.kernels import Connectivity
 from aleafield.geometry import Domain
+from aleafield.operators import LatticePair
 from aleafield.projection.pairing import Pairing, resolve
 from aleafield.projection.scheme import METHODS, PROJECTORS, QUADRATURES, Method, Projector, Scheme
 from aleafield.projection.smoothness import typical
+from aleafield.quadrature import make_rule
 from aleafield.study.reading.table import Table, not_built_yet
 
 MOST_NODES = 1_000_000
 MOST_STEPS = 100_000_000
-MOST_MATRIX = 1 << 27
-"""Numbers of a batch's kernel matrices at the run's level; the finest level has four times as many."""
+MOST_MATRIX = 1 << 26
+"""Numbers in the kernel matrices of the smallest batch at the finest level of the error split: half a GiB,
+and about four times as much while they are made."""
 BATCH = 8
 """Samples of the smallest batch."""
+POINTS_PER_PANEL = {"simpson": 2, "composite gauss": 2}
+"""Quadrature points to a panel end, of the rules that do not have one."""
 
 
 def _default_nodes(projector: str, domain: Domain) -> int:
@@ -67,18 +73,35 @@ def _time_step(table: Table, duration: float) -> float | None:
 
 def _refuse_large_matrices(pairing: Pairing, equation: FieldEquation) -> None:
     """Where no transform can serve, the kernel is a matrix, for uncertain kernels one for every sample."""
-    spectral = pairing.projector in ("chebyshev", "legendre")
-    if equation.kernel.shift_invariant and not spectral:
-        return
-    certain = typical(equation).kernel.certain
-    numbers = pairing.nodes * pairing.quadrature_points * (1 if certain else BATCH)
-    if numbers > MOST_MATRIX:
+    nodes, points = pairing.refined(pairing.nodes, pairing.quadrature_points)
+    sources = POINTS_PER_PANEL.get(pairing.rule, 1) * points
+    targets = nodes
+    if pairing.inner_rule is not None:
+        targets = POINTS_PER_PANEL.get(pairing.inner_rule, 1) * points
+    kernel = typical(equation).kernel
+    numbers = targets * sources * (1 if kernel.certain else BATCH)
+    if numbers > MOST_MATRIX and _needs_a_matrix(pairing, kernel):
         raise InputError(
             "scheme.nodes",
             f"{pairing.nodes} nodes and {pairing.quadrature_points} quadrature points",
-            f"its matrices need {numbers:.3g} numbers, at most {MOST_MATRIX:.3g} are possible: "
-            "use fewer, or a kernel of the distance alone under piecewise linear or fourier",
+            f"at the finest level of the error split its matrices need {numbers:.3g} numbers, at most "
+            f"{MOST_MATRIX:.3g} are possible: use fewer, or a kernel of the distance alone under piecewise "
+            "linear or fourier",
         )
+
+
+def _needs_a_matrix(pairing: Pairing, kernel: Connectivity) -> bool:
+    """Whether the operator of many points will be a matrix.
+
+    Polynomials have nodes on no grid; where those of the others share one a transform serves.
+    """
+    if pairing.kernel_use != "sampled":
+        return False
+    if pairing.projector in ("chebyshev", "legendre") or not kernel.shift_invariant:
+        return True
+    source = pairing.source_rule(pairing.quadrature_points)
+    target = source if pairing.inner_rule is not None else make_rule("trapezoid", pairing.domain, pairing.nodes)
+    return LatticePair.of(target, source) is None
 
 
 def settled(scheme: Scheme, equation: FieldEquation) -> tuple[Scheme, tuple[str, ...]]:
