@@ -10,6 +10,7 @@ from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 
 import numpy as np
+from scipy import optimize, stats
 
 from tests.benchmarks.coverage.truth import FloatArray, Law, Truth, random_law
 
@@ -170,8 +171,6 @@ level = {level!r}
 
 
 def _share_below(law: Law, value: float) -> float:
-    from scipy import optimize
-
     if value <= float(law.ppf(np.float64(0.0))):
         return 0.0
     return float(optimize.brentq(lambda v: float(law.ppf(np.float64(v))) - value, 0.0, 1.0, xtol=1e-15))
@@ -179,8 +178,6 @@ def _share_below(law: Law, value: float) -> float:
 
 def lognormal_decay(rng: np.random.Generator) -> Instance:
     """Decay of a mode with a lognormal time constant."""
-    from scipy import stats
-
     mu, sigma = float(np.log(rng.uniform(5, 15))), float(rng.uniform(0.15, 0.4))
     strength, duration = float(rng.uniform(0.1, 0.6)), float(rng.uniform(4, 12))
     law = Law(f"lognormal({mu!r}, {sigma!r})", stats.lognorm(sigma, scale=np.exp(mu)).ppf)
@@ -373,6 +370,52 @@ between = [1.0, 2.0]
     return Instance("front", study, {"speed": Truth(speed, threshold.ppf, False)})
 
 
+def correlated(rng: np.random.Generator) -> Instance:
+    """Linear mode with a lognormal start and a normal strength, correlated: its amplitude is lognormal."""
+    mu, sigma = float(rng.uniform(-0.3, 0.3)), float(rng.uniform(0.1, 0.3))
+    centre, spread = float(rng.uniform(0.2, 0.7)), float(rng.uniform(0.05, 0.2))
+    duration, spearman = float(rng.uniform(0.8, 2.0)), float(rng.uniform(-0.8, 0.8))
+    latent = 2 * np.sin(np.pi * spearman / 6)
+    mean = mu + (centre - 1) * duration
+    sd = np.sqrt(sigma**2 + (spread * duration) ** 2 + 2 * latent * sigma * spread * duration)
+
+    def amplitude(z: FloatArray) -> FloatArray:
+        return np.asarray(np.exp(mean + sd * z))
+
+    study = f"""
+[parameters]
+start = "lognormal({mu!r}, {sigma!r})"
+g = "normal({centre!r}, {spread!r})"
+[domain]
+shape = "ring"
+length = "2*pi"
+[kernel]
+form = "cosine"
+coefficients = [0.0, "g/pi"]
+[rate]
+form = "linear"
+[initial]
+formula = "start*cos(x)"
+[dynamics]
+time_constant = 1.0
+duration = {duration!r}
+[scheme]
+{_ring_scheme(rng)}
+time_step = {duration / float(rng.uniform(1.5, 12))!r}
+[dependence]
+rank_correlation = [["start", "g", {spearman!r}]]
+[[quantity]]
+name = "peak"
+measure = "maximum"
+[[quantity]]
+name = "value"
+measure = "value"
+at = 0.0
+"""
+    truth = Truth(amplitude, stats.norm.ppf, True)
+    return Instance("correlated", study, {"peak": truth, "value": truth})
+
+
 FAMILIES: tuple[Callable[[np.random.Generator], Instance], ...] = (
     linear_ring,
     growing_mode,
@@ -380,5 +423,6 @@ FAMILIES: tuple[Callable[[np.random.Generator], Instance], ...] = (
     manufactured,
     step_bump,
     front,
+    correlated,
 )
 """Drawn in turn, so that every family has the same share."""

@@ -13,6 +13,8 @@ from tests.benchmarks.coverage.experiment import Row
 STATED = 0.95
 FALSE_ALARM = 1e-3
 """One-sided, per cell: a true coverage of 0.95 falls below the floor with this probability."""
+TRIALS = 400
+"""Trials of the controls that need no field."""
 LEAST_INSTANCES = 20
 """Cells of fewer instances are not judged."""
 
@@ -111,18 +113,24 @@ def controls(rows: Sequence[Row]) -> Iterator[Cell]:
     biased = [r for r in rows if dominance(r) != "sampling"]
     yield cell("sampling alone", biased, lambda r: r.inside_sampling)
     yield cell("all parts in quadrature, no factors", biased, lambda r: r.inside_rss)
-    yield cell("normal interval for a rare event", rows, wald)
+    yield simulated("normal interval of a probability of 0.02, 64 samples", wald)
+    yield simulated("normal interval over 4 scramblings", four_scramblings)
 
 
-def wald(row: Row) -> bool | None:
-    """Whether the textbook normal interval of a rare probability holds the truth (plain Monte Carlo)."""
-    if (
-        row.method != "monte carlo"
-        or row.statistic not in ("exceed 0.02", "exceed 0.98")
-        or row.value is None
-    ):
-        return None
-    if row.samples > 128 or row.bias is None or row.bias > (row.sampling or 0.0) / 3:
-        return None
-    half = 1.96 * np.sqrt(row.value * (1 - row.value) / row.samples)
-    return bool(abs(row.value - row.truth) <= half)
+def simulated(name: str, holds: Callable[[np.random.Generator], bool]) -> Cell:
+    """A cell of independent trials that need no field."""
+    hits = [holds(np.random.default_rng([9, trial])) for trial in range(TRIALS)]
+    return Cell(name, TRIALS, float(np.mean(hits)), floor(TRIALS), np.nan)
+
+
+def wald(rng: np.random.Generator) -> bool:
+    """Whether P +- z sqrt(P (1 - P) / S) holds a probability of 0.02."""
+    share = rng.binomial(64, 0.02) / 64
+    return bool(abs(share - 0.02) <= 1.96 * np.sqrt(share * (1 - share) / 64))
+
+
+def four_scramblings(rng: np.random.Generator) -> bool:
+    """Whether the mean of 4 scramblings of 64 points +- z s / 2 holds the integral of exp(x) (1 + y)."""
+    points = [stats.qmc.Sobol(2, scramble=True, rng=rng).random(64) for _ in range(4)]
+    means = np.array([np.mean(np.exp(p[:, 0]) * (1 + p[:, 1])) for p in points])
+    return bool(abs(means.mean() - 1.5 * (np.e - 1)) <= 1.96 * means.std(ddof=1) / 2)
