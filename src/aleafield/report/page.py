@@ -25,6 +25,7 @@ from aleafield.report.verdict import (
     answer,
     cause,
     confidence_text,
+    exceedance,
     interval_text,
     occurrence,
     remedies,
@@ -137,7 +138,7 @@ def _card(data: ReportData, found: QuantityFindings, confidence: str) -> Markup:
         element("p", big, class_="big"),
         _said(f"{confidence} interval: {interval_text(mean)}", "range"),
         _said(answer(found, confidence)),
-        *(_said(text) for text in (occurrence(found), spread(found)) if text),
+        *(_said(text) for text in (occurrence(found), exceedance(found), spread(found)) if text),
         class_="card",
     )
 

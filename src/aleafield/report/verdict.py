@@ -59,7 +59,9 @@ def _within(found: Finding) -> str:
 
 
 def spread(findings: QuantityFindings) -> str:
-    """How far samples differ: standard deviation and the outermost quantiles; empty where not determined."""
+    """How far samples differ: standard deviation and the outermost quantiles; empty where there is nothing to say."""
+    if findings.sd.value == 0.0:
+        return ""
     sentences = []
     if findings.sd.value is not None:
         sentences.append(
@@ -72,6 +74,12 @@ def spread(findings: QuantityFindings) -> str:
             f"{percent(high - low)} of samples lie between {value_text(least)} and {value_text(most)}."
         )
     return " ".join(sentences)
+
+
+def exceedance(findings: QuantityFindings) -> str:
+    """How likely each level that was asked for is exceeded; empty where none was."""
+    found = [one for one in findings.exceed.values() if one.value is not None]
+    return " ".join(f"{one.name} is {value_text(one)} ({interval_text(one)})." for one in found)
 
 
 def occurrence(findings: QuantityFindings) -> str:

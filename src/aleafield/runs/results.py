@@ -167,11 +167,15 @@ def open_run(folder: Path | str, study: Study | None = None) -> Result:
     plan = read_plan(layout)
     if not layout.summary.exists():
         raise ArchiveError(f"{layout.folder}: the run is unfinished; the same call of run goes on with it")
-    found = stored_study(layout, plan) if study is None else study
-    if found.digest != plan.digest:
+    try:
+        found = stored_study(layout, plan) if study is None else study
+        other = "" if found.digest == plan.digest else "it holds the results of another study"
+    except InputError as error:
+        other = f"its study file does not stand alone ({error})"
+    if other:
         raise ArchiveError(
-            f"{layout.folder}: holds the results of another study; quantities that are Python functions are in "
-            "no file, so give the study that was run: open_run(folder, study)"
+            f"{layout.folder}: {other}; quantities that are Python functions are in no file, so give the study "
+            "that was run: open_run(folder, study)"
         )
     return Result(layout.folder, found, plan, json.loads(layout.summary.read_text(encoding="utf-8")))
 
