@@ -11,8 +11,7 @@ class AleafieldError(Exception):
     Attributes
     ----------
     exit_status : int
-        What the command line returns: 1 a stated requirement is not met, 2 the study or the arguments are at
-        fault, 3 interrupted and resumable.
+        What the command line returns: 2 the study or the arguments are at fault, 3 interrupted and resumable.
     """
 
     exit_status = 2

@@ -89,6 +89,7 @@ def test_check_of_a_missing_file_prints_a_study_that_reads(
         assert (said.status, said.out) == (2, "")
         message, text = said.err.split("\n\n", 1)
         assert message.startswith(f"aleafield: {tmp_path / 'nowhere.toml'}: there is no such file")
+        assert "[[quantity]]" in text
         assert read_text(text).quantities[0].measure == "active width"
     (tmp_path / "minimal.toml").write_text(text)
     assert say(capsys, "check", tmp_path / "minimal.toml").status == 0
@@ -110,9 +111,9 @@ def test_run_of_a_missing_file(capsys: pytest.CaptureFixture[str], study: Path) 
 
 @pytest.mark.parametrize("name", ["report", "extend", "compare"])
 def test_a_folder_without_results(capsys: pytest.CaptureFixture[str], tmp_path: Path, name: str) -> None:
-    more = {"report": [], "extend": ["--samples", 64], "compare": [tmp_path]}[name]
+    more: dict[str, list[object]] = {"report": [], "extend": ["--samples", 64], "compare": [tmp_path]}
     for folder in (tmp_path, tmp_path / "nowhere"):
-        said = say(capsys, name, folder, *more)
+        said = say(capsys, name, folder, *more[name])
         assert_one_message(said, 2)
         assert str(folder) in said.err
     assert not (tmp_path / "nowhere").exists()

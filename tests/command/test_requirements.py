@@ -99,6 +99,20 @@ def test_samples_that_fail_are_named(capsys: pytest.CaptureFixture[str], tmp_pat
     assert all(float(cells[3]) < 0.5**0.5 for cells in surviving if cells[2] == "0")
 
 
+def test_a_run_of_which_nothing_is_left(capsys: pytest.CaptureFixture[str], tmp_path: Path) -> None:
+    """From a in (0.71, 0.8) all fail: the table says so, a hundred are listed, and it is said that they are."""
+    (tmp_path / "study.toml").write_text(CUBIC.format(low=0.71, high=0.8))
+    said = say(capsys, "run", tmp_path / "study.toml", "--out", tmp_path / "out", "--workers", 1)
+    assert said.status == 1
+    summary = read_summary((tmp_path / "out" / "summary.json").read_text())
+    assert (summary["failed"]["count"], summary["failed"]["listed"]) == (200, 100)
+    assert any("samples failed (100 %: " in warning for warning in summary["warnings"])
+    assert any("the first 100 of the 200 failed samples" in warning for warning in summary["warnings"])
+    for entry in summary["quantities"].values():
+        assert entry["mean"]["reason"] == "not determined: all samples failed"
+    assert "not determined: all samples failed" in said.out
+
+
 def test_a_few_failures_are_said_and_suffered(capsys: pytest.CaptureFixture[str], tmp_path: Path) -> None:
     """From a in (0.3, 0.72) about 3 % fail: the run is done, and a warning counts them."""
     (tmp_path / "study.toml").write_text(CUBIC.format(low=0.3, high=0.72))

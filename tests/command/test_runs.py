@@ -88,14 +88,14 @@ def test_every_result_as_json(
         home = tmp_path
         study_file(home / "study.toml")
         assert say(capsys, "run", home / "study.toml", "--out", home / "out", "--workers", 1).status == 0
-    words = {
+    words: dict[str, list[object]] = {
         "check": [home / "study.toml"],
         "run": [home / "study.toml", "--out", home / "out"],
         "report": [home / "out"],
         "compare": [home / "out", home / "out"],
         "extend": [home / "out", "--samples", 1, "--workers", 1],
-    }[name]
-    said = say(capsys, name, *words, "--json")
+    }
+    said = say(capsys, name, *words[name], "--json")
     assert said.status == 0, said.err
     document = json.loads(said.out)
     assert document["schema"] == 1
@@ -172,8 +172,8 @@ def test_extension_says_how_many_it_took_and_equals_the_longer_run(
     assert_same_values(out, tmp_path / "longer")
 
 
-@pytest.mark.parametrize("samples", [0, -3])
-def test_extension_by_nothing(capsys: pytest.CaptureFixture[str], home: Path, samples: int) -> None:
+@pytest.mark.parametrize("samples", [0, -3, 10**12])
+def test_extension_by_nothing_or_by_too_much(capsys: pytest.CaptureFixture[str], home: Path, samples: int) -> None:
     said = say(capsys, "extend", home / "out", "--samples", samples)
     assert_one_message(said, 2)
     assert f"samples: {samples} given" in said.err

@@ -79,6 +79,14 @@ def test_an_even_count_with_both_ends_becomes_odd_and_says_so() -> None:
     assert counts.coarsened(256) == (129, note)
 
 
+def test_an_odd_count_round_a_ring_becomes_even_where_gaps_must_be_unions() -> None:
+    counts = Refinement(both_ends=False, smallest=3, key="scheme.nodes", unions=True)
+    note = "scheme.nodes = 63 is odd; a coarser level needs an even number, 64 is used"
+    assert counts.admissible(63) == (64, note)
+    assert counts.coarsened(63) == (32, note)
+    assert counts.admissible(64) == (64, None)
+
+
 @pytest.mark.parametrize(("both_ends", "minimum"), [(True, 5), (False, 6)])
 def test_the_smallest_count_leaves_a_coarser_level(both_ends: bool, minimum: int) -> None:
     counts = Refinement(both_ends, smallest=3, key="scheme.nodes")

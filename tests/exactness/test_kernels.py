@@ -5,6 +5,8 @@ Oracles: densities of scipy.stats, sums over hundreds of images written out here
 
 from __future__ import annotations
 
+from typing import Any
+
 import numpy as np
 import pytest
 from scipy.integrate import quad
@@ -24,10 +26,13 @@ from tests.manufactured.problems import term
 
 LINE = Interval(-30.0, 30.0)
 RING = Ring(3.0)
-STRENGTH = np.array([1.4, -0.7, 2.0, 1.0])
-WIDTHS = np.array([0.1, 0.9, 3.0, 12.0])
+STRENGTH: Any = np.array([1.4, -0.7, 2.0, 1.0])
+WIDTHS: Any = np.array([0.1, 0.9, 3.0, 12.0])
 """From far below the length of the ring to four times that."""
-LAWS = {"gaussian": (GaussianKernel, norm), "exponential": (ExponentialKernel, laplace)}
+LAWS: dict[str, tuple[Any, Any]] = {
+    "gaussian": (GaussianKernel, norm),
+    "exponential": (ExponentialKernel, laplace),
+}
 X = np.linspace(-1.5, 1.4, 30)[:, None]
 Y = np.linspace(-1.3, 1.5, 7)[None, :]
 
@@ -80,7 +85,8 @@ def test_the_symbol_is_the_cosine_transform_over_the_line(name: str) -> None:
 
 def test_the_symbol_of_a_cosine_kernel_is_that_of_its_matrix() -> None:
     """16 points of the periodic trapezoid rule are exact for waves below 8; a_k gives a_k length / 2."""
-    kernel = CosineKernel((0.3, np.array([0.5, -1.0]), 0.0, 0.25))
+    uncertain: Any = np.array([0.5, -1.0])
+    kernel = CosineKernel((0.3, uncertain, 0.0, 0.25))
     y = RING.length * np.arange(16) / 16
     values = kernel.matrix(np.zeros((1, 1)), y[None, :], RING)[:, 0]
     k = np.arange(8)
@@ -107,13 +113,13 @@ def test_a_cosine_kernel_has_the_length_of_the_domain(domain: Interval | Ring) -
     ],
 )
 def test_a_formula_sees_target_source_and_the_shortest_distance(
-    text: str, shift_invariant: bool, values: object
+    text: str, shift_invariant: bool, values: Any
 ) -> None:
     """x is the target (rows), y the source (columns); nothing is periodised."""
     kernel = FormulaKernel(term(text))
     shortest = np.abs(X - Y)
     shortest = np.minimum(shortest, RING.length - shortest)
-    np.testing.assert_allclose(kernel.matrix(X, Y, RING), values(X, Y, shortest), rtol=1e-13)  # type: ignore[operator]
+    np.testing.assert_allclose(kernel.matrix(X, Y, RING), values(X, Y, shortest), rtol=1e-13)
     assert kernel.shift_invariant is shift_invariant
     assert kernel.symbol(np.arange(3), RING.length) is None
 
@@ -122,7 +128,7 @@ def test_parts_are_added() -> None:
     parts: dict[str, Kernel] = {"a": GaussianKernel(1.4, WIDTHS), "b": ExponentialKernel(-0.5, 0.7)}
     both = Connectivity(parts)
     expected = sum(part.matrix(X, Y, RING) for part in parts.values())
-    np.testing.assert_array_equal(both.matrix(X, Y, RING), expected)
+    np.testing.assert_array_equal(both.matrix(X, Y, RING), np.asarray(expected))
     k = np.arange(5)
     symbols = [part.symbol(k, RING.length) for part in parts.values()]
     np.testing.assert_array_equal(both.symbol(k, RING.length), symbols[0] + symbols[1])  # type: ignore[operator]

@@ -195,9 +195,7 @@ def test_collocation_samples_high_modes_and_galerkin_drops_them() -> None:
 def test_choice_by_operations(domain: Domain, n: int, uncertain: bool, expected: str) -> None:
     """Small problems are dense, large ones go by transforms; and the reason says with what numbers."""
     rule = make_rule("trapezoid", domain, n)
-    choice = choose_operator(
-        kernels(uncertain), domain, rule, rule, n, 0.0, exact_symbol=False, truncated=False
-    )
+    choice = choose_operator(kernels(uncertain), domain, rule, rule, n, 0.0, use="sampled", truncated=False)
     assert choice.name == expected
     assert "weighted operations" in choice.reason
     operator = choice.build(kernels(uncertain), lambda matrix: matrix)
@@ -208,7 +206,7 @@ def test_choice_by_operations(domain: Domain, n: int, uncertain: bool, expected:
 def test_kernel_of_x_and_y_is_dense() -> None:
     rule = make_rule("trapezoid", INTERVAL, 1025)
     kernel = lone(FormulaKernel(term("x*y")))
-    choice = choose_operator(kernel, INTERVAL, rule, rule, 1025, 0.0, exact_symbol=False, truncated=False)
+    choice = choose_operator(kernel, INTERVAL, rule, rule, 1025, 0.0, use="sampled", truncated=False)
     assert (choice.name, choice.folded) == ("shared dense", True)
 
 

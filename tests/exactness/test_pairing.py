@@ -11,13 +11,13 @@ from aleafield.ensemble.level import Level
 from aleafield.errors import InputError
 from aleafield.field.equation import Dynamics, FieldEquation
 from aleafield.field.kernels import CosineKernel, ExponentialKernel, FormulaKernel, GaussianKernel
-from aleafield.field.rates import LinearRate, LogisticRate, RampRate, Rate, StepRate
+from aleafield.field.rates import FormulaRate, LinearRate, LogisticRate, RampRate, Rate, StepRate
 from aleafield.geometry import Domain, Interval, Ring
 from aleafield.projection.discretisation import Discretisation
 from aleafield.projection.pairing import Pairing, resolve
 from aleafield.projection.path import split_path
 from aleafield.projection.scheme import Scheme
-from aleafield.projection.smoothness import smooth_on
+from aleafield.projection.smoothness import rate_smoothness, smooth_on, typical
 from aleafield.randomness.laws import Uniform
 from tests.manufactured.problems import lone, term
 
@@ -65,6 +65,48 @@ def test_even_counts_become_odd_where_a_coarser_level_needs_it_and_it_is_said() 
     assert pair(ON_RING, "piecewise linear", "collocation", 256).notes == ()
 
 
+@pytest.mark.parametrize("method", ["collocation", "galerkin"])
+@pytest.mark.parametrize("rate", [LogisticRate(5.0), StepRate(0.3)])
+def test_odd_counts_of_a_piecewise_linear_field_on_a_ring_become_even(method: str, rate: Rate) -> None:
+    """So that at every level of the path each element is a whole number of panels."""
+    equation = replace(ON_RING, rate=rate)
+    found = pair(equation, "piecewise linear", method, 63)
+    assert (found.nodes, found.quadrature_points) == (64, 64)
+    assert any("63" in note and "64" in note for note in found.notes)
+    found = pair(equation, "piecewise linear", method, 63, "matched", 127)
+    assert (found.nodes, found.quadrature_points) == (64, 128)
+    for part in split_path(found, Level(64, 128)):
+        assert all(level.quadrature_points % level.nodes == 0 for level in part.levels)
+    assert pair(ON_RING, "fourier", "collocation", 63).nodes == 63
+
+
+@pytest.mark.parametrize(
+    ("text", "smoothness"),
+    [
+        ("u > 0.3", "jump"),
+        ("sign(u - h)", "jump"),
+        ("where(u < 20*h, 0, u)", "jump"),
+        ("1/(1 + exp(-5*u)) + 0.001*(u > -7.3)", "jump"),
+        ("maximum(u - h, 0)", "kinked"),
+        ("u*(u > 0)", "kinked"),
+        ("sqrt(maximum(u - h, 0))", "kinked"),
+        ("where(u > h, u - h, 0)", "kinked"),
+        ("minimum(1, exp(3*u))", "kinked"),
+        ("abs(u)**1.5", "kinked"),
+        ("1/(1 + exp(-50000*(u - h)))", "smooth"),
+    ],
+)
+def test_a_formula_of_the_rate_that_jumps_is_told_from_one_with_a_kink(text: str, smoothness: str) -> None:
+    rate = FormulaRate(term(text, {"h": Uniform(0.2, 0.4)}))
+    equation = replace(BASE, rate=rate)
+    assert rate_smoothness(typical(equation).rate) == smoothness
+    found = pair(equation, "piecewise linear", "collocation", 65)
+    jump = smoothness == "jump"
+    assert any('form = "step"' in warning for warning in found.warnings) == jump
+    orders = [(part.order, part.observed_only) for part in (found.space, found.quadrature, found.time)]
+    assert (orders == [(1.0, True)] * 3) == jump
+
+
 @pytest.mark.parametrize(("domain", "points"), [(INTERVAL, 65), (INTERVAL, 100), (RING, 96)])
 def test_piecewise_linear_galerkin_needs_whole_panels(domain: Domain, points: int) -> None:
     """65 panel ends under 129 nodes leave hats without points; others cut elements."""
@@ -95,7 +137,10 @@ def test_fourier_takes_the_exact_symbol_where_there_is_one(
 
 def test_a_step_rate_under_cosine_kernels_is_integrated_in_closed_form() -> None:
     equation = replace(ON_RING, kernel=lone(CosineKernel((0.1, 0.2))), rate=StepRate(0.1))
-    assert pair(equation, "fourier", "collocation", 64).kernel_use == "closed"
+    found = pair(equation, "fourier", "collocation", 64)
+    assert found.kernel_use == "closed"
+    choice = Discretisation(equation, Level(64, 256), found).operator_choice
+    assert (choice.name, choice.operations) == ("closed between crossings", 2 * 4 * (256 + 64))
     assert pair(replace(equation, kernel=BASE.kernel), "fourier", "collocation", 64).kernel_use == "sampled"
 
 

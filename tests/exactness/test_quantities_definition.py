@@ -13,12 +13,12 @@ from aleafield.field.formula_term import FormulaTerm
 from aleafield.field.parameter import Binding
 from aleafield.formula import Formula
 from aleafield.quantities import (
-    MEASURES,
     ActiveWidth,
     At,
     FormulaQuantity,
     FrontPosition,
     FrontSpeed,
+    FunctionQuantity,
     Integral,
     Maximum,
     Mean,
@@ -33,14 +33,16 @@ from aleafield.quantities import (
 from aleafield.randomness.laws import parse_law
 from aleafield.spaces import make_space
 from aleafield.units import Units
-from tests.exactness.trajectories import INTERVAL, RING
+from tests.exactness.trajectories import INTERVAL, RING, measures
 
 UNITS = Units("mm", "ms", "mV")
 TERM = FormulaTerm(Formula("a * u"), {"a": 2.0})
 
 
-def test_the_measures_of_a_study_file() -> None:
-    assert set(MEASURES) == {
+def test_every_measure_has_a_name_first_and_its_time_last() -> None:
+    """Those of a study file, and functions from Python, whose unit stands after the time."""
+    found = measures()
+    assert set(found) == {
         "value",
         "mean",
         "maximum",
@@ -54,11 +56,12 @@ def test_the_measures_of_a_study_file() -> None:
         "time to level",
         "spectral power",
         "formula",
+        "function",
     }
-    for measure in MEASURES.values():
+    for measure in found.values():
         names = [spec.name for spec in dataclasses.fields(measure)]  # type: ignore[arg-type]
         assert names[0] == "name"
-        assert "when" not in names[:-1]
+        assert "when" not in names[: -2 if measure is FunctionQuantity else -1]
 
 
 @pytest.mark.parametrize(

@@ -196,9 +196,7 @@ def test_a_kink_at_the_peak_is_not_rounded() -> None:
     def tent(x: FloatArray) -> FloatArray:
         return -np.abs(x - PLACES[3:6])
 
-    np.testing.assert_array_equal(
-        of_function(Maximum("q"), space, tent)[0], tent(space.nodes).max(axis=1)
-    )
+    np.testing.assert_array_equal(of_function(Maximum("q"), space, tent)[0], tent(space.nodes).max(axis=1))
 
 
 @pytest.mark.parametrize("n", [3, 4])

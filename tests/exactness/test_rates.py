@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from typing import Any
 
 import numpy as np
 import pytest
@@ -20,7 +21,9 @@ from aleafield.field.rates import (
 )
 from tests.manufactured.problems import term
 
-GAIN, THRESHOLD, MAXIMUM = (np.array(v) for v in ([2.0, 30.0, 0.1], [0.3, -0.2, 1.5], [1.0, 2.5, -3.0]))
+GAIN: Any = np.array([2.0, 30.0, 0.1])
+THRESHOLD: Any = np.array([0.3, -0.2, 1.5])
+MAXIMUM: Any = np.array([1.0, 2.5, -3.0])
 U = np.concatenate([np.linspace(-3.0, 3.0, 6001), [-1e3, 1e3]])
 
 FORMS: dict[str, tuple[Rate, Callable[[FloatArray], FloatArray]]] = {

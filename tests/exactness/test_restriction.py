@@ -11,7 +11,7 @@ from aleafield.projection.restriction import MassRestriction, ModalRestriction
 from aleafield.quadrature import gauss_legendre, make_rule
 from aleafield.spaces import Legendre, PiecewiseLinear
 
-DOMAINS = [Interval(-1.0, 2.0), Ring(3.0)]
+DOMAINS: list[Domain] = [Interval(-1.0, 2.0), Ring(3.0)]
 RULES = [
     ("trapezoid", 1),
     ("trapezoid", 2),

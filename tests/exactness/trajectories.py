@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import inspect
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from itertools import pairwise
@@ -92,3 +93,15 @@ def random_elements(space: Space, rng: np.random.Generator, samples: int) -> Flo
 def space_of(pair: tuple[str, Domain], n: int) -> Space:
     """The space of dimension n for a pair of projector and domain."""
     return make_space(*pair, n)
+
+
+def measures() -> dict[str, type[Quantity]]:
+    """Every concrete measure by its name."""
+    found: dict[str, type[Quantity]] = {}
+    waiting: list[type[Quantity]] = [Quantity]
+    while waiting:
+        one = waiting.pop()
+        waiting.extend(one.__subclasses__())
+        if not inspect.isabstract(one):
+            found[one.measure] = one
+    return found

@@ -10,6 +10,7 @@ followed by its interface equation.
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping
+from typing import Any
 
 import numpy as np
 from numpy.polynomial.legendre import leggauss, legval, legvander
@@ -19,7 +20,11 @@ from scipy.optimize import brentq
 
 Array = NDArray[np.float64]
 Oracle = Callable[[Mapping[str, Array]], dict[str, Array]]
-ACCURACY = {"rtol": 1e-9, "atol": 1e-11, "method": "DOP853"}
+
+
+def course(rate: Callable[[float, Array], Any], span: tuple[float, float], start: Array) -> Any:
+    """Solution of a system by scipy's method of order 8, with its interpolant in `sol`."""
+    return solve_ivp(rate, span, start, "DOP853", dense_output=True, rtol=1e-9, atol=1e-11)
 
 
 def gaussian(z: Array, strength: Array | float, width: Array | float) -> Array:
@@ -31,17 +36,17 @@ def gaussian(z: Array, strength: Array | float, width: Array | float) -> Array:
 
 def logistic(u: Array, gain: Array, threshold: Array) -> Array:
     """Rates (S, n)."""
-    return 1.0 / (1.0 + np.exp(-gain[:, None] * (u - threshold[:, None])))
+    return np.asarray(1.0 / (1.0 + np.exp(-gain[:, None] * (u - threshold[:, None]))))
 
 
-def half_width(value: Callable[[Array], Array], right: float, level: float, n_samples: int) -> Array:
-    """Where a decreasing function crosses the level between 0 and `right`, by bisection, (S,)."""
-    low, high = np.zeros(n_samples), np.full(n_samples, right)
+def half_width(value: Callable[[Array], Array], right: float, level: Array) -> Array:
+    """Where a decreasing function crosses its level (S,) between 0 and `right`, by bisection, (S,)."""
+    low, high = np.zeros(len(level)), np.full(len(level), right)
     for _ in range(60):
         middle = 0.5 * (low + high)
         above = value(middle) > level
         low, high = np.where(above, middle, low), np.where(above, high, middle)
-    return 0.5 * (low + high)
+    return np.asarray(0.5 * (low + high))
 
 
 def evoked_response(inputs: Mapping[str, Array]) -> dict[str, Array]:
@@ -64,9 +69,9 @@ def evoked_response(inputs: Mapping[str, Array]) -> dict[str, Array]:
 
         return rate
 
-    during = solve_ivp(change(1.0), (0, 20), np.zeros(n_samples * n), dense_output=True, **ACCURACY)
+    during = course(change(1.0), (0, 20), np.zeros(n_samples * n))
     end = during.y[:, -1]
-    after = solve_ivp(change(0.0), (20, 40), end, dense_output=True, **ACCURACY)
+    after = course(change(0.0), (20, 40), end)
 
     def centre(t: float) -> Array:
         u = (during if t <= 20 else after).sol(t).reshape(n_samples, n)
@@ -74,11 +79,19 @@ def evoked_response(inputs: Mapping[str, Array]) -> dict[str, Array]:
         return np.asarray(u[:, middle])
 
     times = np.linspace(1.0, 40.0, 3901)
-    course = np.array([centre(t) for t in times])
-    latency = [brentq(lambda t, i=i: centre(t)[i] - 0.3, 0.01, 20.0, xtol=1e-10) for i in range(n_samples)]
+    heights = np.array([centre(t) for t in times])
+
+    def passage(i: int) -> float:
+        return brentq(lambda t: float(centre(t)[i]) - 0.3, 0.01, 20.0, xtol=1e-10)
+
     coefficients = np.linalg.solve(legvander(reference, n - 1), end.reshape(n_samples, n).T)
-    side = half_width(lambda a: legval(a / 10.0, coefficients, tensor=False), 10.0, 0.3, n_samples)
-    return {"width": 2 * side, "peak": course.max(axis=0), "latency": np.array(latency)}
+    side = half_width(
+        lambda a: np.asarray(legval(a / 10.0, coefficients, tensor=False), dtype=np.float64),
+        10.0,
+        np.full(n_samples, 0.3),
+    )
+    latency = np.array([passage(i) for i in range(n_samples)])
+    return {"width": 2 * side, "peak": heights.max(axis=0), "latency": latency}
 
 
 def bump_on_a_ring(inputs: Mapping[str, Array]) -> dict[str, Array]:
@@ -88,23 +101,22 @@ def bump_on_a_ring(inputs: Mapping[str, Array]) -> dict[str, Array]:
     images = 2 * np.pi * np.arange(-9, 10)
     distance = x[None, :] + images[:, None]
     row = gaussian(distance, inputs["kernel.excitation.strength"], 0.5).sum(axis=1)
-    row += gaussian(distance, inputs["kernel.inhibition.strength"], 1.2).sum(axis=1)
+    row += gaussian(distance, inputs["kernel.inhibition.strength"], 2.0).sum(axis=1)
     symbol = np.fft.rfft(row * (2 * np.pi / n), axis=1)
 
     def rate(_: float, flat: Array) -> Array:
         u = flat.reshape(n_samples, n)
-        source = logistic(u, inputs["rate.gain"], inputs["rate.threshold"])
+        source = logistic(u, inputs["rate.gain"], inputs["h"])
         return np.asarray((-u + np.fft.irfft(symbol * np.fft.rfft(source, axis=1), n, axis=1)) / 15.0).ravel()
 
     start = np.tile(1.4 * np.exp(2.0 * (np.cos(x) - 1)), n_samples)
-    end = solve_ivp(rate, (0, 300), start, **ACCURACY).y[:, -1].reshape(n_samples, n)
+    end = course(rate, (0, 300), start).y[:, -1].reshape(n_samples, n)
     waves = np.fft.rfft(end, axis=1).real * np.where(np.arange(n // 2 + 1) % (n // 2), 2.0, 1.0) / n
     order = np.arange(n // 2 + 1)
-    side = half_width(
-        lambda a: (waves * np.cos(order * a[:, None])).sum(axis=1), float(np.pi), 0.5, n_samples
-    )
     finely = 64 * np.fft.irfft(np.fft.rfft(end, axis=1), 64 * n, axis=1)  # a wide bump has its peaks beside 0
-    return {"amplitude": finely.max(axis=1), "width": 2 * side}
+    amplitude = finely.max(axis=1)
+    side = half_width(lambda a: (waves * np.cos(order * a[:, None])).sum(axis=1), float(np.pi), inputs["h"])
+    return {"amplitude": amplitude, "width": np.where(amplitude > inputs["h"], 2 * side, np.nan)}
 
 
 def travelling_front(inputs: Mapping[str, Array]) -> dict[str, Array]:
@@ -129,11 +141,11 @@ def _interface(h: float, width: float, tau: float) -> tuple[float, float]:
     def rate(t: float, y: Array) -> list[float]:
         return [(np.exp(position(t, float(y[0])) / width) - float(y[0])) / tau]
 
-    course = solve_ivp(rate, (0, 80), [0.0], dense_output=True, **ACCURACY)
-    at = {t: position(t, float(course.sol(t)[0])) for t in (30.0, 60.0)}
+    amplitude = course(rate, (0, 80), np.zeros(1))
+    at = {t: position(t, float(amplitude.sol(t)[0])) for t in (30.0, 60.0)}
 
     def beyond(t: float) -> float:
-        return position(t, float(course.sol(t)[0])) - 6.0
+        return position(t, float(amplitude.sol(t)[0])) - 6.0
 
     passage = brentq(beyond, 1.0, 80.0, xtol=1e-10) if beyond(80.0) >= 0 else float("nan")
     return (at[60.0] - at[30.0]) / 30.0, passage

@@ -99,4 +99,4 @@ def test_a_certain_quantity_has_probability_zero_or_one() -> None:
 
 def test_no_valid_sample() -> None:
     sample = Sample.of(np.array([np.nan]), valid=np.array([False]))
-    assert estimate_exceedance(sample, 1.0, 0.95).reason == "not determined by 0 samples"
+    assert estimate_exceedance(sample, 1.0, 0.95).reason == "not determined: all samples failed"

@@ -15,7 +15,7 @@ import pytest
 from aleafield import cli
 from aleafield.runs import run as running
 from aleafield.runs import summary as summaries
-from aleafield.runs.execution import is_complete
+from aleafield.runs.execution import Stored, stored_ensemble
 from aleafield.runs.folder import claimed_plan
 from aleafield.runs.plan_file import read_plan
 from aleafield.runs.progress import ProgressLine
@@ -28,8 +28,8 @@ from tests.command import (
     test_broken_studies,
     test_requirements,
     test_runs,
-    test_start_up,
 )
+from tests.command import test_start_up as start_up
 from tests.examples.summary_shape import assert_is_summary, read_summary
 from tests.messages.expectations import broken_files
 from tests.teeth.biting import Plant, Tooth, assert_bites, everywhere, member
@@ -42,19 +42,6 @@ BROKEN = {entry.path.stem: entry for entry in broken_files()}
 def nothing_failed(_: Any) -> dict[str, Any]:
     """Failures that are not counted."""
     return {"count": 0, "reasons": {}, "list": []}
-
-
-def with_numpy(patch: pytest.MonkeyPatch) -> None:
-    """Every new interpreter loads numpy, as an import at the top of the package would."""
-    folder = TemporaryDirectory()
-    (Path(folder.name) / "sitecustomize.py").write_text("import numpy\n")
-    real = saying.surroundings
-
-    def surroundings(**more: str) -> dict[str, str]:
-        found = real(**more)
-        return {**found, "PYTHONPATH": f"{folder.name}:{found['PYTHONPATH']}"}
-
-    patch.setattr(saying, "surroundings", surroundings)
 
 
 FAULTS: list[tuple[str, Plant, Test]] = [
@@ -104,14 +91,12 @@ FAULTS: list[tuple[str, Plant, Test]] = [
         ),
     ),
     (
-        "impossible samples that are solved",
+        "impossible samples that nobody looks for",
         everywhere(
             refuse_impossible_samples,
             lambda study, design, count, block=0: None,
         ),
-        lambda capture, folder: test_broken_studies.test_run_says_what_is_wrong(
-            capture, folder, BROKEN["width_impossible_through_an_expression"]
-        ),
+        lambda capture, _: test_broken_studies.test_check_finds_impossible_samples_too(capture),
     ),
     (
         "no study where a file is missing",
@@ -136,13 +121,8 @@ FAULTS: list[tuple[str, Plant, Test]] = [
     ),
     (
         "another report section that solves again",
-        everywhere(is_complete, lambda layout, plan: False),
+        everywhere(stored_ensemble, lambda layout: Stored()),
         lambda capture, folder: solved_again(capture, folder),
-    ),
-    (
-        "a heavy package loaded at the start",
-        with_numpy,
-        lambda *_: test_start_up.test_help_loads_no_heavy_package(["--help"]),
     ),
 ]
 
@@ -160,6 +140,23 @@ def test_commands(capsys: Capture, fault: str, plant: Plant, test: Test) -> None
             test(capsys, Path(folder))
 
     assert_bites(Tooth(fault, plant, check))
+
+
+def test_start_up(tmp_path: Path) -> None:
+    """Every new interpreter loads numpy, as an import at the top of the package would."""
+    (tmp_path / "sitecustomize.py").write_text("import numpy\n")
+
+    def heavy(real: Callable[..., dict[str, str]] = saying.surroundings) -> dict[str, str]:
+        found = real()
+        return {**found, "PYTHONPATH": f"{tmp_path}:{found['PYTHONPATH']}"}
+
+    assert_bites(
+        Tooth(
+            "a heavy package loaded at the start",
+            member(saying, "surroundings", heavy),
+            lambda: start_up.test_help_loads_no_heavy_package(["--help"]),
+        )
+    )
 
 
 @pytest.fixture(scope="module")

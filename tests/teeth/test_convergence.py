@@ -18,7 +18,7 @@ from aleafield.stepping.view import StepView
 from tests.convergence import order_table, test_field_convergence, test_projection, test_quantity_orders
 from tests.convergence.field_orders import CASES
 from tests.teeth.biting import Check, Tooth, assert_bites, everywhere, member, teeth
-from tests.teeth.test_exactness import nodal_sampling
+from tests.teeth.faults import nodal_sampling
 
 
 def highest_node(values: FloatArray, points: FloatArray, _: Any) -> Peak:

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import replace
+from functools import partial
 from typing import Any
 
 import numpy as np
@@ -13,6 +14,8 @@ from aleafield.field.kernels import CosineKernel, ExponentialKernel, GaussianKer
 from aleafield.field.parameter import per_sample
 from aleafield.field.rates import LogisticRate, RampRate, StepRate
 from aleafield.geometry import Interval, Ring
+from aleafield.operators import SharedDenseOperator, ToeplitzOperator
+from aleafield.projection.restriction import MassRestriction
 from aleafield.quadrature import (
     Rule,
     clenshaw_curtis,
@@ -30,10 +33,12 @@ from tests.exactness import (
     test_kernels,
     test_operators,
     test_rates,
+    test_restriction,
     test_rules,
     test_spaces,
 )
 from tests.teeth.biting import Check, Tooth, assert_bites, everywhere, member, teeth
+from tests.teeth.faults import doubled_symbol, nodal_sampling, not_periodised, place_decides, width_decides
 
 RuleMaker = Callable[..., Rule]
 
@@ -110,31 +115,13 @@ def test_rules_of_quadrature(tooth: Tooth) -> None:
     assert_bites(tooth)
 
 
-def not_periodised(kernel: type[GaussianKernel | ExponentialKernel]) -> Callable[..., FloatArray]:
-    """The shortest distance in place of the sum over all images."""
-    real = kernel.matrix
-
-    def matrix(self: Any, x: FloatArray, y: FloatArray, domain: Interval | Ring) -> FloatArray:
-        if not isinstance(domain, Ring):
-            return real(self, x, y, domain)
-        return real(self, domain.distance(x, y), np.zeros_like(x + y), Interval(-1.0, 1.0))
-
-    return matrix
-
-
 def without_the_half(self: CosineKernel, k: Any, length: float) -> FloatArray:
     """a_k times the length for every k: the factor 2 of cos^2 = 1/2 is forgotten."""
-    waves = [np.reshape(a, (-1, 1)) * length * (k == order) for order, a in enumerate(self.coefficients)]
+    waves = [
+        np.reshape(np.asarray(a), (-1, 1)) * length * (k == order)
+        for order, a in enumerate(self.coefficients)
+    ]
     return np.asarray(sum(waves))
-
-
-def doubled_symbol(real: Callable[..., Any]) -> Callable[..., Any]:
-    """Twice the symbol of the waves, as where the two halves of a real transform are both counted."""
-
-    def symbol(self: Any, k: Any, length: float) -> FloatArray:
-        return np.asarray(real(self, k, length) * np.where(k > 0, 2.0, 1.0))
-
-    return symbol
 
 
 @teeth(
@@ -142,7 +129,7 @@ def doubled_symbol(real: Callable[..., Any]) -> Callable[..., Any]:
         Tooth(
             f"a {name} kernel that is not periodised",
             member(kernel, "matrix", not_periodised(kernel)),
-            lambda name=name: test_kernels.test_on_a_ring_it_is_the_sum_over_all_images(name),
+            partial(test_kernels.test_on_a_ring_it_is_the_sum_over_all_images, name),
         )
         for name, kernel in (("gaussian", GaussianKernel), ("exponential", ExponentialKernel))
     ],
@@ -150,7 +137,7 @@ def doubled_symbol(real: Callable[..., Any]) -> Callable[..., Any]:
         Tooth(
             f"a factor 2 in the symbol of a {name} kernel",
             member(kernel, "symbol", doubled_symbol(kernel.symbol)),
-            lambda name=name: test_kernels.test_the_symbol_is_the_cosine_transform_over_the_line(name),
+            partial(test_kernels.test_the_symbol_is_the_cosine_transform_over_the_line, name),
         )
         for name, kernel in (("gaussian", GaussianKernel), ("exponential", ExponentialKernel))
     ],
@@ -175,19 +162,6 @@ def test_kernels_and_symbols(tooth: Tooth) -> None:
     assert_bites(tooth)
 
 
-def width_decides(batch: FloatArray, matrix: FloatArray) -> FloatArray:
-    """One product of all rows, whose order of summation follows their number, as in a BLAS library."""
-    if len(batch) % 16:
-        return np.asarray(batch[:, ::-1] @ matrix[::-1])
-    return np.asarray(batch @ matrix)
-
-
-def place_decides(batch: FloatArray, matrix: FloatArray) -> FloatArray:
-    """The second half of the rows is summed in the other order."""
-    half = len(batch) // 2
-    return np.concatenate([batch[:half] @ matrix, batch[half:, ::-1] @ matrix[::-1]])
-
-
 @teeth(
     Tooth(
         "a plain matrix product, bits by the width of the batch",
@@ -207,7 +181,7 @@ def place_decides(batch: FloatArray, matrix: FloatArray) -> FloatArray:
     Tooth(
         "a kernel operator with its source reversed",
         member(
-            test_operators.SharedDenseOperator,
+            SharedDenseOperator,
             "apply",
             lambda self, source: batch_product(source[:, ::-1], self._transposed),
         ),
@@ -216,11 +190,9 @@ def place_decides(batch: FloatArray, matrix: FloatArray) -> FloatArray:
     Tooth(
         "a circular product where a linear one is needed",
         member(
-            test_operators.ToeplitzOperator,
+            ToeplitzOperator,
             "apply",
-            lambda self, source, real=test_operators.ToeplitzOperator.apply: np.roll(
-                real(self, source), 1, axis=-1
-            ),
+            lambda self, source, real=ToeplitzOperator.apply: np.roll(real(self, source), 1, axis=-1),
         ),
         lambda: test_operators.test_choice_by_operations(test_operators.INTERVAL, 1025, False, "toeplitz"),
     ),
@@ -283,20 +255,12 @@ def sum_of_squares(self: Any, u: FloatArray) -> FloatArray:
     ),
     Tooth(
         "a mass matrix that is lumped",
-        member(PiecewiseLinear, "mass_matrix", lambda self: np.diag(self.integral_weights)),
-        space_check("piecewise linear", test_spaces.INTERVAL, 8, test_spaces.test_mass_matrix),
+        member(MassRestriction, "_solve", lambda self, load: load / self._weight.sum(axis=0)),
+        lambda: test_restriction.test_mass_restriction(test_restriction.DOMAINS[0], "simpson", 1, 9),
     ),
 )
 def test_spaces_of_functions(tooth: Tooth) -> None:
     assert_bites(tooth)
-
-
-def nodal_sampling(values: FloatArray, threshold: Any, spacing: float, periodic: bool) -> FloatArray:
-    """A point counts whole where it is above the threshold: order 1, and bumps pinned to the points."""
-    weights = np.where(values > np.reshape(threshold, (-1, 1)), spacing, 0.0)
-    if not periodic:
-        weights[:, [0, -1]] *= 0.5
-    return weights
 
 
 def exchanged_sides(values: FloatArray, threshold: Any, spacing: float, periodic: bool) -> FloatArray:

@@ -19,8 +19,7 @@ from aleafield.verification.problems import PROBLEMS
 from aleafield.verification.solving import verdict
 from tests.manufactured import problems, test_interval, test_line, test_ring
 from tests.teeth.biting import Check, Tooth, assert_bites, everywhere, member, teeth
-from tests.teeth.test_exactness import doubled_symbol, nodal_sampling, not_periodised
-from tests.teeth.test_stepping import wrong_weight
+from tests.teeth.faults import doubled_symbol, nodal_sampling, not_periodised, wrong_weight
 
 
 def swapped_axis(self: FormulaKernel, x: FloatArray, y: FloatArray, domain: Any) -> FloatArray:

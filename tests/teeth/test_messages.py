@@ -7,7 +7,6 @@ from typing import Any
 from aleafield.errors import InputError
 from aleafield.randomness.copula import Copula
 from aleafield.study.positions import line_of, located
-from aleafield.study.reading.numbers import Numbers
 from aleafield.study.reading.table import Table, finite
 from tests.messages import test_broken_studies
 from tests.messages.expectations import broken_files
@@ -67,11 +66,6 @@ REAL_COPULA = Copula.__init__
         "a number that is not looked at",
         everywhere(finite, lambda value, key: float(value)),
         message_of("number_is_true"),
-    ),
-    Tooth(
-        "names in a formula that are not looked up",
-        member(Numbers, "_refuse_unknown", lambda *_: None),
-        message_of("level_by_an_unknown_name"),
     ),
     Tooth(
         "correlations that are not looked at",

@@ -3,17 +3,22 @@
 from __future__ import annotations
 
 import ast
+from functools import partial
 from typing import Any
 
 import numpy as np
 
+from aleafield.arrays import batch_product
 from aleafield.errors import InputError
 from aleafield.formula import Formula, parser
 from aleafield.formula.language import BINARY, FUNCTION_TABLE
 from aleafield.formula.parser import Push, _Compiler
+from aleafield.projection.semidiscrete import SemiDiscreteField
+from aleafield.stepping import runge_kutta
 from tests.exactness import test_formula
-from tests.properties import test_formula_properties
-from tests.teeth.biting import Tooth, assert_bites, member, teeth
+from tests.properties import test_batches, test_formula_properties
+from tests.teeth.biting import Check, Tooth, assert_bites, everywhere, member, teeth
+from tests.teeth.faults import place_decides, width_decides
 
 
 def accepts_all(self: Any, node: Any, depth: int) -> None:
@@ -32,9 +37,7 @@ REAL_WRITE = _Compiler._write
         Tooth(
             f"a formula that takes {text!r}",
             member(_Compiler, "_write", accepts_all),
-            lambda text=text: (
-                test_formula_properties.test_whatever_is_not_a_formula_is_refused_with_the_way_out(text)
-            ),
+            partial(test_formula_properties.test_whatever_is_not_a_formula_is_refused_with_the_way_out, text),
         )
         for text in (
             *("a.real", "().__class__.__bases__[0].__subclasses__()", "__import__('os').system('true')"),
@@ -69,4 +72,56 @@ REAL_WRITE = _Compiler._write
     ),
 )
 def test_formulas(tooth: Tooth) -> None:
+    assert_bites(tooth)
+
+
+def rows_alone(operator: str) -> Check:
+    """The bits of a row under one operator."""
+    case = next(case for case in test_batches.CASES if case.operator == operator)
+    return lambda: test_batches.test_rows_do_not_depend_on_the_batch(case)
+
+
+def first_failure_stops_all(failed_at: Any, time: float, *arrays: Any) -> None:
+    """One sample that is not finite makes all of its batch fail."""
+    if not all(np.isfinite(array).all() for array in arrays):
+        failed_at[np.isnan(failed_at)] = time
+        for array in arrays:
+            array[:] = np.nan
+
+
+BLOW_UP: Check = lambda: test_batches.test_a_sample_that_blows_up_disturbs_no_other("chebyshev")  # noqa: E731
+
+
+@teeth(
+    Tooth(
+        "a plain matrix product, bits by the width of the batch",
+        everywhere(batch_product, width_decides),
+        rows_alone("shared dense"),
+    ),
+    Tooth(
+        "a plain matrix product, bits by the place in the batch",
+        everywhere(batch_product, place_decides),
+        rows_alone("shared dense"),
+    ),
+    Tooth(
+        "a number of the whole batch in every row",
+        member(
+            SemiDiscreteField,
+            "rate_of_change",
+            lambda self, t, u, inside=None, real=SemiDiscreteField.rate_of_change: (
+                real(self, t, u, inside) + 1e-15 * np.abs(u).max()
+            ),
+        ),
+        rows_alone("toeplitz"),
+    ),
+    Tooth(
+        "a failure that is not noted",
+        everywhere(runge_kutta._freeze, lambda failed_at, time, *arrays: None),
+        BLOW_UP,
+    ),
+    Tooth(
+        "a failure that spoils its batch", everywhere(runge_kutta._freeze, first_failure_stops_all), BLOW_UP
+    ),
+)
+def test_batches_of_samples(tooth: Tooth) -> None:
     assert_bites(tooth)

@@ -13,18 +13,7 @@ from aleafield.stepping import runge_kutta
 from aleafield.stepping.schedule import Schedule
 from tests.exactness import test_restriction, test_stepping
 from tests.teeth.biting import Tooth, assert_bites, everywhere, member, teeth
-
-
-def wrong_weight(
-    system: Any, times: tuple[float, float, float], u: FloatArray, slope: FloatArray, _: Any
-) -> FloatArray:
-    """The four stages of the classical method with weights 1, 1, 3, 1: consistent, but of a lower order."""
-    start, middle, end = times
-    length = end - start
-    second = system.rate_of_change(middle, u + 0.5 * length * slope, middle)
-    third = system.rate_of_change(middle, u + 0.5 * length * second, middle)
-    fourth = system.rate_of_change(end, u + length * third, middle)
-    return np.asarray(u + length / 6.0 * (slope + second + 3.0 * third + fourth))
+from tests.teeth.faults import wrong_weight
 
 
 def stage_left_out(
@@ -43,6 +32,7 @@ def outside(self: Any, t: float, u: FloatArray, inside: float | None = None) -> 
 
 
 REAL_RATE = SemiDiscreteField.rate_of_change
+REAL_THROUGH = Schedule.through
 SMOOTH, SWITCHED = ("exp(-x**2)*cos(t)", ()), ("exp(-x**2)*(t < 1.1)", (1.1,))
 
 
@@ -77,9 +67,6 @@ SMOOTH, SWITCHED = ("exp(-x**2)*cos(t)", ()), ("exp(-x**2)*(t < 1.1)", (1.1,))
 )
 def test_steps(tooth: Tooth) -> None:
     assert_bites(tooth)
-
-
-REAL_THROUGH = Schedule.through
 
 
 @teeth(

@@ -3,13 +3,14 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Iterable, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
 
 from aleafield.accounting.measured import MeasuredPart, PairedValues
 from aleafield.accounting.order import safety_factor
+from aleafield.accounting.regression import Shift
 from aleafield.accounting.shifted import range_of
 from aleafield.accounting.statistic import MEAN, Statistic
 from aleafield.arrays import FloatArray
@@ -96,11 +97,11 @@ def joint_change(measured: Sequence[MeasuredPart], statistic: Statistic, value: 
     sample = measured[0].sample
     worst = 0.0
     for sign in (-1.0, 1.0):
-        by_value = _one_sided((m.shifts for m in measured), sign, len(sample.given))
+        by_value = _one_sided([m.shifts for m in measured], sign)
         for margin_sign in (-1.0, 1.0) if sample.margin is not None else (None,):
             by_margin = None
             if margin_sign is not None:
-                by_margin = _one_sided(((m.margin_shift,) for m in measured), margin_sign, sample.n_valid)
+                by_margin = _one_sided([(m.margin_shift,) for m in measured], margin_sign)
             found = range_of(statistic, sample, by_value, by_margin)
             if found is None:
                 return math.inf
@@ -108,16 +109,19 @@ def joint_change(measured: Sequence[MeasuredPart], statistic: Statistic, value: 
     return worst
 
 
-def _one_sided(shifts: Iterable[Sequence[FloatArray]], sign: float, n: int) -> FloatArray:
-    """Sum over parts of the largest shift of one sign, (n,); one part's shifts in memory at a time."""
-    total = np.zeros(n)
-    for candidates in shifts:
-        largest = np.zeros(n)
-        for shift in candidates:
-            np.maximum(largest, sign * shift, out=largest)
-        total += largest
-    total *= sign
-    return total
+def _one_sided(shifts: Sequence[Sequence[Shift]], sign: float) -> Shift:
+    """Sum over parts of the largest shift of one sign."""
+
+    def total_at(values: FloatArray) -> FloatArray:
+        total = np.zeros_like(values)
+        for candidates in shifts:
+            largest = np.zeros_like(values)
+            for shift in candidates:
+                np.maximum(largest, sign * shift(values), out=largest)
+            total += largest
+        return sign * total
+
+    return total_at
 
 
 def mean_influence(pair: PairedValues, mean: float, share: float) -> FloatArray:
@@ -223,10 +227,10 @@ def _shift_bias(measured: MeasuredPart, statistic: Statistic, value: float, conf
     sample = measured.sample
     widen = max(1.0, normal(confidence) / normal(USUAL_CONFIDENCE))
     margin_shift = None if sample.margin is None else measured.margin_shift
-    shifts: list[FloatArray | None] = list(measured.shifts)
+    shifts: list[Shift | None] = list(measured.shifts)
     residuals = [measured.order.factor * fit.residual * widen for fit in measured.fits]
     if statistic.kind == "occurs" or len(sample.given) == 0:
-        shifts, residuals = [np.zeros(len(sample.given))], [0.0]
+        shifts, residuals = [np.zeros_like], [0.0]
     elif not shifts:
         shifts, residuals = [None], [0.0]
     if statistic.has_influence:
@@ -263,8 +267,8 @@ def _shift_bias(measured: MeasuredPart, statistic: Statistic, value: float, conf
     return None if math.isinf(noise) else Bias(size, noise, signed or 0.0)
 
 
-def _moved(shift: FloatArray | None, by: float) -> FloatArray | None:
-    return None if shift is None else shift + by
+def _moved(shift: Shift | None, by: float) -> Shift | None:
+    return None if shift is None else lambda values: shift(values) + by
 
 
 def _change(centre: tuple[float, float], moved: tuple[float, float] | None) -> float:

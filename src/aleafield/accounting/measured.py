@@ -9,9 +9,10 @@ import numpy as np
 
 from aleafield.accounting.order import RELATIVE_ROUND_OFF, Order, judge_order, reduction
 from aleafield.accounting.records import Pair, PartDifferences
-from aleafield.accounting.regression import DifferenceFit, fit_differences
+from aleafield.accounting.regression import DifferenceFit, Shift, fit_differences
 from aleafield.arrays import BoolArray, FloatArray, IntArray
 from aleafield.estimates import Sample
+from aleafield.estimates.blocks import BlockArray
 from aleafield.estimates.sd import standard_deviation
 
 LEAST_PAIRS = 5
@@ -42,7 +43,7 @@ class PairedValues:
     in_upper: BoolArray
     in_lower: BoolArray
     in_run: BoolArray
-    block: IntArray
+    block: BlockArray
 
     @property
     def in_both(self) -> BoolArray:
@@ -105,7 +106,7 @@ class MeasuredPart:
         """Size of a difference of the margin that is rounding; 0 without a margin."""
         if self.sample.margin is None:
             return 0.0
-        return _round_off(self.sample.margin[self.sample.valid], 0.0)
+        return _round_off(self.sample.valid_margin, 0.0)
 
     @cached_property
     def order(self) -> Order:
@@ -153,30 +154,32 @@ class MeasuredPart:
         return tuple(found)
 
     @property
-    def shifts(self) -> tuple[FloatArray, ...]:
-        """F times each regression at the values of the whole sample, each (number that occur,)."""
-        return tuple(self.order.factor * fit(self.sample.given) for fit in self.fits)
+    def shifts(self) -> tuple[Shift, ...]:
+        """F times each regression, to be taken off the values of the whole sample."""
+        return tuple(_times(self.order.factor, fit) for fit in self.fits)
 
     @cached_property
     def margin_fit(self) -> DifferenceFit:
         """Regression of the margin's difference on the run's margin; needs a margin and a usable probe."""
         assert self.sample.margin is not None
-        margin = self.sample.margin[self.sample.valid]
+        margin = self.sample.valid_margin
         at_probes = self.sample.margin[self.part.probes[self.usable]]
         difference = _margin_difference(self.part.fine)[self.usable]
         centre, scale = float(margin.mean()), standard_deviation(margin)
         return fit_differences(at_probes, difference, centre, scale, self.sample.certain)
 
     @property
-    def margin_shift(self) -> FloatArray:
-        """F times the regression of the margin, (number of valid samples,)."""
-        assert self.sample.margin is not None
-        shift: FloatArray = self.margin_order.factor * self.margin_fit(self.sample.margin[self.sample.valid])
-        return shift
+    def margin_shift(self) -> Shift:
+        """F times the regression of the margin."""
+        return _times(self.margin_order.factor, self.margin_fit)
+
+
+def _times(factor: float, fit: DifferenceFit) -> Shift:
+    return lambda values: factor * fit(values)
 
 
 def _round_off(values: FloatArray, least: float) -> float:
-    largest = float(np.abs(values).max()) if len(values) else 0.0
+    largest = float(max(values.max(), -values.min())) if len(values) else 0.0
     return max(RELATIVE_ROUND_OFF * largest, least)
 
 

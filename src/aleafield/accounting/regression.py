@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
@@ -9,6 +10,8 @@ import numpy as np
 from aleafield.accounting.order import root_mean_square
 from aleafield.arrays import FloatArray
 
+Shift = Callable[[FloatArray], FloatArray]
+"""From values of a quantity or a margin (k,) to what is taken off them, value by value."""
 LEAST_FOR_SQUARE = 8
 LEAST_FOR_SLOPE = 5
 

@@ -2,16 +2,37 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
+from numpy.typing import NDArray
 from scipy.special import ndtri, stdtrit
 
-from aleafield.arrays import FloatArray, IntArray
+from aleafield.arrays import BoolArray, FloatArray
+
+BlockArray = NDArray[np.signedinteger[Any]]
+"""Labels of blocks, in as few bytes as they need."""
+SEGMENT = 1 << 12
+"""Samples that are worked on at a time where whole columns would only serve as scratch."""
 
 
 FEW = 10
 """With fewer hits or misses, or samples beyond a quantile, than this, blocks are not trusted alone."""
+
+
+def segments(n: int) -> Iterator[slice]:
+    """Slices of at most SEGMENT samples that cover n of them, in order."""
+    return (slice(first, min(first + SEGMENT, n)) for first in range(0, n, SEGMENT))
+
+
+def block_counts(block: BlockArray, n_blocks: int) -> FloatArray:
+    """Number of entries of each block, (n_blocks,)."""
+    counts = np.zeros(n_blocks)
+    for cut in segments(len(block)):
+        np.add.at(counts, block[cut], 1.0)
+    return counts
 
 
 def student(confidence: float, degrees: int) -> float:
@@ -58,16 +79,18 @@ def plain_mean(values: FloatArray) -> BlockMean:
     return BlockMean(float(values.mean()), float(values.std(ddof=1) / np.sqrt(n)), n - 1)
 
 
-def block_mean(values: FloatArray, block: IntArray, n_blocks: int) -> BlockMean:
-    """Pooled mean of values (n,), n >= 1, with the jackknife over blocks.
+def block_mean(values: FloatArray | BoolArray, block: BlockArray, n_blocks: int) -> BlockMean:
+    """Pooled mean of values (n,) or share of hits, n >= 1, with the jackknife over blocks.
 
     The mean is the ratio of the sum to the count, and each block in turn is left out of both.  For blocks of
     equal length this is the mean of the block means, with their standard deviation over the root of their
     number.  Blocks without a value are left out: they carry no information on a mean of what occurs.
     """
     centre = float(values[0]) if values.min() == values.max() else float(values.mean())
-    count = np.bincount(block, minlength=n_blocks).astype(np.float64)
-    total = np.bincount(block, weights=values - centre, minlength=n_blocks)
+    count = block_counts(block, n_blocks)
+    total = np.zeros(n_blocks)
+    for cut in segments(len(values)):
+        np.add.at(total, block[cut], values[cut] - centre)
     total, count = total[count > 0], count[count > 0]
     n = len(count)
     if n < 2:
@@ -78,6 +101,6 @@ def block_mean(values: FloatArray, block: IntArray, n_blocks: int) -> BlockMean:
     return BlockMean(centre, error, n - 1)
 
 
-def mean_of(values: FloatArray, block: IntArray, n_blocks: int) -> BlockMean:
+def mean_of(values: FloatArray, block: BlockArray, n_blocks: int) -> BlockMean:
     """Mean over independent values (one block in all: plain Monte Carlo) or over blocks."""
     return plain_mean(values) if n_blocks == 1 else block_mean(values, block, n_blocks)

@@ -83,8 +83,7 @@ def _probability(sample: Sample, hits: BoolArray, confidence: float) -> Estimate
         return exact(share)
     if sample.plain:
         return Estimate(share, *wilson(share, n, normal(confidence)))
-    counted = hits[sample.valid].astype(np.float64)
-    blocks = block_mean(counted, sample.replicate[sample.valid], sample.replicates)
+    blocks = block_mean(hits[sample.valid], sample.replicate[sample.valid], sample.replicates)
     if blocks.degrees < 1:
         return undetermined(n)
     effective = float(n)

@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-import numpy as np
-
 from aleafield.arrays import FloatArray
 from aleafield.errors import InputError
 from aleafield.estimates.blocks import FEW, block_mean
@@ -12,11 +10,29 @@ from aleafield.estimates.sample import Sample
 
 
 def empirical_quantile(values: FloatArray, p: float) -> float:
-    """The p quantile of values (n,), n >= 1, nearly median-unbiased for every law.
+    """The p quantile of values (n,), n >= 1, nearly median-unbiased for every law; reorders the values.
 
     Definition 8 of Hyndman and Fan 1996: linear between order statistics at rank n p + (p + 1) / 3.
     """
-    return float(np.quantile(values, p, method="median_unbiased"))
+    values.partition(_neighbours(len(values), p)[:2])
+    return ordered_quantile(values, p)
+
+
+def ordered_quantile(ordered: FloatArray, p: float) -> float:
+    """`empirical_quantile` of values (n,) that increase."""
+    left, right, fraction = _neighbours(len(ordered), p)
+    low, high = float(ordered[left]), float(ordered[right])
+    if low == high:
+        return low
+    step = high - low
+    return low + step * fraction if fraction < 0.5 else high - step * (1.0 - fraction)
+
+
+def _neighbours(n: int, p: float) -> tuple[int, int, float]:
+    """Indices of the order statistics beside the p quantile of n values, and how far it is from the first."""
+    index = min(max(n * p + (p + 1.0) / 3.0 - 1.0, 0.0), n - 1.0)
+    left = int(index)
+    return left, min(left + 1, n - 1), index - left
 
 
 def order_statistic_ranks(n: int, p: float, confidence: float) -> tuple[int, int]:
@@ -74,8 +90,8 @@ def estimate_quantile(sample: Sample, p: float, confidence: float) -> Estimate:
         return nothing_given(sample.n_valid)
     if sample.certain:
         return exact(float(sample.given[0]))
-    ordered = np.sort(sample.given)
-    value = empirical_quantile(ordered, p)
+    ordered = sample.ordered
+    value = ordered_quantile(ordered, p)
     few = n * min(p, 1.0 - p) < FEW
     if sample.plain or few:
         low, high = order_statistic_ranks(n, p, confidence)
@@ -86,10 +102,10 @@ def estimate_quantile(sample: Sample, p: float, confidence: float) -> Estimate:
             return Estimate(value, *ends)
     else:
         ends = value, value
-    share = block_mean((sample.given <= value).astype(np.float64), sample.given_block, sample.replicates)
+    share = block_mean(sample.given <= value, sample.given_block, sample.replicates)
     distance = share.half_width(confidence) + 0.5 / n
     # the pooled quantile at a probability is known from the samples where its rank lies among theirs
     if not (1.0 / n <= p - distance and p + distance <= 1.0 - 1.0 / n):
         return undetermined(n)
-    below, above = (empirical_quantile(ordered, p + side * distance) for side in (-1.0, 1.0))
+    below, above = (ordered_quantile(ordered, p + side * distance) for side in (-1.0, 1.0))
     return Estimate(value, min(below, ends[0]), max(above, ends[1]))

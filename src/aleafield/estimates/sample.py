@@ -7,7 +7,8 @@ from functools import cached_property
 
 import numpy as np
 
-from aleafield.arrays import BoolArray, FloatArray, IntArray
+from aleafield.arrays import BoolArray, FloatArray
+from aleafield.estimates.blocks import BlockArray
 
 
 @dataclass(frozen=True, eq=False)
@@ -53,7 +54,7 @@ class Sample:
     occurs: BoolArray
     valid: BoolArray
     margin: FloatArray | None
-    replicate: IntArray
+    replicate: BlockArray
     replicates: int = 1
     certain: bool = False
 
@@ -63,7 +64,7 @@ class Sample:
         *,
         margin: FloatArray | None = None,
         valid: BoolArray | None = None,
-        replicate: IntArray | None = None,
+        replicate: BlockArray | None = None,
         replicates: int = 1,
         certain: bool = False,
     ) -> Sample:
@@ -71,8 +72,10 @@ class Sample:
         values = np.asarray(values, dtype=np.float64)
         valid = np.ones(values.shape, dtype=np.bool_) if valid is None else np.asarray(valid, dtype=np.bool_)
         occurs = valid if margin is None else valid & (margin >= 0.0)
+        label = np.int16 if replicates <= np.iinfo(np.int16).max else np.int32
         if replicate is None:
-            replicate = np.zeros(values.shape, dtype=np.int64)
+            replicate = np.zeros(values.shape, dtype=label)
+        replicate = np.asarray(replicate, dtype=label)
         return Sample(values, occurs, valid, margin, replicate, replicates, certain)
 
     def __post_init__(self) -> None:
@@ -82,18 +85,29 @@ class Sample:
         expected = self.valid if self.margin is None else self.valid & (self.margin >= 0.0)
         if not np.array_equal(self.occurs, expected):
             raise ValueError("a quantity occurs where its margin is >= 0; without a margin it always occurs")
-        if not np.isfinite(self.values[self.occurs]).all():
+        if not (np.isfinite(self.values) | ~self.occurs).all():
             raise ValueError("a value that is not finite marks a failed realization; it must not be valid")
 
     @cached_property
     def given(self) -> FloatArray:
         """The values where the quantity occurs, shape (number of them,)."""
-        return self.values[self.occurs]
+        return self.values if self.occurs.all() else self.values[self.occurs]
 
     @cached_property
-    def given_block(self) -> IntArray:
+    def given_block(self) -> BlockArray:
         """The blocks of `given`."""
-        return self.replicate[self.occurs]
+        return self.replicate if self.occurs.all() else self.replicate[self.occurs]
+
+    @cached_property
+    def ordered(self) -> FloatArray:
+        """`given`, increasing."""
+        return np.sort(self.given)
+
+    @cached_property
+    def valid_margin(self) -> FloatArray:
+        """The margins of the realizations that did not fail; needs a margin, shape (n_valid,)."""
+        assert self.margin is not None
+        return self.margin if self.valid.all() else self.margin[self.valid]
 
     @cached_property
     def n_valid(self) -> int:

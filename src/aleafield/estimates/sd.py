@@ -6,8 +6,8 @@ import math
 
 import numpy as np
 
-from aleafield.arrays import FloatArray, IntArray
-from aleafield.estimates.blocks import block_mean, student
+from aleafield.arrays import FloatArray
+from aleafield.estimates.blocks import BlockArray, block_counts, block_mean, segments, student
 from aleafield.estimates.estimate import Estimate, exact, nothing_given, undetermined
 from aleafield.estimates.sample import Sample
 
@@ -44,8 +44,9 @@ def estimate_sd(sample: Sample, confidence: float) -> Estimate:
 
     SE is the jackknife standard error of ln s (Quenouille, Tukey), leaving out one sample (plain Monte Carlo)
     or one block at a time, and t has as many degrees of freedom as samples or blocks, less one.  The
-    logarithm keeps the interval positive.  With blocks the divisor is n, see `block_factor`.  Plain Monte Carlo of a skew quantity often misses its tail, and
-    then both s and SE are too small: the upper end is s exp((t + k (2 t^2 + 1)) SE),
+    logarithm keeps the interval positive.  With blocks the divisor is n, see `block_factor`.  Plain Monte
+    Carlo of a skew quantity often misses its tail, and then both s and SE are too small: the upper end is
+    s exp((t + k (2 t^2 + 1)) SE),
 
         k = max(0, skewness of the jackknife deviations) / (6 sqrt(n)),
 
@@ -82,11 +83,12 @@ def estimate_sd(sample: Sample, confidence: float) -> Estimate:
     parts = len(variances)
     if parts < 2 or not (variances > 1e-12 * s**2).all():
         return undetermined(n, "the spread comes from one of them")
-    logarithm = 0.5 * np.log(variances)
-    deviation = logarithm - logarithm.mean()
+    deviation = np.log(variances, out=variances)
+    deviation *= 0.5
+    deviation -= deviation.mean()
     error = float(np.sqrt((parts - 1) / parts * (deviation @ deviation)))
     t = student(confidence, parts - 1)
-    upward = t + _skewness(-deviation) / (6.0 * math.sqrt(parts)) * (2.0 * t**2 + 1.0) if sample.plain else t
+    upward = t + -_skewness(deviation) / (6.0 * math.sqrt(parts)) * (2.0 * t**2 + 1.0) if sample.plain else t
     return Estimate(s, s * math.exp(-t * error), s * math.exp(max(t, upward) * error))
 
 
@@ -98,18 +100,25 @@ def _skewness(deviation: FloatArray) -> float:
 def _variances_without_one(values: FloatArray) -> FloatArray:
     """Sample variance of the others, for each of n values, shape (n,)."""
     n = len(values)
-    square = (values - values.mean()) ** 2
-    remaining: FloatArray = (square.sum() - n / (n - 1) * square) / (n - 2)
-    return remaining
+    square: FloatArray = values - values.mean()
+    square *= square
+    total = square.sum()
+    square *= n / (n - 1)
+    np.subtract(total, square, out=square)
+    square /= n - 2
+    return square
 
 
-def _variances_without_block(values: FloatArray, block: IntArray, n_blocks: int) -> FloatArray:
+def _variances_without_block(values: FloatArray, block: BlockArray, n_blocks: int) -> FloatArray:
     """Sample variance of the others, for each block that holds a value."""
-    centred = values - values.mean()
-    count = np.bincount(block, minlength=n_blocks).astype(np.float64)
+    mean = values.mean()
+    count, first, second = block_counts(block, n_blocks), np.zeros(n_blocks), np.zeros(n_blocks)
+    for cut in segments(len(values)):
+        centred = values[cut] - mean
+        np.add.at(first, block[cut], centred)
+        np.add.at(second, block[cut], centred**2)
     held = count > 0
-    first = np.bincount(block, weights=centred, minlength=n_blocks)[held]
-    second = np.bincount(block, weights=centred**2, minlength=n_blocks)[held]
+    first, second = first[held], second[held]
     rest = len(values) - count[held]
     if (rest < 2).any():
         return np.zeros(0)

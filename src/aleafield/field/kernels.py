@@ -9,7 +9,6 @@ from __future__ import annotations
 from abc import ABC, abstractmethod
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
-from typing import Self
 
 import numpy as np
 
@@ -21,6 +20,7 @@ from aleafield.field.parameter import (
     Bound,
     Parameter,
     Uncertain,
+    bound,
     is_certain,
     number,
     per_sample,
@@ -74,24 +74,28 @@ class Kernel(Bindable, ABC):
         return None
 
 
-def _broadcast(value: Bound, z: FloatArray) -> Bound:
-    return per_sample(value, z.ndim)
-
-
 @dataclass(frozen=True)
-class GaussianKernel(Kernel):
-    """strength exp(-r^2 / (2 width^2)) / (sqrt(2 pi) width)."""
+class DistanceKernel(Kernel):
+    """A kernel of the distance alone, with its integral over the line and its width."""
 
     strength: Parameter = number(ACTIVITY)
     width: Parameter = number(LENGTH, positive=True)
 
     @property
     def certain(self) -> bool:
-        return is_certain(self.strength, self.width)  # type: ignore[arg-type]
+        return is_certain(self.strength, self.width)
 
     @property
     def shift_invariant(self) -> bool:
         return True
+
+    def footprint(self) -> Bound | None:
+        return bound(self.width)
+
+
+@dataclass(frozen=True)
+class GaussianKernel(DistanceKernel):
+    """strength exp(-r^2 / (2 width^2)) / (sqrt(2 pi) width)."""
 
     @property
     def smooth(self) -> bool:
@@ -99,8 +103,8 @@ class GaussianKernel(Kernel):
 
     def matrix(self, x: FloatArray, y: FloatArray, domain: Domain) -> FloatArray:
         z = domain.distance(x, y)
-        width = _broadcast(self.width, z)  # type: ignore[arg-type]
-        strength = _broadcast(self.strength, z)  # type: ignore[arg-type]
+        width = per_sample(self.width, z.ndim)
+        strength = per_sample(self.strength, z.ndim)
         scale = strength / (np.sqrt(2 * np.pi) * width)
         total = np.exp(-0.5 * (z / width) ** 2)
         if not domain.periodic:
@@ -122,27 +126,13 @@ class GaussianKernel(Kernel):
 
     def symbol(self, k: IntArray, length: float) -> FloatArray | None:
         frequency = 2 * np.pi * k / length
-        width = per_sample(self.width, 1)  # type: ignore[arg-type]
-        return np.asarray(per_sample(self.strength, 1) * np.exp(-0.5 * (width * frequency) ** 2))  # type: ignore[arg-type]
-
-    def footprint(self) -> Bound | None:
-        return self.width  # type: ignore[return-value]
+        width = per_sample(self.width, 1)
+        return np.asarray(per_sample(self.strength, 1) * np.exp(-0.5 * (width * frequency) ** 2))
 
 
 @dataclass(frozen=True)
-class ExponentialKernel(Kernel):
+class ExponentialKernel(DistanceKernel):
     """strength exp(-r / width) / (2 width): a kink on the diagonal."""
-
-    strength: Parameter = number(ACTIVITY)
-    width: Parameter = number(LENGTH, positive=True)
-
-    @property
-    def certain(self) -> bool:
-        return is_certain(self.strength, self.width)  # type: ignore[arg-type]
-
-    @property
-    def shift_invariant(self) -> bool:
-        return True
 
     @property
     def smooth(self) -> bool:
@@ -150,8 +140,8 @@ class ExponentialKernel(Kernel):
 
     def matrix(self, x: FloatArray, y: FloatArray, domain: Domain) -> FloatArray:
         z = domain.distance(x, y)
-        width = _broadcast(self.width, z)  # type: ignore[arg-type]
-        scale = _broadcast(self.strength, z) / (2 * width)  # type: ignore[arg-type]
+        width = per_sample(self.width, z.ndim)
+        scale = per_sample(self.strength, z.ndim) / (2 * width)
         if domain.periodic:  # geometric series of the images
             total = (np.exp(-z / width) + np.exp(-(domain.length - z) / width)) / -np.expm1(
                 -domain.length / width
@@ -162,11 +152,8 @@ class ExponentialKernel(Kernel):
 
     def symbol(self, k: IntArray, length: float) -> FloatArray | None:
         frequency = 2 * np.pi * k / length
-        width = per_sample(self.width, 1)  # type: ignore[arg-type]
-        return np.asarray(per_sample(self.strength, 1) / (1 + (width * frequency) ** 2))  # type: ignore[arg-type]
-
-    def footprint(self) -> Bound | None:
-        return self.width  # type: ignore[return-value]
+        width = per_sample(self.width, 1)
+        return np.asarray(per_sample(self.strength, 1) / (1 + (width * frequency) ** 2))
 
 
 @dataclass(frozen=True)
@@ -177,7 +164,7 @@ class CosineKernel(Kernel):
 
     @property
     def certain(self) -> bool:
-        return is_certain(*self.coefficients)  # type: ignore[arg-type]
+        return is_certain(*self.coefficients)
 
     @property
     def shift_invariant(self) -> bool:
@@ -189,18 +176,15 @@ class CosineKernel(Kernel):
 
     def matrix(self, x: FloatArray, y: FloatArray, domain: Domain) -> FloatArray:
         phase = 2 * np.pi * (x - y) / domain.length
-        waves = [
-            _broadcast(a, phase) * np.cos(k * phase)  # type: ignore[arg-type]
-            for k, a in enumerate(self.coefficients)
-        ]
+        waves = [per_sample(a, phase.ndim) * np.cos(k * phase) for k, a in enumerate(self.coefficients)]
         return np.asarray(sum(waves))
 
     def symbol(self, k: IntArray, length: float) -> FloatArray | None:
-        shapes = [np.shape(a) for a in self.coefficients]  # type: ignore[arg-type]
-        total = np.zeros(np.broadcast_shapes(*shapes) + (len(k),))
+        shapes = [np.shape(bound(a)) for a in self.coefficients]
+        total = np.zeros((*np.broadcast_shapes(*shapes), len(k)))
         for order, a in enumerate(self.coefficients):
             factor = length if order == 0 else length / 2
-            total = total + per_sample(a, 1) * factor * (np.abs(k) == order)  # type: ignore[arg-type]
+            total = total + per_sample(a, 1) * factor * (np.abs(k) == order)
         return total
 
     def footprint(self) -> Bound | None:
@@ -212,12 +196,6 @@ class FormulaKernel(Kernel):
     """w(x, y) by a formula of x (target), y (source) and r (distance; on the ring the shortest); not periodised."""
 
     term: FormulaTerm
-
-    def uncertain(self, prefix: str) -> Iterator[Uncertain]:
-        return self.term.uncertain(prefix)
-
-    def bind(self, prefix: str, binding: Binding) -> Self:
-        return type(self)(self.term.bind(prefix, binding))
 
     @property
     def certain(self) -> bool:

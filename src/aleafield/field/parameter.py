@@ -92,14 +92,17 @@ class Uncertain:
 class Bindable:
     """A dataclass of model numbers: finds its laws, binds a batch, tells impossible values.
 
-    Fields made with `number` hold a Parameter or a tuple of them; fields made with `beside` hold a mapping.
+    Fields made with `number` hold a Parameter or a tuple of them; fields made with `beside` hold a mapping; a
+    field that holds another Bindable (the term of a formula) is followed under the same path.
     """
 
     def _numbers(self, prefix: str) -> Iterator[tuple[str, Any, Mapping[str, Any]]]:
         for spec in dataclasses.fields(self):  # type: ignore[arg-type]
             value = getattr(self, spec.name)
             path = f"{prefix}.{spec.name}" if prefix else spec.name
-            if "dimension" in spec.metadata:
+            if isinstance(value, Bindable):
+                yield from value._numbers(prefix)
+            elif "dimension" in spec.metadata:
                 if isinstance(value, tuple):
                     for index, entry in enumerate(value):
                         yield f"{path}.{index}", entry, spec.metadata
@@ -125,7 +128,9 @@ class Bindable:
         for spec in dataclasses.fields(self):  # type: ignore[arg-type]
             value = getattr(self, spec.name)
             path = f"{prefix}.{spec.name}" if prefix else spec.name
-            if "dimension" in spec.metadata and value is not None:
+            if isinstance(value, Bindable):
+                changes[spec.name] = value.bind(prefix, binding)
+            elif "dimension" in spec.metadata and value is not None:
                 if isinstance(value, tuple):
                     changes[spec.name] = tuple(
                         binding.resolve(f"{path}.{index}", entry) for index, entry in enumerate(value)
@@ -184,21 +189,35 @@ class Bindable:
     def impossible_samples(self, prefix: str) -> Iterator[tuple[str, int, float]]:
         """Of a bound object: (path, position in the batch, value) of values that cannot be."""
         for path, value, metadata in self._numbers(prefix):
-            if value is None or isinstance(value, Formula):
-                continue
+            if value is None or isinstance(value, Formula) or "beside" in metadata:
+                continue  # what stands beside a formula may be of any sign
             values = np.atleast_1d(np.asarray(value, dtype=np.float64))
             wrong = ~np.isfinite(values) | ((values <= 0) if metadata["positive"] else False)
             for position in np.flatnonzero(wrong):
                 yield path, int(position), float(values[position])
 
 
-def per_sample(value: Bound, extra_axes: int) -> Bound:
+def bound(value: Parameter | FloatArray) -> Bound:
+    """A number of an object that was bound, known to be a float or an (S,) array.
+
+    Raises
+    ------
+    TypeError
+        When the object was not bound: an expression or a law still stands there.
+    """
+    if isinstance(value, Formula | Law):
+        raise TypeError(f"{value.text} is not bound to a batch")
+    return value
+
+
+def per_sample(value: Parameter | FloatArray, extra_axes: int) -> Bound:
     """A bound number shaped so that it broadcasts against (S, ...) arrays with `extra_axes` further axes."""
-    if isinstance(value, float):
-        return value
-    return value.reshape(value.shape + (1,) * extra_axes)
+    number_or_array = bound(value)
+    if isinstance(number_or_array, np.ndarray):
+        return number_or_array.reshape(number_or_array.shape + (1,) * extra_axes)
+    return number_or_array
 
 
-def is_certain(*values: Bound) -> bool:
+def is_certain(*values: Parameter | FloatArray) -> bool:
     """Whether none of the bound numbers depends on the sample."""
-    return all(isinstance(value, float) for value in values)
+    return not any(isinstance(bound(value), np.ndarray) for value in values)

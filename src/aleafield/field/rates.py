@@ -4,16 +4,23 @@ from __future__ import annotations
 
 import math
 from abc import ABC, abstractmethod
-from collections.abc import Iterator
 from dataclasses import dataclass
-from typing import Literal, Self
+from typing import ClassVar, Literal
 
 import numpy as np
 from scipy.special import expit, ndtr
 
 from aleafield.arrays import FloatArray
 from aleafield.field.formula_term import FormulaTerm
-from aleafield.field.parameter import Bindable, Binding, Bound, Parameter, Uncertain, number, per_sample
+from aleafield.field.parameter import (
+    Bindable,
+    Bound,
+    Parameter,
+    as_bound,
+    bound,
+    number,
+    per_sample,
+)
 from aleafield.units import ACTIVITY, DIMENSIONLESS, PER_ACTIVITY
 
 Smoothness = Literal["smooth", "kinked", "step"]
@@ -42,66 +49,71 @@ class Rate(Bindable, ABC):
 
 
 @dataclass(frozen=True)
-class LogisticRate(Rate):
+class GainRate(Rate):
+    """maximum g(gain (u - threshold)), g rising from 0 to 1: what a subclass adds is g and its largest slope."""
+
+    gain: Parameter = number(PER_ACTIVITY, positive=True)
+    threshold: Parameter = number(ACTIVITY, default=0.0)
+    maximum: Parameter = number(DIMENSIONLESS, default=1.0)
+
+    steepest: ClassVar[float]
+
+    @staticmethod
+    @abstractmethod
+    def shape(argument: FloatArray) -> FloatArray:
+        """The function g, elementwise."""
+
+    @property
+    def smoothness(self) -> Smoothness:
+        return "smooth"
+
+    def __call__(self, u: FloatArray) -> FloatArray:
+        argument = u - per_sample(self.threshold, 1)
+        argument *= per_sample(self.gain, 1)
+        return np.asarray(self.shape(argument) * per_sample(self.maximum, 1))
+
+    def slope(self) -> Bound | None:
+        return as_bound(np.abs(bound(self.maximum) * bound(self.gain)) * self.steepest)
+
+
+@dataclass(frozen=True)
+class LogisticRate(GainRate):
     """maximum / (1 + exp(-gain (u - threshold)))."""
 
-    gain: Parameter = number(PER_ACTIVITY, positive=True)
-    threshold: Parameter = number(ACTIVITY, default=0.0)
-    maximum: Parameter = number(DIMENSIONLESS, default=1.0)
+    steepest: ClassVar[float] = 0.25
 
-    @property
-    def smoothness(self) -> Smoothness:
-        return "smooth"
-
-    def __call__(self, u: FloatArray) -> FloatArray:
-        argument = u - per_sample(self.threshold, 1)  # type: ignore[arg-type]
-        argument *= per_sample(self.gain, 1)  # type: ignore[arg-type]
-        return np.asarray(expit(argument) * per_sample(self.maximum, 1))  # type: ignore[arg-type]
-
-    def slope(self) -> Bound | None:
-        return abs(self.maximum * self.gain) / 4  # type: ignore[operator, no-any-return]
+    @staticmethod
+    def shape(argument: FloatArray) -> FloatArray:
+        """The logistic function."""
+        return np.asarray(expit(argument))
 
 
 @dataclass(frozen=True)
-class NormalOgiveRate(Rate):
+class NormalOgiveRate(GainRate):
     """maximum Phi(gain (u - threshold)), Phi the standard normal distribution function."""
 
-    gain: Parameter = number(PER_ACTIVITY, positive=True)
-    threshold: Parameter = number(ACTIVITY, default=0.0)
-    maximum: Parameter = number(DIMENSIONLESS, default=1.0)
+    steepest: ClassVar[float] = 1 / math.sqrt(2 * math.pi)
 
-    @property
-    def smoothness(self) -> Smoothness:
-        return "smooth"
-
-    def __call__(self, u: FloatArray) -> FloatArray:
-        argument = u - per_sample(self.threshold, 1)  # type: ignore[arg-type]
-        argument *= per_sample(self.gain, 1)  # type: ignore[arg-type]
-        return np.asarray(ndtr(argument) * per_sample(self.maximum, 1))  # type: ignore[arg-type]
-
-    def slope(self) -> Bound | None:
-        return abs(self.maximum * self.gain) / math.sqrt(2 * math.pi)  # type: ignore[operator, no-any-return]
+    @staticmethod
+    def shape(argument: FloatArray) -> FloatArray:
+        """The standard normal distribution function."""
+        return np.asarray(ndtr(argument))
 
 
 @dataclass(frozen=True)
-class RampRate(Rate):
+class RampRate(GainRate):
     """maximum min(1, max(0, gain (u - threshold)))."""
 
-    gain: Parameter = number(PER_ACTIVITY, positive=True)
-    threshold: Parameter = number(ACTIVITY, default=0.0)
-    maximum: Parameter = number(DIMENSIONLESS, default=1.0)
+    steepest: ClassVar[float] = 1.0
 
     @property
     def smoothness(self) -> Smoothness:
         return "kinked"
 
-    def __call__(self, u: FloatArray) -> FloatArray:
-        argument = u - per_sample(self.threshold, 1)  # type: ignore[arg-type]
-        argument *= per_sample(self.gain, 1)  # type: ignore[arg-type]
-        return np.asarray(np.clip(argument, 0.0, 1.0) * per_sample(self.maximum, 1))  # type: ignore[arg-type]
-
-    def slope(self) -> Bound | None:
-        return abs(self.maximum * self.gain)  # type: ignore[operator, no-any-return]
+    @staticmethod
+    def shape(argument: FloatArray) -> FloatArray:
+        """The ramp from 0 to 1."""
+        return np.clip(argument, 0.0, 1.0)
 
 
 @dataclass(frozen=True)
@@ -116,7 +128,7 @@ class StepRate(Rate):
         return "step"
 
     def __call__(self, u: FloatArray) -> FloatArray:
-        return np.asarray((u > per_sample(self.threshold, 1)) * per_sample(self.maximum, 1))  # type: ignore[arg-type]
+        return np.asarray((u > per_sample(self.threshold, 1)) * per_sample(self.maximum, 1))
 
     def slope(self) -> Bound | None:
         return None
@@ -138,10 +150,10 @@ class LinearRate(Rate):
         return False
 
     def __call__(self, u: FloatArray) -> FloatArray:
-        return np.asarray((u - per_sample(self.threshold, 1)) * per_sample(self.gain, 1))  # type: ignore[arg-type]
+        return np.asarray((u - per_sample(self.threshold, 1)) * per_sample(self.gain, 1))
 
     def slope(self) -> Bound | None:
-        return abs(self.gain)  # type: ignore[arg-type]
+        return as_bound(np.abs(bound(self.gain)))
 
 
 @dataclass(frozen=True)
@@ -149,12 +161,6 @@ class FormulaRate(Rate):
     """f(u) by a formula of u."""
 
     term: FormulaTerm
-
-    def uncertain(self, prefix: str) -> Iterator[Uncertain]:
-        return self.term.uncertain(prefix)
-
-    def bind(self, prefix: str, binding: Binding) -> Self:
-        return type(self)(self.term.bind(prefix, binding))
 
     @property
     def smoothness(self) -> Smoothness:

@@ -8,7 +8,7 @@ import numpy as np
 
 from aleafield.arrays import FloatArray, batch_product
 from aleafield.field.kernels import Connectivity, CosineKernel
-from aleafield.field.parameter import per_sample
+from aleafield.field.parameter import bound, per_sample
 from aleafield.field.rates import Rate, StepRate
 from aleafield.geometry import Domain
 from aleafield.operators import KernelOperator, cosine_orders
@@ -46,9 +46,9 @@ class CrossingSources(Sources):
 
     def of(self, values: FloatArray) -> FloatArray:
         """The rule of the active set times the maximum rate."""
-        threshold: float | FloatArray = self._rate.threshold  # type: ignore[assignment]
+        threshold = bound(self._rate.threshold)
         sources = crossing_weights(values, threshold, self._spacing, self._periodic)
-        sources *= per_sample(self._rate.maximum, 1)  # type: ignore[arg-type]
+        sources *= per_sample(self._rate.maximum, 1)
         return sources
 
 
@@ -128,7 +128,7 @@ class ClosedIntegral(IntegralTerm):
     def of(self, u: FloatArray) -> FloatArray:
         """Moments of the active set, times the coefficients, times the waves."""
         values = self._prolongation.apply(u)
-        threshold: float | FloatArray = self._rate.threshold  # type: ignore[assignment]
+        threshold = bound(self._rate.threshold)
         moments = active_moments(
             values, self._rule.points, threshold, self._spacing, self._domain, self._wavenumbers
         )
@@ -137,7 +137,7 @@ class ClosedIntegral(IntegralTerm):
         for k, coefficient in enumerate(self._coefficients):
             amplitudes[:, k] *= coefficient
             amplitudes[:, orders + k] *= coefficient
-        amplitudes *= per_sample(self._rate.maximum, 1)  # type: ignore[arg-type]
+        amplitudes *= per_sample(self._rate.maximum, 1)
         return batch_product(amplitudes, self._waves)
 
 
@@ -147,5 +147,5 @@ def _coefficient(kernel: Connectivity, k: int) -> float | FloatArray:
     for part in kernel.parts.values():
         assert isinstance(part, CosineKernel)
         if k < len(part.coefficients):
-            total = total + part.coefficients[k]  # type: ignore[operator]
+            total = total + bound(part.coefficients[k])
     return total

@@ -31,10 +31,12 @@ _TAIL = 1e-12
 a kink whose slope jumps by the function's size over the domain leaves about 1e-7 there."""
 
 _ACTIVITIES = (1e-6, 1e6)
-_HALVINGS = 40
-"""A cell is 1e-12 of itself afterwards; a continuous formula changes by about as little of its size there."""
+_HALVINGS = 60
+"""A cell's ends are then neighbouring numbers, beside 0 as good as that; a continuous formula hardly changes."""
 _JUMP = 1e-6
-"""Change within such a cell, as a share of the values, that counts as a jump."""
+"""Change within what is left of a cell, as a share of the values at its ends, that counts as a jump."""
+_NOTHING = 1e-200
+"""Values of this size are underflow."""
 
 _PLACES = (0.1370, 0.4142, 0.8090)
 """Positions, as shares of the length, at which a kernel is looked at: no nodes of common meshes."""
@@ -102,14 +104,15 @@ def _jumps(rate: Rate) -> bool:
     low, high = ends[:-1], ends[1:]
     with np.errstate(all="ignore"):
         at_low, at_high = rate(low[None, :])[0], rate(high[None, :])[0]
+        size = np.abs(at_low) + np.abs(at_high)
         for _ in range(_HALVINGS):
             middle = 0.5 * (low + high)
             at_middle = rate(middle[None, :])[0]
             left: BoolArray = np.abs(at_middle - at_low) >= np.abs(at_high - at_middle)
             low, high = np.where(left, low, middle), np.where(left, middle, high)
             at_low, at_high = np.where(left, at_low, at_middle), np.where(left, at_middle, at_high)
-        change, size = np.abs(at_high - at_low), np.abs(at_low) + np.abs(at_high)
-    return bool(np.any(change > _JUMP * size))
+        change = np.abs(at_high - at_low)
+    return bool(np.any(change > _JUMP * size + _NOTHING))
 
 
 def initial_is_smooth(equation: FieldEquation) -> bool:

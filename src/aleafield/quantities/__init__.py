@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
-
 from aleafield.quantities.active_width import ActiveWidth
 from aleafield.quantities.averages import Integral, Mean, Norm
 from aleafield.quantities.extrema import Maximum, Minimum, PeakPosition
@@ -15,28 +13,7 @@ from aleafield.quantities.point_value import Value
 from aleafield.quantities.quantity import At, Observer, Over, Quantity, Reduction, When
 from aleafield.quantities.spectral_power import SpectralPower
 
-MEASURES: Mapping[str, type[Quantity]] = {
-    measure.measure: measure
-    for measure in (
-        Value,
-        Mean,
-        Maximum,
-        Minimum,
-        PeakPosition,
-        Norm,
-        Integral,
-        ActiveWidth,
-        FrontPosition,
-        FrontSpeed,
-        TimeToLevel,
-        SpectralPower,
-        FormulaQuantity,
-    )
-}
-"""Name of a measure in the study file -> class."""
-
 __all__ = [
-    "MEASURES",
     "ActiveWidth",
     "At",
     "FormulaQuantity",

@@ -12,7 +12,7 @@ from aleafield.quantities.margins import margin_above
 from aleafield.quantities.quantity import At, When
 from aleafield.quantities.timed import TimedQuantity
 from aleafield.spaces import Space
-from aleafield.units import ACTIVITY, LENGTH, Dimension
+from aleafield.units import ACTIVITY, LENGTH
 
 
 @dataclass(frozen=True)
@@ -33,19 +33,11 @@ class ActiveWidth(TimedQuantity):
     """
 
     measure = "active width"
+    dimension = LENGTH
+    may_not_occur = True
     name: str
     level: Parameter = number(ACTIVITY)
     when: When = At()
-
-    @property
-    def dimension(self) -> Dimension:
-        """The unit of length."""
-        return LENGTH
-
-    @property
-    def may_not_occur(self) -> bool:
-        """True: the level may lie above the whole field."""
-        return True
 
     def reading(self, space: Space) -> Reading:
         """Width and largest value less level."""

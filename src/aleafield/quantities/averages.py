@@ -2,57 +2,40 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from collections.abc import Callable
 
 import numpy as np
 
-from aleafield.quantities.in_time import Reading
-from aleafield.quantities.quantity import At, When
-from aleafield.quantities.timed import TimedQuantity
+from aleafield.arrays import FloatArray
+from aleafield.quantities.timed import WholeFieldQuantity
 from aleafield.spaces import Space
-from aleafield.units import ACTIVITY, Dimension
+from aleafield.units import ACTIVITY
 
 
-@dataclass(frozen=True)
-class Integral(TimedQuantity):
+class Integral(WholeFieldQuantity):
     """Integral of u over the domain."""
 
     measure = "integral"
-    name: str
-    when: When = At()
+    dimension = (1, 1, 0)
 
-    @property
-    def dimension(self) -> Dimension:
-        """Activity times length."""
-        return (1, 1, 0)
-
-    def reading(self, space: Space) -> Reading:
+    def number(self, space: Space) -> Callable[[FloatArray], FloatArray]:
         """The integral of the element."""
-        weights = space.integral_weights
-        return Reading(lambda u, t, inside: ((u * weights).sum(axis=-1), None))
+        return lambda u: (u * space.integral_weights).sum(axis=-1)
 
 
-@dataclass(frozen=True)
-class Mean(TimedQuantity):
+class Mean(WholeFieldQuantity):
     """Integral of u divided by the size of the domain."""
 
     measure = "mean"
-    name: str
-    when: When = At()
+    dimension = ACTIVITY
 
-    @property
-    def dimension(self) -> Dimension:
-        """The unit of activity."""
-        return ACTIVITY
-
-    def reading(self, space: Space) -> Reading:
+    def number(self, space: Space) -> Callable[[FloatArray], FloatArray]:
         """The mean of the element."""
         weights = space.integral_weights / space.domain.length
-        return Reading(lambda u, t, inside: ((u * weights).sum(axis=-1), None))
+        return lambda u: (u * weights).sum(axis=-1)
 
 
-@dataclass(frozen=True)
-class Norm(TimedQuantity):
+class Norm(WholeFieldQuantity):
     """Square root of the integral of u^2.
 
     Lengths are counted in the study's unit: the norm is that of u as a function of the pure number x / unit,
@@ -61,14 +44,8 @@ class Norm(TimedQuantity):
     """
 
     measure = "norm"
-    name: str
-    when: When = At()
+    dimension = ACTIVITY
 
-    @property
-    def dimension(self) -> Dimension:
-        """The unit of activity."""
-        return ACTIVITY
-
-    def reading(self, space: Space) -> Reading:
+    def number(self, space: Space) -> Callable[[FloatArray], FloatArray]:
         """The norm of the element."""
-        return Reading(lambda u, t, inside: (np.sqrt(space.square_integral(u)), None))
+        return lambda u: np.sqrt(space.square_integral(u))

@@ -10,7 +10,7 @@ from aleafield.arrays import BoolArray, FloatArray, IntArray
 from aleafield.geometry import Domain
 from aleafield.quantities.peaks import highest_of, local_maxima, refined_summits, resolution
 from aleafield.quantities.roots import bracketed_roots
-from aleafield.spaces import PiecewiseLinear, Space
+from aleafield.spaces import Space, SpectralSpace
 
 
 @dataclass(frozen=True)
@@ -69,9 +69,9 @@ def level_crossings(space: Space, u: FloatArray, level: float | FloatArray) -> C
     level : float or array (S,)
     """
     column = np.broadcast_to(np.asarray(level, dtype=np.float64), (u.shape[0],))[:, None]
-    if isinstance(space, PiecewiseLinear):
-        return _piecewise_linear(space, np.take(u, space.display_order, axis=1), column)
-    return _smooth(space, u, column)
+    if isinstance(space, SpectralSpace):
+        return _smooth(space, u, column)
+    return _piecewise_linear(space, np.take(u, space.display_order, axis=1), column)
 
 
 def _closed(grid: FloatArray, values: FloatArray, domain: Domain) -> tuple[FloatArray, FloatArray]:
@@ -106,7 +106,7 @@ def _piecewise_linear(space: Space, nodal: FloatArray, column: FloatArray) -> Cr
     )
 
 
-def _smooth(space: Space, u: FloatArray, column: FloatArray) -> Crossings:
+def _smooth(space: SpectralSpace, u: FloatArray, column: FloatArray) -> Crossings:
     domain = space.domain
     on_grid = space.evaluate(u, space.search_grid)
     grid, values = _closed(space.search_grid, on_grid, domain)
@@ -134,12 +134,11 @@ def _smooth(space: Space, u: FloatArray, column: FloatArray) -> Crossings:
     over = np.concatenate((higher, tops_at, cells_of_pits))
     under = np.concatenate((lower, cells_of_tops, pits_at))
     level = column[owner, 0]
-    rows = u[owner]
+    jets = space.jets(u[owner])
 
     def above_level(which: IntArray, x: FloatArray) -> tuple[FloatArray, FloatArray]:
-        chosen, place = rows[which], x[:, None]
-        value, slope = space.derivatives_each(chosen, place, (0, 1))
-        return value[:, 0] - level[which], slope[:, 0]
+        value, slope, _ = jets(which, x)
+        return value - level[which], slope
 
     start = np.concatenate((chord, 0.5 * (over + under)[len(chord) :]))
     position = bracketed_roots(above_level, over, under, start, resolution(domain))

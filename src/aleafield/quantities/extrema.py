@@ -2,53 +2,40 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
 
 from aleafield.arrays import FloatArray
-from aleafield.quantities.in_time import Reading
+from aleafield.quantities.in_time import Reading, plain
 from aleafield.quantities.peaks import peak
 from aleafield.quantities.quantity import At, When
-from aleafield.quantities.timed import TimedQuantity
+from aleafield.quantities.timed import TimedQuantity, WholeFieldQuantity
 from aleafield.spaces import Space
-from aleafield.units import ACTIVITY, LENGTH, Dimension
+from aleafield.units import ACTIVITY, LENGTH
 
 
-@dataclass(frozen=True)
-class Maximum(TimedQuantity):
+class Maximum(WholeFieldQuantity):
     """Largest value in space: by a parabola through three nodes if piecewise linear, else of the element."""
 
     measure = "maximum"
-    name: str
-    when: When = At()
+    dimension = ACTIVITY
 
-    @property
-    def dimension(self) -> Dimension:
-        """The unit of activity."""
-        return ACTIVITY
-
-    def reading(self, space: Space) -> Reading:
+    def number(self, space: Space) -> Callable[[FloatArray], FloatArray]:
         """The height of the peak."""
-        return Reading(lambda u, t, inside: (peak(space, u).height, None))
+        return lambda u: peak(space, u).height
 
 
-@dataclass(frozen=True)
-class Minimum(TimedQuantity):
+class Minimum(WholeFieldQuantity):
     """Smallest value in space, located as the maximum of -u is."""
 
     measure = "minimum"
-    name: str
-    when: When = At()
+    dimension = ACTIVITY
 
-    @property
-    def dimension(self) -> Dimension:
-        """The unit of activity."""
-        return ACTIVITY
-
-    def reading(self, space: Space) -> Reading:
+    def number(self, space: Space) -> Callable[[FloatArray], FloatArray]:
         """Minus the height of the peak of -u."""
-        return Reading(lambda u, t, inside: (-peak(space, -u).height, None))
+        return lambda u: -peak(space, -u).height
 
 
 @dataclass(frozen=True)
@@ -66,25 +53,17 @@ class PeakPosition(TimedQuantity):
     """
 
     measure = "peak position"
+    dimension = LENGTH
+    is_peak_position = True
     name: str
     reference: float | None = None
     when: When = At()
-
-    @property
-    def dimension(self) -> Dimension:
-        """The unit of length."""
-        return LENGTH
-
-    @property
-    def is_peak_position(self) -> bool:
-        """True: its error is judged by the rule for positions of a peak."""
-        return True
 
     def reading(self, space: Space) -> Reading:
         """The position of the peak."""
         domain, reference = space.domain, self.reference
         if not domain.periodic:
-            return Reading(lambda u, t, inside: (peak(space, u).position, None))
+            return plain(lambda u: peak(space, u).position)
         about = 0.0 if reference is None else reference
 
         def unwrapped(u: FloatArray, t: float, inside: float | None) -> tuple[FloatArray, None]:

@@ -14,7 +14,7 @@ from aleafield.quantities.point import PointEvaluation, off_the_nodes, refuse_ou
 from aleafield.quantities.quantity import Observer, Quantity
 from aleafield.spaces import Space
 from aleafield.stepping.view import StepView
-from aleafield.units import ACTIVITY, TIME, Dimension
+from aleafield.units import ACTIVITY, TIME
 
 
 @dataclass(frozen=True)
@@ -35,19 +35,11 @@ class TimeToLevel(Quantity):
     """
 
     measure = "time to level"
+    dimension = TIME
+    may_not_occur = True
     name: str
     level: Parameter = number(ACTIVITY)
     at: float = 0.0
-
-    @property
-    def dimension(self) -> Dimension:
-        """The unit of time."""
-        return TIME
-
-    @property
-    def may_not_occur(self) -> bool:
-        """True: the level may never be reached."""
-        return True
 
     def refuse_domain(self, domain: Domain) -> None:
         """Raise InputError where the point lies outside."""

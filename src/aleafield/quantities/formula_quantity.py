@@ -2,16 +2,15 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator
-from dataclasses import dataclass, replace
-from typing import Literal, Self, get_args
+from collections.abc import Callable
+from dataclasses import dataclass
+from typing import Literal, get_args
 
 import numpy as np
 
 from aleafield.arrays import FloatArray
 from aleafield.errors import InputError
 from aleafield.field.formula_term import FormulaTerm
-from aleafield.field.parameter import Binding, Uncertain
 from aleafield.geometry import Domain, Interval
 from aleafield.quadrature import composite_gauss, gauss_legendre, periodic_trapezoid
 from aleafield.quantities.in_time import Reading
@@ -20,7 +19,7 @@ from aleafield.quantities.point import PointEvaluation, off_the_nodes, refuse_ou
 from aleafield.quantities.quantity import At, When
 from aleafield.quantities.timed import TimedQuantity
 from aleafield.spaces import PiecewiseLinear, Space
-from aleafield.units import DIMENSIONLESS, Dimension
+from aleafield.units import DIMENSIONLESS
 
 InSpace = Literal["mean", "maximum", "integral", "value"]
 Pointwise = Callable[[FloatArray, FloatArray], FloatArray]
@@ -62,6 +61,7 @@ class FormulaQuantity(TimedQuantity):
     """
 
     measure = "formula"
+    dimension = DIMENSIONLESS
     name: str
     term: FormulaTerm
     in_space: InSpace = "mean"
@@ -75,19 +75,6 @@ class FormulaQuantity(TimedQuantity):
         if (self.in_space == "value") != (self.at is not None):
             found = "no point given" if self.at is None else f"{self.at:g} given"
             raise InputError(self.key("at"), found, "`at` and in_space = 'value' go together")
-
-    @property
-    def dimension(self) -> Dimension:
-        """None that is known."""
-        return DIMENSIONLESS
-
-    def uncertain(self, prefix: str) -> Iterator[Uncertain]:
-        """The laws beside the formula."""
-        return self.term.uncertain(prefix)
-
-    def bind(self, prefix: str, binding: Binding) -> Self:
-        """With numbers in place of the laws beside the formula."""
-        return replace(self, term=self.term.bind(prefix, binding))
 
     def refuse_domain(self, domain: Domain) -> None:
         """Raise InputError where the point lies outside."""

@@ -18,7 +18,7 @@ from aleafield.quantities.quantity import At, Observer, Quantity, When
 from aleafield.quantities.timed import TimedQuantity
 from aleafield.spaces import Space
 from aleafield.stepping.view import StepView
-from aleafield.units import ACTIVITY, LENGTH, SPEED, Dimension
+from aleafield.units import ACTIVITY, LENGTH, SPEED
 
 Side = Literal["right", "left"]
 
@@ -68,20 +68,12 @@ class FrontPosition(TimedQuantity):
     """
 
     measure = "front position"
+    dimension = LENGTH
+    may_not_occur = True
     name: str
     level: Parameter = number(ACTIVITY)
     side: Side = "right"
     when: When = At()
-
-    @property
-    def dimension(self) -> Dimension:
-        """The unit of length."""
-        return LENGTH
-
-    @property
-    def may_not_occur(self) -> bool:
-        """True: there may be no crossing, or the front may have left the interval."""
-        return True
 
     def refuse_domain(self, domain: Domain) -> None:
         """Raise InputError on a ring."""
@@ -107,20 +99,12 @@ class FrontSpeed(Quantity):
     """
 
     measure = "front speed"
+    dimension = SPEED
+    may_not_occur = True
     name: str
     level: Parameter = number(ACTIVITY)
     between: tuple[float, float] = (0.0, 1.0)
     side: Side = "right"
-
-    @property
-    def dimension(self) -> Dimension:
-        """Length over time."""
-        return SPEED
-
-    @property
-    def may_not_occur(self) -> bool:
-        """True: a position may not occur."""
-        return True
 
     def refuse_domain(self, domain: Domain) -> None:
         """Raise InputError on a ring."""

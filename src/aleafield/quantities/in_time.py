@@ -64,6 +64,11 @@ class Reading:
         return values, None if margins is None else np.where(finite, margins, np.nan)
 
 
+def plain(number: Callable[[FloatArray], FloatArray]) -> Reading:
+    """The reading of a number (S,) of states (S, n) that always occurs and does not depend on the time."""
+    return Reading(lambda u, t, inside: (number(u), None))
+
+
 class Clock:
     """Tells times of one schedule apart.
 

@@ -9,7 +9,7 @@ import numpy as np
 from aleafield.arrays import BoolArray, FloatArray, IntArray
 from aleafield.geometry import Domain
 from aleafield.quantities.roots import bracketed_roots
-from aleafield.spaces import PiecewiseLinear, Space
+from aleafield.spaces import Space, SpectralSpace
 
 _AGREEMENT = 4.0
 """Second differences whose ratio is at most this agree: those of a smooth peak differ by O(h) of themselves."""
@@ -117,7 +117,7 @@ def local_maxima(values: FloatArray, periodic: bool) -> tuple[BoolArray, FloatAr
 
 
 def refined_summits(
-    space: Space, u: FloatArray, values: FloatArray, eligible: BoolArray, sign: float = 1.0
+    space: SpectralSpace, u: FloatArray, values: FloatArray, eligible: BoolArray, sign: float = 1.0
 ) -> Summits:
     """Local maxima of sign * u beside the chosen points of the search grid, to near rounding.
 
@@ -126,8 +126,7 @@ def refined_summits(
 
     Parameters
     ----------
-    space : Space
-        Not piecewise linear.
+    space : SpectralSpace
     u : float array (S, n), finite
     values : float array (S, P)
         sign * u on the search grid.
@@ -144,17 +143,19 @@ def refined_summits(
     else:
         before[0], after[-1] = grid[0], grid[-1]
     sample, point = np.nonzero(eligible)
-    rows = u[sample]
+    jets, every = space.jets(u[sample]), np.arange(len(sample))
     at = grid[point]
-    rising = sign * space.differentiate_each(rows, at[:, None])[:, 0] > 0
+    rising = sign * jets(every, at)[1] > 0
     left, right = np.where(rising, at, before[point]), np.where(rising, after[point], at)
 
-    def slope(which: IntArray, x: FloatArray) -> tuple[FloatArray, FloatArray]:
-        chosen, place = rows[which], x[:, None]
-        first, second = space.derivatives_each(chosen, place, (1, 2))
-        return sign * first[:, 0], sign * second[:, 0]
-
     grid_height = values[sample, point]
+    found = grid_height.copy()
+
+    def slope(which: IntArray, x: FloatArray) -> tuple[FloatArray, FloatArray]:
+        value, first, second = jets(which, x)
+        found[which] = sign * value  # in the end that of the last place: so near the root it is the same
+        return sign * first, sign * second
+
     start = _vertex(
         before[point] - at,
         values[sample, point - 1] - grid_height,
@@ -163,7 +164,6 @@ def refined_summits(
     )
     start = np.where(np.isfinite(start), np.clip(at + start, left, right), 0.5 * (left + right))
     position = bracketed_roots(slope, left, right, start, resolution(space.domain))
-    found = sign * space.evaluate_each(rows, position[:, None])[:, 0]
     better = found > grid_height  # rounding, or a slope with several roots in the cell
     height, position = np.where(better, found, grid_height), np.where(better, position, at)
     return Summits(sample, left, right, position, height, grid_height)
@@ -194,7 +194,7 @@ def peak(space: Space, u: FloatArray) -> Peak:
     maximum of the search grid that may rise above the highest grid value is refined, so that of two nearly
     equal peaks the higher one is found.
     """
-    if isinstance(space, PiecewiseLinear):
+    if not isinstance(space, SpectralSpace):
         return parabolic_peak(np.take(u, space.display_order, axis=1), space.search_grid, space.domain)
     grid = space.search_grid
     values = space.evaluate(u, grid)

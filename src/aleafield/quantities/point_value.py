@@ -5,12 +5,12 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 from aleafield.geometry import Domain
-from aleafield.quantities.in_time import Reading
+from aleafield.quantities.in_time import Reading, plain
 from aleafield.quantities.point import PointEvaluation, off_the_nodes, refuse_outside
 from aleafield.quantities.quantity import At, When
 from aleafield.quantities.timed import TimedQuantity
 from aleafield.spaces import Space
-from aleafield.units import ACTIVITY, Dimension
+from aleafield.units import ACTIVITY
 
 
 @dataclass(frozen=True)
@@ -26,14 +26,10 @@ class Value(TimedQuantity):
     """
 
     measure = "value"
+    dimension = ACTIVITY
     name: str
     at: float
     when: When = At()
-
-    @property
-    def dimension(self) -> Dimension:
-        """The unit of activity."""
-        return ACTIVITY
 
     def refuse_domain(self, domain: Domain) -> None:
         """Raise InputError where the point lies outside."""
@@ -41,8 +37,7 @@ class Value(TimedQuantity):
 
     def reading(self, space: Space) -> Reading:
         """The element's value at the point."""
-        evaluate = PointEvaluation(space, self.at)
-        return Reading(lambda u, t, inside: (evaluate(u), None))
+        return plain(PointEvaluation(space, self.at))
 
     def off_the_nodes(self, spaces: tuple[Space, ...]) -> bool:
         """Whether the point is not a node of each piecewise-linear space."""

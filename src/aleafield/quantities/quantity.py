@@ -68,26 +68,16 @@ class Quantity(Bindable, ABC):
         Name of the measure in the study file.
     dimension : exponents of (activity, length, time)
     may_not_occur : bool
-        Whether there are samples for which the quantity has no value.
+        Whether there may be samples for which the quantity has no value (a level never reached).
+    is_peak_position : bool
+        Whether the error of this quantity follows the rule for positions of a peak.
     """
 
     name: str
     measure: ClassVar[str]
-
-    @property
-    @abstractmethod
-    def dimension(self) -> Dimension:
-        """Exponents of (activity, length, time)."""
-
-    @property
-    def may_not_occur(self) -> bool:
-        """Whether the quantity may have no value (a level never reached)."""
-        return False
-
-    @property
-    def is_peak_position(self) -> bool:
-        """Whether the error of this quantity follows the rule for positions of a peak."""
-        return False
+    dimension: Dimension
+    may_not_occur: ClassVar[bool] = False
+    is_peak_position: ClassVar[bool] = False
 
     def within_run(self, entry: str, time: float, duration: float) -> float:
         """The time, if it lies in [0, duration]; InputError otherwise."""

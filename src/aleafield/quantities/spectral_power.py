@@ -4,14 +4,15 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
+import numpy as np
+
 from aleafield.arrays import FloatArray
 from aleafield.errors import InputError
 from aleafield.geometry import Domain
-from aleafield.quantities.in_time import Reading
+from aleafield.quantities.in_time import Reading, plain
 from aleafield.quantities.quantity import At, When
 from aleafield.quantities.timed import TimedQuantity
 from aleafield.spaces import Space
-from aleafield.units import Dimension
 
 
 @dataclass(frozen=True)
@@ -27,14 +28,10 @@ class SpectralPower(TimedQuantity):
     """
 
     measure = "spectral power"
+    dimension = (2, 0, 0)
     name: str
     wavenumber: int
     when: When = At()
-
-    @property
-    def dimension(self) -> Dimension:
-        """Activity squared."""
-        return (2, 0, 0)
 
     def refuse_domain(self, domain: Domain) -> None:
         """Raise InputError on an interval."""
@@ -44,8 +41,8 @@ class SpectralPower(TimedQuantity):
     def reading(self, space: Space) -> Reading:
         """Squared modulus of the Fourier coefficient."""
 
-        def power(u: FloatArray, t: float, inside: float | None) -> tuple[FloatArray, None]:
+        def power(u: FloatArray) -> FloatArray:
             coefficient = space.fourier_coefficient(u, self.wavenumber)
-            return coefficient.real**2 + coefficient.imag**2, None
+            return np.asarray(coefficient.real**2 + coefficient.imag**2)
 
-        return Reading(power)
+        return plain(power)

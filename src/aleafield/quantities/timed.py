@@ -3,10 +3,13 @@
 from __future__ import annotations
 
 from abc import abstractmethod
+from collections.abc import Callable
+from dataclasses import dataclass
 from typing import get_args
 
+from aleafield.arrays import FloatArray
 from aleafield.errors import InputError
-from aleafield.quantities.in_time import Reading, observe
+from aleafield.quantities.in_time import Reading, observe, plain
 from aleafield.quantities.quantity import At, Observer, Quantity, Reduction, When
 from aleafield.spaces import Space
 
@@ -48,3 +51,25 @@ class TimedQuantity(Quantity):
         """A snapshot or a window over the reading."""
         self.refuse_domain(space.domain)
         return observe(self.when, self.reading(space), duration)
+
+
+@dataclass(frozen=True)
+class WholeFieldQuantity(TimedQuantity):
+    """A quantity of the whole field that needs nothing but a name and a time, and always occurs.
+
+    Parameters
+    ----------
+    name : str
+    when : At or Over
+    """
+
+    name: str
+    when: When = At()
+
+    @abstractmethod
+    def number(self, space: Space) -> Callable[[FloatArray], FloatArray]:
+        """What the quantity is of states (S, n) of `space`; shape (S,)."""
+
+    def reading(self, space: Space) -> Reading:
+        """The number as it stands."""
+        return plain(self.number(space))

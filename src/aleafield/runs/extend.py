@@ -19,6 +19,9 @@ from aleafield.sampling.allocation import extended
 from aleafield.study.impossible import refuse_impossible_samples
 from aleafield.study.study import Study
 
+MOST_SAMPLES = 1_000_000_000
+"""As many as a study file may ask for."""
+
 
 def extend(
     folder: Path | str,
@@ -52,6 +55,8 @@ def extend(
     """
     if samples < 1:
         raise InputError("samples", f"{samples} given", "at least one sample more is needed")
+    if samples > MOST_SAMPLES:
+        raise InputError("samples", f"{samples} given", f"at most {MOST_SAMPLES:,} more are possible")
     layout = Layout(Path(folder))
     plan = read_plan(layout)
     study = stored_study(layout, plan) if study is None else study

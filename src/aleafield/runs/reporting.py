@@ -42,7 +42,7 @@ def report_data(study: Study, plan: Plan, summary: Mapping[str, Any], reader: En
         measures={quantity.name: quantity.measure for quantity in study.quantities},
         model=model_text(study, plan),
         provenance=Provenance(study.seed, study.digest, plan.versions),
-        values={name: reader.values(name)[:MOST_VALUES] for name in reader.quantities},
+        values={name: reader.values(name)[:MOST_VALUES].copy() for name in reader.quantities},
         fields=_fields(reader),
     )
 

@@ -28,7 +28,7 @@ class Stability:
     largest_step : float
         Units of time; below it no mode of the linearised field grows by the method's own doing.
     gain : float or None
-        Largest slope of the rate times largest row sum of |kernel|; None where the slope is not known: then
+        Largest slope of the rate times a sampled largest row sum of |kernel|; None where the slope is not known: then
         the bound is that of the decay -u / time_constant alone.
     time_constant : float
         The smallest one.

@@ -102,7 +102,9 @@ def _mesh(path: tuple[PathPart, ...]) -> tuple[PathPart, ...]:
     Where they fall differently the sum has no order of its own, and nothing bounds it.
     """
     parts = {part.name: part for part in path}
-    quadrature, space = parts["quadrature"], parts["space"]
+    quadrature, space = parts.get("quadrature"), parts.get("space")
+    if quadrature is None or space is None:
+        return ()
     alike = quadrature.expected_order == space.expected_order
     if not alike or quadrature.observed_only != space.observed_only:
         return ()

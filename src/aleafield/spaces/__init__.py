@@ -9,6 +9,7 @@ from aleafield.spaces.named import make_space, nodes_refinement
 from aleafield.spaces.piecewise_linear import PiecewiseLinear
 from aleafield.spaces.prolongation import Prolongation
 from aleafield.spaces.space import Space
+from aleafield.spaces.spectral import SpectralSpace
 
 __all__ = [
     "Chebyshev",
@@ -17,6 +18,7 @@ __all__ = [
     "PiecewiseLinear",
     "Prolongation",
     "Space",
+    "SpectralSpace",
     "make_space",
     "nodes_refinement",
 ]

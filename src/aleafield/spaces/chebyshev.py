@@ -11,7 +11,8 @@ from aleafield.arrays import FloatArray
 from aleafield.geometry import Domain, Interval, Refinement
 from aleafield.quadrature import Rule, clenshaw_curtis, extremal_points, gauss_legendre
 from aleafield.spaces.prolongation import Prolongation
-from aleafield.spaces.space import Space, agree, apply_each
+from aleafield.spaces.space import agree, apply_each
+from aleafield.spaces.spectral import SpectralSpace
 
 _TRANSFORM_PAYS = 2**19
 """n P above which two cosine transforms cost less than a matrix product, from our own trials."""
@@ -37,7 +38,7 @@ class CosineProlongation(Prolongation):
         return np.asarray(dct(padded, type=1, axis=-1))
 
 
-class Chebyshev(Space):
+class Chebyshev(SpectralSpace):
     """Polynomials of degree n - 1; the unknowns are the values at the n extremal points, ascending.
 
     Interpolation converges faster than any power for analytic functions and like n^-k in the sup norm for
@@ -111,20 +112,20 @@ class Chebyshev(Space):
         """Derivatives of the Lagrange polynomials at x (P,); shape (P, n)."""
         return self._cardinal(x) @ self._differentiation(order)
 
-    def evaluate_each(self, u: FloatArray, x: FloatArray) -> FloatArray:
-        """Barycentric interpolation of u (S, n) at x (S, P); shape (S, P)."""
-        return apply_each(self._cardinal(x), u)
+    def _profiles(self, x: FloatArray) -> FloatArray:
+        """Lagrange polynomials of the nodes, by the barycentric formula."""
+        return self._cardinal(x)
 
-    def differentiate_each(self, u: FloatArray, x: FloatArray, order: int = 1) -> FloatArray:
-        """The derivative's nodal values, interpolated at x (S, P); shape (S, P)."""
-        return apply_each(self._cardinal(x), apply_each(self._differentiation(order), u))
+    def _amplitudes(self, u: FloatArray, order: int) -> FloatArray:
+        """The derivative's nodal values."""
+        return u if order == 0 else apply_each(self._differentiation(order), u)
 
     def square_integral(self, u: FloatArray) -> FloatArray:
         """By n Gauss points, exact for the square, whose degree is 2n - 2; shape (S,)."""
         values = self.evaluate(u, self._gauss.points)
         return np.asarray((values * values * self._gauss.weights).sum(axis=-1))
 
-    @property
+    @cached_property
     def search_grid(self) -> FloatArray:
         """4n - 3 extremal points: they hold the nodes and crowd at the ends, as zeros of polynomials do."""
         return extremal_points(self._interval, 4 * self.n - 3)

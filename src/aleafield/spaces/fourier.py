@@ -2,13 +2,15 @@
 
 from __future__ import annotations
 
+from functools import cached_property
+
 import numpy as np
 import scipy.fft
 
 from aleafield.arrays import ComplexArray, FloatArray, IntArray
 from aleafield.geometry import Domain, Refinement, Ring, ring_grid
 from aleafield.spaces.prolongation import Prolongation
-from aleafield.spaces.space import Space, apply_each
+from aleafield.spaces.spectral import Jets, SpectralSpace
 
 _TRANSFORM_PAYS = 2**15
 """n P above which two Fourier transforms cost less than a matrix product, from our own trials."""
@@ -40,7 +42,7 @@ class PaddedFourierProlongation(Prolongation):
         return values if self._order is None else values[:, self._order]
 
 
-class Fourier(Space):
+class Fourier(SpectralSpace):
     """Trigonometric polynomials with n modes; the unknowns are the values at j length / n, j = 0 .. n - 1.
 
     For odd n the modes are 1 and the cosines and sines up to (n - 1)/2; for even n those up to n/2 - 1 and
@@ -99,29 +101,57 @@ class Fourier(Space):
         waves = np.exp(2j * np.pi / self._ring.length * np.outer(self._ring.wrap(x), self._waves))
         return np.ascontiguousarray(((waves * self._factor(order)) @ self._analysis()).real)
 
-    def evaluate_each(self, u: FloatArray, x: FloatArray) -> FloatArray:
-        """Values of u (S, n) at x (S, P); shape (S, P)."""
-        return self.derivatives_each(u, x, (0,))[0]
+    def _amplitudes(self, u: FloatArray, order: int) -> FloatArray:
+        """Factors of the cosines, then of the sines."""
+        spectrum = np.fft.rfft(u, axis=-1) * self._factor(order)
+        return np.concatenate((spectrum.real, -spectrum.imag), axis=-1)
 
-    def differentiate_each(self, u: FloatArray, x: FloatArray, order: int = 1) -> FloatArray:
-        """Derivatives of u (S, n) at x (S, P); shape (S, P)."""
-        return self.derivatives_each(u, x, (order,))[0]
+    def _profiles(self, x: FloatArray) -> FloatArray:
+        """cos(2 pi k x / length), k = 0 .. n // 2, then the sines.
 
-    def derivatives_each(
-        self, u: FloatArray, x: FloatArray, orders: tuple[int, ...]
-    ) -> tuple[FloatArray, ...]:
-        """Derivatives of several orders of u (S, n) at the same x (S, P), each (S, P): one spectrum, one set of
-        waves."""
-        finite = np.isfinite(x)
-        place = self._ring.wrap(np.where(finite, x, 0.0))
-        cosines, sines = _waves_at((2.0 * np.pi / self._ring.length) * place, len(self._waves))
-        spectrum = np.fft.rfft(u, axis=-1)
-        found = []
-        for order in orders:
-            part = spectrum * self._factor(order)
-            values = apply_each(cosines, part.real) - apply_each(sines, part.imag)
-            found.append(np.where(finite, values, np.nan))
-        return tuple(found)
+        From the first of them by the addition theorems, the number known doubled each time: errors grow with
+        k as those of the products k x do.  Only sums and products of single numbers, so that no bit depends
+        on the shape.
+        """
+        count = len(self._waves)
+        waves = np.empty((*x.shape, 2 * count))
+        cosines, sines = waves[..., :count], waves[..., count:]
+        cosines[..., 0], sines[..., 0] = 1.0, 0.0
+        with np.errstate(invalid="ignore"):
+            angle = (2.0 * np.pi / self._ring.length) * self._ring.wrap(x)
+            if count > 1:
+                cosines[..., 1], sines[..., 1] = np.cos(angle), np.sin(angle)
+        known = 2
+        while known < count:
+            more = min(known - 1, count - known)
+            low, high, new = slice(1, more + 1), slice(known - 1, known), slice(known, known + more)
+            cosines[..., new] = cosines[..., low] * cosines[..., high] - sines[..., low] * sines[..., high]
+            sines[..., new] = cosines[..., low] * sines[..., high] + sines[..., low] * cosines[..., high]
+            known += more
+        waves[~np.isfinite(x)] = np.nan
+        return waves
+
+    def jets(self, u: FloatArray) -> Jets:
+        """With the modes at a point for all orders: a derivative turns a mode and multiplies it."""
+        spectrum = np.fft.rfft(u, axis=-1) * self._factor(0)
+        real, imaginary = spectrum.real.copy(), spectrum.imag.copy()
+        wavenumbers = (2.0 * np.pi / self._ring.length) * self._waves
+        count = len(self._waves)
+
+        def at(which: IntArray, x: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
+            every = len(which) == len(real)
+            a, b = (real, imaginary) if every else (real[which], imaginary[which])
+            waves = self._profiles(x)
+            cosines, sines = waves[:, :count], waves[:, count:]
+            modes = cosines * a - sines * b
+            slopes = cosines * b
+            slopes += sines * a
+            slopes *= wavenumbers
+            value = modes.sum(axis=-1)
+            modes *= wavenumbers**2
+            return value, -slopes.sum(axis=-1), -modes.sum(axis=-1)
+
+        return at
 
     def square_integral(self, u: FloatArray) -> FloatArray:
         """Trapezoid rule, less what it counts too much of the last cosine of an even n; shape (S,)."""
@@ -143,7 +173,7 @@ class Fourier(Space):
         turns = (np.arange(self.n) * k) % self.n
         return np.asarray((u * np.exp(-2j * np.pi * turns / self.n)).sum(axis=-1) / self.n)
 
-    @property
+    @cached_property
     def search_grid(self) -> FloatArray:
         """4n equally spaced points, ascending; the nodes are among them."""
         return np.sort(ring_grid(self._ring, 4 * self.n))
@@ -165,25 +195,3 @@ class Fourier(Space):
             return None
         order: IntArray = nearest.astype(np.int64) % m
         return order if np.array_equal(np.sort(order), np.arange(m)) else None
-
-
-def _waves_at(angle: FloatArray, count: int) -> tuple[FloatArray, FloatArray]:
-    """cos(k angle) and sin(k angle) for k = 0 .. count - 1 as a last axis.
-
-    From the first of them by the addition theorems, the number known doubled each time: errors grow with k as
-    those of the products k angle do.  Only sums and products of single numbers, so that no bit depends on the
-    shape.
-    """
-    cosines, sines = np.empty((*angle.shape, count)), np.empty((*angle.shape, count))
-    cosines[..., 0], sines[..., 0] = 1.0, 0.0
-    if count > 1:
-        cosines[..., 1], sines[..., 1] = np.cos(angle), np.sin(angle)
-    known = 2
-    while known < count:
-        more = min(known - 1, count - known)
-        low, high = slice(1, more + 1), slice(known - 1, known)
-        new = slice(known, known + more)
-        cosines[..., new] = cosines[..., low] * cosines[..., high] - sines[..., low] * sines[..., high]
-        sines[..., new] = cosines[..., low] * sines[..., high] + sines[..., low] * cosines[..., high]
-        known += more
-    return cosines, sines

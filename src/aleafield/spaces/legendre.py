@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from functools import cached_property
+
 import numpy as np
 from numpy.polynomial.legendre import legder, legvander
 
@@ -9,10 +11,11 @@ from aleafield.arrays import FloatArray, batch_product
 from aleafield.geometry import Domain, Interval, Refinement
 from aleafield.quadrature import extremal_points, gauss_legendre
 from aleafield.spaces.prolongation import DenseProlongation, Prolongation
-from aleafield.spaces.space import Space, apply_each
+from aleafield.spaces.space import apply_each
+from aleafield.spaces.spectral import SpectralSpace
 
 
-class Legendre(Space):
+class Legendre(SpectralSpace):
     """Polynomials of degree n - 1 in the Legendre basis that is orthonormal in L2 of the interval.
 
     The unknowns are the coefficients in phi_k(x) = sqrt((2k + 1) / length) P_k((2x - low - high) / length),
@@ -53,18 +56,24 @@ class Legendre(Space):
         """n -> 2n, degree n - 1 -> 2n - 1."""
         return Refinement(both_ends=False, smallest=1, key="scheme.nodes")
 
-    def _basis(self, x: FloatArray, order: int = 0) -> FloatArray:
-        """The basis functions, or their derivative of that order, at x (...,); shape (..., n)."""
-        reference = (2.0 * x - (self._interval.low + self._interval.high)) / self._interval.length
-        if order == 0:
-            return np.asarray(np.ascontiguousarray(legvander(reference, self.n - 1)) * self._scale)
-        if order >= self.n:
-            return np.zeros((*x.shape, self.n)) * x[..., None]
-        derivative = self._derivatives.get(order)
-        if derivative is None:
-            scale = (2.0 / self._interval.length) ** order * self._scale
-            derivative = self._derivatives[order] = legder(np.eye(self.n), order) * scale
-        return np.asarray(np.ascontiguousarray(legvander(reference, self.n - 1 - order)) @ derivative)
+    def _reference(self, x: FloatArray) -> FloatArray:
+        """x on [-1, 1]."""
+        return np.asarray((2.0 * x - (self._interval.low + self._interval.high)) / self._interval.length)
+
+    def _derivative(self, order: int) -> FloatArray:
+        """Matrix (n, n) from the unknowns to the coefficients, in Legendre polynomials, of a derivative."""
+        found = self._derivatives.get(order)
+        if found is None:
+            found = np.zeros((self.n, self.n))
+            if order < self.n:
+                scale = (2.0 / self._interval.length) ** order * self._scale
+                found[: self.n - order] = legder(np.eye(self.n), order) * scale
+            self._derivatives[order] = found
+        return found
+
+    def _basis(self, x: FloatArray) -> FloatArray:
+        """The basis functions at x (...,); shape (..., n)."""
+        return np.asarray(self._profiles(x) * self._scale)
 
     def evaluation_matrix(self, x: FloatArray) -> FloatArray:
         """Orthonormal Legendre polynomials at x (P,); shape (P, n)."""
@@ -72,15 +81,15 @@ class Legendre(Space):
 
     def derivative_matrix(self, x: FloatArray, order: int = 1) -> FloatArray:
         """Derivatives of the orthonormal Legendre polynomials at x (P,); shape (P, n)."""
-        return self._basis(x, order)
+        return self._profiles(x) @ self._derivative(order)
 
-    def evaluate_each(self, u: FloatArray, x: FloatArray) -> FloatArray:
-        """Values of u (S, n) at x (S, P); shape (S, P)."""
-        return apply_each(self._basis(x), u)
+    def _profiles(self, x: FloatArray) -> FloatArray:
+        """Legendre polynomials."""
+        return np.ascontiguousarray(legvander(self._reference(x), self.n - 1))
 
-    def differentiate_each(self, u: FloatArray, x: FloatArray, order: int = 1) -> FloatArray:
-        """Derivatives of u (S, n) at x (S, P); shape (S, P)."""
-        return apply_each(self._basis(x, order), u)
+    def _amplitudes(self, u: FloatArray, order: int) -> FloatArray:
+        """Coefficients of the derivative in Legendre polynomials."""
+        return u * self._scale if order == 0 else apply_each(self._derivative(order), u)
 
     def coefficients(self, nodal: FloatArray) -> FloatArray:
         """Coefficients (S, n) of the polynomials with values nodal (S, n) at the Gauss points.
@@ -98,7 +107,7 @@ class Legendre(Space):
         """Sum of the squared coefficients (Parseval); shape (S,)."""
         return np.asarray((u * u).sum(axis=-1))
 
-    @property
+    @cached_property
     def search_grid(self) -> FloatArray:
         """4n + 1 extremal points, which crowd at the ends as the zeros of polynomials do."""
         return extremal_points(self._interval, 4 * self.n + 1)

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from functools import cached_property
+
 import numpy as np
 
 from aleafield.arrays import ComplexArray, FloatArray, IntArray
@@ -115,7 +117,7 @@ class PiecewiseLinear(Space):
         discrete = (u * np.exp(-2j * np.pi * turns / self.n)).sum(axis=-1) / self.n
         return np.asarray(discrete * np.sinc(k / self.n) ** 2)
 
-    @property
+    @cached_property
     def search_grid(self) -> FloatArray:
         """The nodes, ascending: between two of them an element is linear."""
         return self.nodes[self.display_order]

@@ -81,14 +81,6 @@ class Space(ABC):
     def differentiate_each(self, u: FloatArray, x: FloatArray, order: int = 1) -> FloatArray:
         """Derivatives of u (S, n) at points x (S, P) that differ from sample to sample; shape (S, P)."""
 
-    def derivatives_each(
-        self, u: FloatArray, x: FloatArray, orders: tuple[int, ...]
-    ) -> tuple[FloatArray, ...]:
-        """Derivatives of several orders (0 for values) at the same points x (S, P), each (S, P)."""
-        return tuple(
-            self.differentiate_each(u, x, order) if order else self.evaluate_each(u, x) for order in orders
-        )
-
     @abstractmethod
     def square_integral(self, u: FloatArray) -> FloatArray:
         """Exact integral of the square of each element u (S, n); shape (S,)."""

@@ -19,7 +19,7 @@ REAL_AXIS = 2.785293563405282
 def stability_bound(time_constant: float | FloatArray, gain: float | FloatArray) -> FloatArray:
     """Largest step at which no decaying mode of tau u' = -u + A u grows, for |A| <= gain; broadcast shape.
 
-    Its eigenvalues lie within (1 + gain) / tau of 0 (`Discretisation.gain` bounds |A|).  Exact for real
+    Its eigenvalues lie within (1 + gain) / tau of 0 (`Discretisation.gain` estimates |A|).  Exact for real
     eigenvalues, which symmetric kernels have.
 
     References

@@ -8,7 +8,6 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from aleafield.errors import InputError
-from aleafield.field.formula_term import FormulaTerm
 from aleafield.field.parameter import Bindable
 from aleafield.formula import Formula, order_of
 from aleafield.randomness.laws import Law
@@ -73,8 +72,6 @@ def refuse_impossible_samples(study: Study, design: Design, count: int, block: i
         inputs = design.values(indices)
         binding = study.equation.binding(inputs)
         for path, bindable in _bindables(study):
-            if isinstance(bindable, FormulaTerm):  # the numbers beside a formula are of any sign
-                continue
             worst = min(
                 bindable.bind(path, binding).impossible_samples(path), key=lambda w: w[1], default=None
             )

@@ -100,7 +100,10 @@ def _needs_a_matrix(pairing: Pairing, kernel: Connectivity) -> bool:
     if pairing.projector in ("chebyshev", "legendre") or not kernel.shift_invariant:
         return True
     source = pairing.source_rule(pairing.quadrature_points)
-    target = source if pairing.inner_rule is not None else make_rule("trapezoid", pairing.domain, pairing.nodes)
+    if pairing.inner_rule is None:
+        target = make_rule("trapezoid", pairing.domain, pairing.nodes)
+    else:
+        target = make_rule(pairing.inner_rule, pairing.domain, pairing.quadrature_points)
     return LatticePair.of(target, source) is None
 
 
