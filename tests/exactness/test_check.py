@@ -19,6 +19,7 @@ from aleafield.study.reading import read_text
 
 INTERVAL = 'shape = "interval"\nfrom = -10.0\nto = 10.0'
 RING = 'shape = "ring"\nlength = 20.0'
+WEAK = "strength = 0.25"
 UNCERTAIN = 'width = "uniform(0.8, 1.2)"'
 LOGISTIC = 'form = "logistic"\ngain = 10.0\nthreshold = 0.3'
 
@@ -51,13 +52,13 @@ def test_the_real_stability_interval_of_runge_kutta() -> None:
 
 def test_the_stable_step_of_a_certain_field_on_a_ring() -> None:
     """Logistic slope gain/4 = 2.5, kernel mass 1.4 (periodised): the fastest rate is (1 + 3.5) / 10."""
-    result = checked((INTERVAL, RING), (UNCERTAIN, "width = 1.0"))
+    result = checked((INTERVAL, RING), (UNCERTAIN, "width = 1.0"), (WEAK, "strength = 1.4"))
     assert result.time["gain"] == pytest.approx(3.5, rel=1e-9)
     assert result.time["largest_stable_step"] == pytest.approx(REAL_AXIS * 10 / 4.5, rel=1e-9)
 
 
 def test_a_step_beyond_the_stable_one_is_warned_of() -> None:
-    ring = ((INTERVAL, RING), (UNCERTAIN, "width = 1.0"))
+    ring = ((INTERVAL, RING), (UNCERTAIN, "width = 1.0"), (WEAK, "strength = 1.4"))
     beyond = checked(*ring, extra="[scheme]\ntime_step = 6.3\n")
     assert any("beyond the stable step" in warning for warning in beyond.warnings)
     within = checked(*ring, extra="[scheme]\ntime_step = 6.1\n")
@@ -180,7 +181,7 @@ def test_text_and_json_say_the_same() -> None:
 
 
 def test_numbers_without_bound_leave_valid_json() -> None:
-    result = checked(("strength = 1.4", "strength = 1e308"), ("gain = 10.0", "gain = 1e300"))
+    result = checked((WEAK, "strength = 1e308"), ("gain = 10.0", "gain = 1e300"))
     assert json.loads(json.dumps(result.as_json(), allow_nan=False))["time"]["gain"] is None
 
 

@@ -200,7 +200,7 @@ def _with(old: str, new: str, extra: str = "") -> Study:
     return read_text(MINIMAL_STUDY.replace(old, new) + extra)
 
 
-GAUSSIAN = 'form = "gaussian"\nstrength = 1.4\nwidth = "uniform(0.8, 1.2)"'
+GAUSSIAN = 'form = "gaussian"\nstrength = 0.25\nwidth = "uniform(0.8, 1.2)"'
 LOGISTIC = 'form = "logistic"\ngain = 10.0\nthreshold = 0.3'
 
 
