@@ -173,7 +173,9 @@ def test_extension_says_how_many_it_took_and_equals_the_longer_run(
 
 
 @pytest.mark.parametrize("samples", [0, -3, 10**12])
-def test_extension_by_nothing_or_by_too_much(capsys: pytest.CaptureFixture[str], home: Path, samples: int) -> None:
+def test_extension_by_nothing_or_by_too_much(
+    capsys: pytest.CaptureFixture[str], home: Path, samples: int
+) -> None:
     said = say(capsys, "extend", home / "out", "--samples", samples)
     assert_one_message(said, 2)
     assert f"samples: {samples} given" in said.err

@@ -48,7 +48,7 @@ def claimed_plan(layout: Layout, study: Study) -> Plan | None:
 def data_folder(names: Iterable[str]) -> str:
     """Where below the results folder the study's relative paths start, so that all copies stay in inputs/.
 
-    >>> data_folder(["gain.csv"]), data_folder(["../shared/gain.csv"])
+    >>> data_folder(["gain.csv"]), data_folder(["../data/gain.csv"])
     ('inputs', 'inputs/up')
     """
     steps = [PurePosixPath(posixpath.normpath(name)).parts.count("..") for name in names]
