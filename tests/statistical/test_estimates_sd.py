@@ -13,15 +13,15 @@ from tests.statistical.coverage import least_hits
 
 
 def jackknife_of_log_sd(
-    values: np.ndarray, block: np.ndarray, confidence: float, s: float, skew: bool
+    values: np.ndarray, block: np.ndarray, confidence: float, s: float
 ) -> tuple[float, float]:
-    """s exp(-+ t SE), leaving each block out in turn; the upper end moved for skewness where asked."""
+    """s exp(-+ t SE), leaving each block out in turn; the upper end moved for skewness."""
     blocks = np.unique(block)
     n = len(blocks)
     logs = np.array([np.log(values[block != b].std(ddof=1)) for b in blocks])
     error = np.sqrt((n - 1) / n * ((logs - logs.mean()) ** 2).sum())
     t = student_t.ppf(0.5 + confidence / 2, n - 1)
-    further = max(0.0, scipy_skewness(-logs)) / (6 * np.sqrt(n)) * (2 * t**2 + 1) if skew else 0.0
+    further = max(0.0, scipy_skewness(-logs)) / (6 * np.sqrt(n)) * (2 * t**2 + 1)
     return s * np.exp(-t * error), s * np.exp((t + further) * error)
 
 
@@ -31,7 +31,7 @@ def test_plain_interval_is_the_jackknife_over_samples(confidence: float) -> None
     found = estimate_sd(Sample.of(values), confidence)
     assert found.value == pytest.approx(values.std(ddof=1), rel=1e-13)
     assert (found.low, found.high) == pytest.approx(
-        jackknife_of_log_sd(values, np.arange(80), confidence, values.std(ddof=1), skew=True), rel=1e-9
+        jackknife_of_log_sd(values, np.arange(80), confidence, values.std(ddof=1)), rel=1e-9
     )
 
 
@@ -48,7 +48,7 @@ def test_interval_over_blocks_is_the_jackknife_over_blocks() -> None:
     mean_error = 15 / 16 * ((left_out - left_out.mean()) ** 2).sum()
     s = np.sqrt(given.var() + mean_error)  # the mean square about the mean, and the variance of that mean
     assert found.value == pytest.approx(s, rel=1e-12)
-    expected = jackknife_of_log_sd(given, of, 0.95, s, skew=False)
+    expected = jackknife_of_log_sd(given, of, 0.95, s)
     assert (found.low, found.high) == pytest.approx(expected, rel=1e-9)
 
 

@@ -44,8 +44,8 @@ def estimate_sd(sample: Sample, confidence: float) -> Estimate:
 
     SE is the jackknife standard error of ln s (Quenouille, Tukey), leaving out one sample (plain Monte Carlo)
     or one block at a time, and t has as many degrees of freedom as samples or blocks, less one.  The
-    logarithm keeps the interval positive.  With blocks the divisor is n, see `block_factor`.  Plain Monte
-    Carlo of a skew quantity often misses its tail, and then both s and SE are too small: the upper end is
+    logarithm keeps the interval positive.  With blocks the divisor is n, see `block_factor`.  Samples of a
+    skew quantity often miss its tail, and then both s and SE are too small: the upper end is
     s exp((t + k (2 t^2 + 1)) SE),
 
         k = max(0, skewness of the jackknife deviations) / (6 sqrt(n)),
@@ -88,7 +88,7 @@ def estimate_sd(sample: Sample, confidence: float) -> Estimate:
     deviation -= deviation.mean()
     error = float(np.sqrt((parts - 1) / parts * (deviation @ deviation)))
     t = student(confidence, parts - 1)
-    upward = t + -_skewness(deviation) / (6.0 * math.sqrt(parts)) * (2.0 * t**2 + 1.0) if sample.plain else t
+    upward = t - _skewness(deviation) / (6.0 * math.sqrt(parts)) * (2.0 * t**2 + 1.0)
     return Estimate(s, s * math.exp(-t * error), s * math.exp(max(t, upward) * error))
 
 
