@@ -57,6 +57,7 @@ def extend(
         raise InputError("samples", f"{samples} given", "at least one sample more is needed")
     if samples > MOST_SAMPLES:
         raise InputError("samples", f"{samples} given", f"at most {MOST_SAMPLES:,} more are possible")
+    progress = progress or NoProgress()
     layout = Layout(Path(folder))
     plan = read_plan(layout)
     study = stored_study(layout, plan) if study is None else study
@@ -75,7 +76,9 @@ def extend(
         if is_complete(layout, plan):
             clear_parts(layout)
             allocation = extended(plan.allocation, samples)
+            if allocation.note:
+                progress.say(allocation.note)
             refuse_impossible_samples(study, design_of(study, allocation), allocation.samples)
             plan = with_more_samples(plan, model, allocation)
             write_plan(layout, plan)
-        return finish(layout, study, plan, model, worker_count(workers), progress or NoProgress())
+        return finish(layout, study, plan, model, worker_count(workers), progress)

@@ -14,6 +14,10 @@ PLAIN_LINES = 10
 class Progress(Protocol):
     """What a run tells while it works; work is counted in operations."""
 
+    def say(self, text: str) -> None:
+        """One sentence, before the work that it is about."""
+        ...
+
     def start(self, total: float, done: float) -> None:
         """Work of the whole run, and what earlier starts have done of it."""
         ...
@@ -29,6 +33,9 @@ class Progress(Protocol):
 
 class NoProgress:
     """For runs that say nothing while they work."""
+
+    def say(self, text: str) -> None:
+        """The sentence is passed over."""
 
     def start(self, total: float, done: float) -> None:
         """The amount of work is passed over."""
@@ -53,6 +60,11 @@ class ProgressLine:
     def __init__(self, stream: TextIO | None = None) -> None:
         self._stream = sys.stderr if stream is None else stream
         self._redraws = self._stream.isatty()
+
+    def say(self, text: str) -> None:
+        """A line of its own."""
+        self._stream.write(f"{text}\n")
+        self._stream.flush()
 
     def start(self, total: float, done: float) -> None:
         """Show how much is left."""

@@ -89,6 +89,7 @@ def run(
     Interrupted
         When the run was stopped; the same call goes on.
     """
+    progress = progress or NoProgress()
     layout = Layout(Path(out))
     count = worker_count(workers)
     _make_results_folder(layout)
@@ -96,12 +97,14 @@ def run(
         remove_partials(layout.folder)
         plan = claimed_plan(layout, study)
         if plan is None:
+            if study.scheme.time_step is None:
+                progress.say("choosing the time step by pilot samples")
             plan, model = make_plan(study, chunk_width)
             write_study(layout, study)
             write_plan(layout, plan)
         else:
             model = planned_model(study, plan)
-        return finish(layout, study, plan, model, count, progress or NoProgress())
+        return finish(layout, study, plan, model, count, progress)
 
 
 def finish(
