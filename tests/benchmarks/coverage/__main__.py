@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import argparse
 import json
+import math
 import os
 import sys
 import time
@@ -81,9 +82,9 @@ def _table(cells: list[Cell], verdict: str) -> str:
     ]
     for c in cells:
         kept = "not judged" if c.instances < LEAST_INSTANCES else "yes" if c.coverage >= c.floor else "**no**"
-        lines.append(
-            f"| {c.name} | {c.instances} | {c.coverage:.3f} | {c.floor:.3f} | {c.ratio:.2f} | {kept} |"
-        )
+        coverage = f"{c.coverage:.3f}" if c.instances else "-"
+        ratio = f"{c.ratio:.2f}" if math.isfinite(c.ratio) else "-"
+        lines.append(f"| {c.name} | {c.instances} | {coverage} | {c.floor:.3f} | {ratio} | {kept} |")
     return "\n".join(lines) + "\n"
 
 
