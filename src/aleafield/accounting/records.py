@@ -97,6 +97,8 @@ class PartDifferences:
         Lower bound of the factor; 2 for a value at a point that is not a node of all levels.
     peak : bool
         The position of a peak: its difference is a sawtooth of the mesh, and the coarser pair counts too.
+    erratic : bool
+        The error jumps about from level to level: no corrected value is offered.
     round_off : float
         Differences up to this size (units of the quantity) are rounding, besides 1e-13 of its largest value.
     """
@@ -112,6 +114,7 @@ class PartDifferences:
     least_factor: float = 1.0
     peak: bool = False
     round_off: float = 0.0
+    erratic: bool = False
 
     def __post_init__(self) -> None:
         if self.name not in (*PART_NAMES, MESH):
@@ -128,8 +131,11 @@ class PartDifferences:
 
         A piecewise-linear field's peak jumps with the mesh: its expected order.  Refined together, space and
         quadrature may cancel on one mesh, or on all: twice the expected order lets the sum converge faster
-        than its parts, but not vanish.  None: the finer difference stands alone.
+        than its parts, but not vanish.  An erratic error may be small on any one mesh: order 1.  None: the finer
+        difference stands alone.
         """
+        if self.erratic:
+            return 1.0
         if self.peak:
             return 2.0 if self.expected_order is None else self.expected_order
         if self.name == MESH:

@@ -89,7 +89,8 @@ def combine(
     plain = _statement(statistic, sampled, sizes, noise if sizes else None, sampling)
     notes = (*found.notes, *_notes(plain, orders, parts))
     corrected = None
-    if statistic == MEAN and sizes and not _diverges(plain, orders):
+    erratic = any(m.part.erratic for m in measured)
+    if statistic == MEAN and sizes and not erratic and not _diverges(plain, orders):
         corrected = _corrected(sampled, found.known, noise, sampling)
     return representable(
         Statement(plain.value, plain.error, plain.interval, corrected, notes=notes, orders=orders)

@@ -54,6 +54,8 @@ class PathPart:
         By quantity: a lower bound of the safety factor (2 for a value off the nodes).
     peaks : frozenset
         Names of quantities that are positions of a peak.
+    erratic : bool
+        The error jumps about from mesh to mesh (a jump of the data in x): nothing is extrapolated from it.
     note : str
         Why the expected order is what it is, in words.
     """
@@ -67,6 +69,7 @@ class PathPart:
     observed_only: bool = False
     least_factor: Mapping[str, float] = field(default_factory=dict)
     peaks: frozenset[str] = frozenset()
+    erratic: bool = False
     note: str = ""
 
     @property

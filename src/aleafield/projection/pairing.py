@@ -20,6 +20,7 @@ from aleafield.projection.expectation import (
 )
 from aleafield.projection.scheme import METHODS, QUADRATURES, Method, Projector, Scheme
 from aleafield.projection.smoothness import (
+    data_jump,
     drive_is_smooth,
     initial_is_smooth,
     kernel_is_smooth,
@@ -58,6 +59,8 @@ class Pairing:
         Step rate: sources are the weights of `quadrature.crossing_weights`.
     space, quadrature, time : Expected
         The expected orders of the three parts of the error.
+    data_jump : bool
+        Whether the initial state or the drive jumps in x.
     notes : tuple of str
         Counts that were changed.
     warnings : tuple of str
@@ -76,8 +79,14 @@ class Pairing:
     space: Expected
     quadrature: Expected
     time: Expected
+    data_jump: bool = False
     notes: tuple[str, ...] = ()
     warnings: tuple[str, ...] = ()
+
+    @property
+    def overshoots(self) -> bool:
+        """Whether a spectral interpolant overshoots at a jump (Gibbs), which no refinement makes smaller."""
+        return self.data_jump and self.projector != "piecewise linear"
 
     @property
     def node_refinement(self) -> Refinement:
@@ -166,6 +175,7 @@ def resolve(scheme: Scheme, equation: FieldEquation) -> Pairing:
         space=space_order(ingredients),
         quadrature=quadrature_order(ingredients),
         time=time_order(ingredients),
+        data_jump=data_jump(sample),
         notes=tuple(note for note in (node_note, point_note) if note is not None),
         warnings=tuple(_warnings(ingredients, equation)),
     )

@@ -24,11 +24,14 @@ from aleafield.geometry import Domain, Interval, ring_grid
 from aleafield.quadrature import extremal_points
 
 RateSmoothness = Smoothness | Literal["jump"]
+Regularity = Literal["smooth", "kinked", "jump"]
 
 _POINTS = 4096
 _TAIL = 1e-12
 """Size of the last eighth of the coefficients, relative to the largest, above which a function is not smooth:
 a kink whose slope jumps by the function's size over the domain leaves about 1e-7 there."""
+_JUMP_TAIL = 3e-6
+"""The same above which it jumps: a jump by the function's size leaves about 1e-4 there."""
 
 _ACTIVITIES = (1e-6, 1e6)
 _HALVINGS = 60
@@ -54,8 +57,8 @@ def typical(equation: FieldEquation) -> FieldEquation:
     return equation.bind(equation.binding(means))
 
 
-def smooth_on(domain: Domain, function: Callable[[FloatArray], FloatArray]) -> bool:
-    """Whether a function of points (P,) with values (.., P) has no kink and no jump on the domain."""
+def regularity_on(domain: Domain, function: Callable[[FloatArray], FloatArray]) -> Regularity:
+    """Whether a function of points (P,) with values (.., P) is smooth, has a kink, or a jump or a pole."""
     with np.errstate(all="ignore"):
         if isinstance(domain, Interval):
             values = function(extremal_points(domain, _POINTS + 1))
@@ -64,9 +67,16 @@ def smooth_on(domain: Domain, function: Callable[[FloatArray], FloatArray]) -> b
             values = function(ring_grid(domain, _POINTS))
             coefficients = np.abs(scipy.fft.rfft(values, axis=-1))
         if not np.all(np.isfinite(coefficients)):
-            return False
+            return "jump"
         tail = coefficients[..., -coefficients.shape[-1] // 8 :].max()
-        return bool(tail <= _TAIL * coefficients.max())
+        if tail <= _TAIL * coefficients.max():
+            return "smooth"
+        return "jump" if tail > _JUMP_TAIL * coefficients.max() else "kinked"
+
+
+def smooth_on(domain: Domain, function: Callable[[FloatArray], FloatArray]) -> bool:
+    """Whether a function of points (P,) with values (.., P) has no kink and no jump on the domain."""
+    return regularity_on(domain, function) == "smooth"
 
 
 def kernel_is_smooth(equation: FieldEquation) -> bool:
@@ -132,12 +142,23 @@ def drive_is_smooth(equation: FieldEquation) -> bool:
     return all(_term_is_smooth(drive, equation.domain, share * duration) for share in _TIMES)
 
 
+def data_jump(equation: FieldEquation) -> bool:
+    """Whether the initial state or the drive of a bound equation, at one of three times, jumps in x."""
+    duration = equation.dynamics.duration
+    looks = [(equation.initial, 0.0), *((equation.drive, share * duration) for share in _TIMES)]
+    return any(_regularity(term, equation.domain, t) == "jump" for term, t in looks)
+
+
 def _term_is_smooth(term: FormulaTerm, domain: Domain, t: float) -> bool:
+    return _regularity(term, domain, t) == "smooth"
+
+
+def _regularity(term: FormulaTerm, domain: Domain, t: float) -> Regularity:
     if not term.depends_on("x"):
-        return True
+        return "smooth"
 
     def values(x: FloatArray) -> FloatArray:
         found = term.evaluate({"x": x, "t": t}, axes=1)
         return np.array(np.broadcast_to(found, np.broadcast_shapes(found.shape, x.shape)))
 
-    return smooth_on(domain, values)
+    return regularity_on(domain, values)

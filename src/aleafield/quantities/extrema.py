@@ -22,6 +22,11 @@ class Maximum(WholeFieldQuantity):
     measure = "maximum"
     dimension = ACTIVITY
 
+    @property
+    def takes_extremum(self) -> bool:
+        """It looks for the largest value."""
+        return True
+
     def number(self, space: Space) -> Callable[[FloatArray], FloatArray]:
         """The height of the peak."""
         return lambda u: peak(space, u).height
@@ -32,6 +37,11 @@ class Minimum(WholeFieldQuantity):
 
     measure = "minimum"
     dimension = ACTIVITY
+
+    @property
+    def takes_extremum(self) -> bool:
+        """It looks for the smallest value."""
+        return True
 
     def number(self, space: Space) -> Callable[[FloatArray], FloatArray]:
         """Minus the height of the peak of -u."""
@@ -58,6 +68,11 @@ class PeakPosition(TimedQuantity):
     name: str
     reference: float | None = None
     when: When = At()
+
+    @property
+    def takes_extremum(self) -> bool:
+        """It looks for the largest value."""
+        return True
 
     def reading(self, space: Space) -> Reading:
         """The position of the peak."""

@@ -68,6 +68,11 @@ class FormulaQuantity(TimedQuantity):
     at: float | None = None
     when: When = At()
 
+    @property
+    def takes_extremum(self) -> bool:
+        """Whether the formula is reduced by its maximum."""
+        return self.in_space == "maximum"
+
     def __post_init__(self) -> None:
         if self.in_space not in get_args(InSpace):
             needed = "one of " + ", ".join(get_args(InSpace)) + " is needed"

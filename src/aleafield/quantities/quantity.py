@@ -103,6 +103,11 @@ class Quantity(Bindable, ABC):
         """Raise InputError where the measure does not exist on the domain, or a point lies outside it."""
         return
 
+    @property
+    def takes_extremum(self) -> bool:
+        """Whether it looks for the largest or smallest value of the interpolant."""
+        return False
+
     def key(self, entry: str) -> str:
         """Dotted path of an entry of this quantity, for errors."""
         return f"quantity.{self.name}.{entry}"

@@ -170,7 +170,11 @@ def _checked(study: Study) -> CheckResult:
         resolution=_resolution(widths, unit),
         sampling=_sampling(allocation, model),
         notes=(*_lumping(model.pairing), *_dependence(study), *domain_notes(bound, unit)),
-        warnings=(*study.warnings, *_warnings(study, model.pairing, widths, stable)),
+        warnings=(
+            *study.warnings,
+            *_start(discretisation, bound, len(first)),
+            *_warnings(study, model.pairing, widths, stable),
+        ),
     )
 
 
@@ -324,6 +328,23 @@ def _dependence(study: Study) -> list[str]:
     if study.dependence.sampled_together:
         notes.append("columns of one file are drawn together, whole rows at a time")
     return notes
+
+
+def _start(discretisation: Discretisation, bound: FieldEquation, samples: int) -> list[str]:
+    """Whether a sample starts from, or is at once driven to, what is not finite."""
+    with np.errstate(all="ignore"):
+        system = discretisation.system(bound, samples)
+        state = system.initial()
+        change = system.rate_of_change(0.0, state, 0.0)
+    found = []
+    for name, values in (("initial", state), ("drive", change)):
+        lost = int((~np.isfinite(values)).any(axis=1).sum())
+        if lost:
+            found.append(
+                f"{name}: not finite at t = 0 in {lost} of the first {samples} samples, which will fail"
+            )
+            break
+    return found
 
 
 def _warnings(study: Study, pairing: Pairing, widths: MeshWidth, stable: Stability) -> list[str]:

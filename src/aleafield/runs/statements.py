@@ -132,5 +132,6 @@ def _differences(
         observed_only=part.observed_only,
         least_factor=part.least_factor.get(name, 1.0),
         peak=name in part.peaks,
+        erratic=part.erratic,
         round_off=round_off,
     )

@@ -8,6 +8,7 @@ from pathlib import Path
 from aleafield.errors import InputError
 from aleafield.field.equation import FieldEquation
 from aleafield.field.formula_term import constant as constant_term
+from aleafield.projection.pairing import Pairing
 from aleafield.quantities import FunctionQuantity, Quantity
 from aleafield.randomness.design import Design
 from aleafield.randomness.inputs import Dependence, Input
@@ -95,9 +96,10 @@ def _study(document: Document, extra: tuple[FunctionQuantity, ...]) -> Study:
         parameters=numbers.parameters,
     )
     duration = equation.dynamics.duration
-    scheme, notes = settled(read_scheme(root.table("scheme"), domain, duration), equation)
+    scheme, pairing = settled(read_scheme(root.table("scheme"), domain, duration), equation)
     reader = QuantityReader(numbers, domain, duration, scheme.nodes)
     quantities = _quantities(root, reader, extra)
+    _refuse_overshoot(pairing, quantities)
     numbers.refuse_unused(parameters)
     names = [quantity.name for quantity in quantities]
     aim, confidence = read_aim(root.table("aim"), names)
@@ -114,7 +116,7 @@ def _study(document: Document, extra: tuple[FunctionQuantity, ...]) -> Study:
         confidence=confidence,
         report=read_report(root.table("report"), names),
         keep=read_keep(root.table("keep"), duration),
-        warnings=(*numbers.warnings, *notes),
+        warnings=(*numbers.warnings, *pairing.notes, *pairing.warnings),
         source=StudySource(document.path, document.text, lines=document.lines),
         digest="",
     )
@@ -133,6 +135,19 @@ def _quantities(
             "quantity", "no list of quantities", "each quantity is a section [[quantity]], in double brackets"
         )
     return reader.with_functions(reader.read(entries), extra)
+
+
+def _refuse_overshoot(pairing: Pairing, quantities: tuple[Quantity, ...]) -> None:
+    """Refuse the largest and smallest values of an interpolant that overshoots alike on every mesh."""
+    for quantity in quantities:
+        if pairing.overshoots and quantity.takes_extremum:
+            raise InputError(
+                quantity.key("measure"),
+                f"{quantity.measure} of a field whose drive or initial state jumps in x, under the "
+                f"{pairing.projector} projector",
+                "its interpolant overshoots at a jump by about a tenth of it on every mesh, so that the value does "
+                'not converge: use projector = "piecewise linear", or a steep smooth slope in place of the jump',
+            )
 
 
 def _completed(study: Study, root: Table) -> Study:

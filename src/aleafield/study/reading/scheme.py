@@ -107,8 +107,8 @@ def _needs_a_matrix(pairing: Pairing, kernel: Connectivity) -> bool:
     return LatticePair.of(target, source) is None
 
 
-def settled(scheme: Scheme, equation: FieldEquation) -> tuple[Scheme, tuple[str, ...]]:
-    """The scheme with the counts that its levels need, and what an expert would say of it.
+def settled(scheme: Scheme, equation: FieldEquation) -> tuple[Scheme, Pairing]:
+    """The scheme with the counts that its levels need, and the pairing that it makes.
 
     Raises
     ------
@@ -124,4 +124,4 @@ def settled(scheme: Scheme, equation: FieldEquation) -> tuple[Scheme, tuple[str,
     _refuse_large_matrices(pairing, equation)
     points = None if scheme.quadrature_points is None else pairing.quadrature_points
     used = dataclasses.replace(scheme, nodes=pairing.nodes, quadrature_points=points)
-    return used, (*pairing.notes, *pairing.warnings)
+    return used, pairing
