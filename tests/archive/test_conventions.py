@@ -10,7 +10,7 @@ import pytest
 
 from aleafield.archive.ensemble_reader import open_ensemble
 from aleafield.runs.run import run
-from tests.archive.campaign import campaign
+from tests.archive.small_runs import small_run
 from tests.archive.studies import linear_ring
 
 # realization is the dimension that a statistic was taken over and is therefore no longer its own (CF 1.11,
@@ -54,7 +54,7 @@ def test_a_real_run_conforms(real: Path) -> None:
 
 
 def test_an_ensemble_with_fields_of_some_only_conforms(tmp_path: Path) -> None:
-    campaign(tmp_path, 1040, 1040, method="monte carlo")
+    small_run(tmp_path, 1040, 1040, method="monte carlo")
     found = findings(tmp_path / "ensemble.nc")
     assert [text for text in found if not any(alarm.fullmatch(text) for alarm in FALSE_ALARMS)] == []
     with open_ensemble(tmp_path) as dataset:

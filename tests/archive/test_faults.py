@@ -13,7 +13,7 @@ from pathlib import Path
 import pytest
 
 from aleafield.errors import Interrupted
-from tests.archive.campaign import ROOT, assert_same_values, campaign
+from tests.archive.small_runs import ROOT, assert_same_values, small_run
 
 CALLS = ("write", "fsync", "replace")
 """What a disk can refuse; every file of a run but the netCDF library's own goes through these."""
@@ -48,8 +48,8 @@ class FailingDisk:
 
 
 def small(folder: Path) -> int:
-    """A campaign of four chunks at three levels."""
-    return campaign(folder, samples=64, width=32, parts=1)
+    """A small run of four chunks at three levels."""
+    return small_run(folder, samples=64, width=32, parts=1)
 
 
 @pytest.fixture(scope="module")
@@ -77,8 +77,8 @@ def test_every_fault_is_said_and_survived(undisturbed: tuple[Path, int], tmp_pat
 def test_a_full_disk_under_the_netcdf_library(tmp_path: Path) -> None:
     """The system refuses files above a size that chunks keep and ensemble.nc does not."""
     program = (
-        "import resource, sys; from pathlib import Path; from tests.archive.campaign import campaign; "
-        "resource.setrlimit(resource.RLIMIT_FSIZE, (180_000, 180_000)); campaign(Path(sys.argv[1]), 512, 64)"
+        "import resource, sys; from pathlib import Path; from tests.archive.small_runs import small_run; "
+        "resource.setrlimit(resource.RLIMIT_FSIZE, (180_000, 180_000)); small_run(Path(sys.argv[1]), 512, 64)"
     )
     environment = {**os.environ, "PYTHONPATH": f"{ROOT / 'src'}{os.pathsep}{ROOT}"}
     ended = subprocess.run(
@@ -91,6 +91,6 @@ def test_a_full_disk_under_the_netcdf_library(tmp_path: Path) -> None:
     assert ended.returncode == 1
     assert "aleafield.errors.Interrupted: " in ended.stderr
     assert "ensemble.nc: cannot be written" in ended.stderr
-    assert campaign(tmp_path / "full", 512, 64) == 0, "all chunks were stored before"
-    campaign(tmp_path / "reference", 512, 64)
+    assert small_run(tmp_path / "full", 512, 64) == 0, "all chunks were stored before"
+    small_run(tmp_path / "reference", 512, 64)
     assert_same_values(tmp_path / "full", tmp_path / "reference")

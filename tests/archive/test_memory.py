@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from pathlib import Path
 
-from tests.archive.campaign import as_program
+from tests.archive.small_runs import as_program
 
 BYTES_PER_SAMPLE = 56
 """Seven numbers a sample: value and margin of a quantity, the values that occur, the same in order, two more
@@ -15,7 +15,7 @@ FEW, MANY = 50_000, 200_000
 
 
 def peak_memory(folder: Path, samples: int) -> int:
-    """Largest resident set in bytes of a process that runs a campaign."""
+    """Largest resident set in bytes of a process that runs a small_runs."""
     process = as_program(folder, samples, 1000, method="monte carlo")
     said, complaints = process.communicate(timeout=300)
     assert process.returncode == 0, complaints

@@ -11,14 +11,14 @@ from pathlib import Path
 
 import pytest
 
-from tests.archive.campaign import as_program, assert_same_values, campaign, extend
+from tests.archive.small_runs import as_program, assert_same_values, extend, small_run
 
 
 @pytest.fixture(scope="module")
 def undisturbed(tmp_path_factory: pytest.TempPathFactory) -> Path:
     """A run that nothing disturbed: 512 samples in chunks of 16."""
     folder = tmp_path_factory.mktemp("undisturbed")
-    campaign(folder, 512, 16)
+    small_run(folder, 512, 16)
     return folder
 
 
@@ -29,13 +29,13 @@ def stored(folder: Path) -> int:
 
 @pytest.mark.parametrize("width", [8, 24, 64])
 def test_every_chunk_width(undisturbed: Path, tmp_path: Path, width: int) -> None:
-    campaign(tmp_path, 512, width)
+    small_run(tmp_path, 512, width)
     assert_same_values(tmp_path, undisturbed)
 
 
 @pytest.mark.parametrize("workers", [2, 4])
 def test_every_number_of_workers(undisturbed: Path, tmp_path: Path, workers: int) -> None:
-    campaign(tmp_path, 512, 16, workers)
+    small_run(tmp_path, 512, 16, workers)
     assert_same_values(tmp_path, undisturbed)
 
 
@@ -65,7 +65,7 @@ def test_killed_again_and_again_and_resumed(undisturbed: Path, tmp_path: Path, w
         time.sleep(moments.uniform(0.0, 0.04))
         kill(process)
         assert process.returncode == -signal.SIGKILL
-    assert campaign(tmp_path) < 44
+    assert small_run(tmp_path) < 44
     assert_same_values(tmp_path, undisturbed)
     assert not (tmp_path / "parts").exists()
 
@@ -75,7 +75,7 @@ def test_killed_while_the_ensemble_is_made(undisturbed: Path, tmp_path: Path, na
     process = as_program(tmp_path, 512, 128)
     wait_until((tmp_path / name).exists, process)
     kill(process)
-    campaign(tmp_path)
+    small_run(tmp_path)
     assert_same_values(tmp_path, undisturbed)
     assert not list(tmp_path.glob(".*"))
 
@@ -90,17 +90,17 @@ def test_interrupted_from_the_keyboard(undisturbed: Path, tmp_path: Path) -> Non
     assert "the same command goes on" in said
     held = stored(tmp_path)
     assert 4 <= held < 44
-    assert campaign(tmp_path) <= 44 - held + 1  # a chunk whose manifest line was cut off is solved again
+    assert small_run(tmp_path) <= 44 - held + 1  # a chunk whose manifest line was cut off is solved again
     assert_same_values(tmp_path, undisturbed)
 
 
 def test_a_finished_run_solves_nothing(undisturbed: Path) -> None:
-    assert campaign(undisturbed, 512, 16) == 0
+    assert small_run(undisturbed, 512, 16) == 0
 
 
 @pytest.mark.parametrize("path", [[64, 512], [64, 128, 256, 512]])
 def test_extension_equals_the_longer_run(undisturbed: Path, tmp_path: Path, path: list[int]) -> None:
-    campaign(tmp_path, path[0], 24)
+    small_run(tmp_path, path[0], 24)
     for samples in path[1:]:
         extend(tmp_path, samples)
     assert_same_values(tmp_path, undisturbed)
@@ -108,9 +108,9 @@ def test_extension_equals_the_longer_run(undisturbed: Path, tmp_path: Path, path
 
 def test_extension_beyond_the_kept_samples(tmp_path: Path) -> None:
     """Plain Monte Carlo from 1,000 to 1,400: counts that fit no chunk, and fields stored for 1,024 only."""
-    campaign(tmp_path / "short", 1000, 64, method="monte carlo")
+    small_run(tmp_path / "short", 1000, 64, method="monte carlo")
     extend(tmp_path / "short", 1400)
-    campaign(tmp_path / "long", 1400, 48, method="monte carlo")
+    small_run(tmp_path / "long", 1400, 48, method="monte carlo")
     assert_same_values(tmp_path / "short", tmp_path / "long")
 
 
@@ -118,11 +118,11 @@ def test_an_extension_that_was_stopped_is_finished_by_a_plain_call(undisturbed: 
     from aleafield.archive.layout import Layout
     from aleafield.runs.plan_file import read_plan, with_more_samples, write_plan
     from tests.archive.analytic_model import AnalyticModel
-    from tests.archive.campaign import allocation_of
+    from tests.archive.small_runs import allocation_of
 
-    campaign(tmp_path, 128, 16)
+    small_run(tmp_path, 128, 16)
     layout = Layout(tmp_path)
     longer = with_more_samples(read_plan(layout), AnalyticModel(), allocation_of("quasi-monte carlo", 512))
     write_plan(layout, longer)  # and there it was killed
-    campaign(tmp_path, 128, 16)
+    small_run(tmp_path, 128, 16)
     assert_same_values(tmp_path, undisturbed)

@@ -14,7 +14,7 @@ from aleafield.errors import ArchiveError, InputError
 from aleafield.runs.compare import compare
 from aleafield.runs.extend import extend
 from aleafield.runs.run import run
-from tests.archive.campaign import assert_same_values
+from tests.archive.small_runs import assert_same_values
 from tests.archive.studies import linear_ring, peak_of_linear_ring
 
 

@@ -11,7 +11,7 @@ from pathlib import Path
 
 import pytest
 
-from tests.archive.campaign import assert_same_values
+from tests.archive.small_runs import assert_same_values
 from tests.command.saying import command_line, ended, say, start, study_file
 
 SLOW = {"samples": 4096, "method": "monte carlo", "more": '[keep]\nfields = "none"\n'}

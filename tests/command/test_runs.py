@@ -9,7 +9,7 @@ import pytest
 
 from aleafield.forward.field_model import FieldModel
 from aleafield.report.caution import CAUTION
-from tests.archive.campaign import assert_same_values
+from tests.archive.small_runs import assert_same_values
 from tests.command.saying import Said, assert_one_message, command_line, ended, say, start, study_file
 from tests.examples.summary_shape import read_summary
 

@@ -2,8 +2,10 @@
 
 from __future__ import annotations
 
+import tempfile
 from collections.abc import Callable
 from dataclasses import replace
+from pathlib import Path
 from typing import Any
 
 import numpy as np
@@ -12,8 +14,9 @@ from aleafield.accounting import split
 from aleafield.accounting.bias import Bias, bias_of, joint_change
 from aleafield.accounting.measured import MeasuredPart
 from aleafield.accounting.order import Order, judge_order, observed_order, safety_factor
+from aleafield.accounting.records import PartDifferences
 from aleafield.accounting.split import combine
-from tests.accounting import test_order, test_split, test_split_coverage
+from tests.accounting import test_jumps, test_mesh, test_order, test_split, test_split_coverage
 from tests.statistical.coverage import least_hits
 from tests.teeth.biting import Tooth, assert_bites, everywhere, member, teeth
 
@@ -22,6 +25,12 @@ def means_are_covered() -> None:
     """The stratum where biases dominate: as many intervals hold the mean as stated."""
     held, of = test_split_coverage.always(0.2, 256, False, 33).hits("mean")
     assert held >= least_hits(of)
+
+
+def a_jump_is_covered() -> None:
+    """A box under 127 Fourier modes: next to no change at a point on the finer mesh, but an error there."""
+    with tempfile.TemporaryDirectory() as folder:
+        test_jumps.test_intervals_hold_the_truth_and_nothing_is_extrapolated("fourier", 127, Path(folder))
 
 
 def part_left_out(name: str) -> Callable[..., Any]:
@@ -108,6 +117,21 @@ BY_HAND, COVERAGE = test_split.test_mean_by_hand, means_are_covered
         "a failed probe that counts",
         member(MeasuredPart, "usable", property(lambda self: np.ones(len(self.part.probes), dtype=bool))),
         test_split.test_failed_probes_are_left_out_and_said,
+    ),
+    Tooth(
+        "a cancellation on one mesh believed",
+        member(PartDifferences, "order_of_chance", property(lambda self: None)),
+        test_mesh.test_a_cancellation_on_one_mesh_alone_is_not_believed,
+    ),
+    Tooth(
+        "a sum that does not converge used",
+        everywhere(split._converges, lambda order: True),
+        test_mesh.test_a_sum_that_does_not_converge_is_not_used,
+    ),
+    Tooth(
+        "an erratic error that is small on one mesh believed",
+        member(PartDifferences, "order_of_chance", property(lambda self: None)),
+        a_jump_is_covered,
     ),
     Tooth(
         "parts in a tail that are not taken together",

@@ -22,7 +22,7 @@ from aleafield.runs.folder import claimed_plan
 from aleafield.runs.plan_file import read_plan
 from aleafield.runs.run import run
 from tests.archive import test_chunks, test_run
-from tests.archive.campaign import assert_same_values, campaign, extend
+from tests.archive.small_runs import assert_same_values, extend, small_run
 from tests.archive.studies import linear_ring
 from tests.teeth.biting import Check, Tooth, assert_bites, everywhere, member, teeth
 
@@ -40,15 +40,15 @@ def in_a_folder(test: Callable[..., None], *more: Any) -> Check:
 def widths_agree(folder: Path) -> None:
     """Chunks of 16 and of 40 samples give one ensemble."""
     for width in (16, 40):
-        campaign(folder / str(width), 64, width)
+        small_run(folder / str(width), 64, width)
     assert_same_values(folder / "40", folder / "16")
 
 
 def extension_agrees(folder: Path) -> None:
     """A run of 32 samples, extended, is a run of 64; Monte Carlo, so that any count is kept."""
-    campaign(folder / "short", 32, 16, method="monte carlo")
+    small_run(folder / "short", 32, 16, method="monte carlo")
     extend(folder / "short", 64)
-    campaign(folder / "long", 64, 16, method="monte carlo")
+    small_run(folder / "long", 64, 16, method="monte carlo")
     assert_same_values(folder / "short", folder / "long")
 
 

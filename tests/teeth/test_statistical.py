@@ -163,6 +163,11 @@ WILSON: Check = lambda: test_estimates_probability.test_plain_interval_is_wilson
         test_estimates_mean.test_repeats_of_a_parameter_sample_do_not_count_as_independent,
     ),
     Tooth(
+        "the divisor n - 1 under scrambled points",
+        everywhere(sd.block_factor, lambda sample: 1.0),
+        test_estimates_sd.test_many_scrambled_points_leave_no_bias_of_the_divisor,
+    ),
+    Tooth(
         "an sd's interval halved",
         everywhere(sd.estimate_sd, half_as_wide(sd.estimate_sd)),
         lambda: test_estimates_sd.test_plain_interval_is_the_jackknife_over_samples(0.95),

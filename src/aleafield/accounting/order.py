@@ -106,7 +106,8 @@ def judge_order(part: PartDifferences, fine: FloatArray, coarse: FloatArray, rou
           expected order);
         - the first of these at the expected order where the difference is rounding;
 
-        and never below `least_factor`.
+        and never below `least_factor`, nor, for an erratic part, below 1 + 3 / (rho^0.5 - 1): it may look as if it
+        converged.
     """
     size_fine, size_coarse = root_mean_square(fine), root_mean_square(coarse)
     if size_fine <= round_off:
@@ -118,7 +119,10 @@ def judge_order(part: PartDifferences, fine: FloatArray, coarse: FloatArray, rou
         if size_coarse > 0.0:
             observed = observed_order(size_coarse, size_fine, part.ratio_coarse, part.ratio_fine)
         order = _seen(part, observed)
-    return Order(order.observed, order.expected, max(order.factor, part.least_factor), order.message)
+    least = part.least_factor
+    if part.erratic:
+        least = max(least, safety_factor(SMALLEST_ORDER, part.ratio_fine, CAUTIOUS_SAFETY))
+    return Order(order.observed, order.expected, max(order.factor, least), order.message)
 
 
 def root_mean_square(values: FloatArray) -> float:

@@ -25,10 +25,6 @@ from aleafield.spaces import make_space
 from aleafield.stepping.runge_kutta import integrate
 from aleafield.stepping.schedule import Schedule
 
-JUMP_FACTOR = 1.0 + 3.0 / (2.0**0.5 - 1.0)
-"""Safety factor of space and quadrature where the data jump in x: the error then depends on where the jump lies in
-its element, which differs from level to level, and no order is seen."""
-
 
 @dataclass(frozen=True)
 class _Prepared:
@@ -145,12 +141,6 @@ class FieldModel:
                 )
                 off = {q.name: 2.0 for q in self.quantities if q.off_the_nodes(spaces)}
                 part = replace(part, least_factor=off, peaks=peaks)
-            if part.name != "time" and self.pairing.data_jump:
-                part = replace(
-                    part,
-                    least_factor=dict.fromkeys((q.name for q in self.quantities), JUMP_FACTOR),
-                    erratic=True,
-                )
             completed.append(part)
         return tuple(completed)
 

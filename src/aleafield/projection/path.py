@@ -42,6 +42,7 @@ def split_path(pairing: Pairing, level: Level) -> tuple[PathPart, ...]:
             coarse_ratio=width_ratio(points, coarse_q, q),
             expected_order=pairing.quadrature.order,
             observed_only=pairing.quadrature.observed_only,
+            erratic=pairing.data_jump,
             note=pairing.quadrature.reason,
         ),
         PathPart(
@@ -52,6 +53,7 @@ def split_path(pairing: Pairing, level: Level) -> tuple[PathPart, ...]:
             coarse_ratio=width_ratio(nodes, coarse_n, n),
             expected_order=pairing.space.order,
             observed_only=pairing.space.observed_only,
+            erratic=pairing.data_jump,
             note=pairing.space.reason,
         ),
         PathPart(

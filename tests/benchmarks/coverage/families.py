@@ -58,6 +58,33 @@ def _method(rng: np.random.Generator) -> str:
     return str(_pick(rng, "collocation", "galerkin"))
 
 
+def _cosine_mode(
+    rng: np.random.Generator,
+    duration: float,
+    strength: str,
+    start: str,
+    time_constant: str = "1.0",
+    most_steps: float = 12,
+) -> str:
+    """Study text of a linear field with the first cosine mode alone, on a random scheme."""
+    return f"""[domain]
+shape = "ring"
+length = "2*pi"
+[kernel]
+form = "cosine"
+coefficients = [0.0, "{strength}"]
+[rate]
+form = "linear"
+[initial]
+formula = "{start}"
+[dynamics]
+time_constant = {time_constant}
+duration = {duration!r}
+[scheme]
+{_ring_scheme(rng)}
+time_step = {duration / float(rng.uniform(1.5, most_steps))!r}"""
+
+
 def linear_ring(rng: np.random.Generator) -> Instance:
     """Linear field, Poisson kernel with random gain: u(0, T) is a sum of exponentials of the gain."""
     p, r = float(rng.uniform(0.2, 0.5)), float(rng.uniform(0.3, 0.6))
@@ -126,22 +153,7 @@ def growing_mode(rng: np.random.Generator) -> Instance:
     study = f"""
 [parameters]
 g = "{strength.text}"
-[domain]
-shape = "ring"
-length = "2*pi"
-[kernel]
-form = "cosine"
-coefficients = [0.0, "g/pi"]
-[rate]
-form = "linear"
-[initial]
-formula = "cos(x)"
-[dynamics]
-time_constant = 1.0
-duration = {duration!r}
-[scheme]
-{_ring_scheme(rng)}
-time_step = {duration / float(rng.uniform(1.5, 12))!r}
+{_cosine_mode(rng, duration, "g/pi", "cos(x)")}
 [[quantity]]
 name = "peak"
 measure = "maximum"
@@ -186,22 +198,7 @@ def lognormal_decay(rng: np.random.Generator) -> Instance:
         return np.asarray(np.exp(-(1 - strength) * duration / tau))
 
     study = f"""
-[domain]
-shape = "ring"
-length = "2*pi"
-[kernel]
-form = "cosine"
-coefficients = [0.0, "{strength!r}/pi"]
-[rate]
-form = "linear"
-[initial]
-formula = "cos(x)"
-[dynamics]
-time_constant = "{law.text}"
-duration = {duration!r}
-[scheme]
-{_ring_scheme(rng)}
-time_step = {duration / float(rng.uniform(1.5, 8))!r}
+{_cosine_mode(rng, duration, f"{strength!r}/pi", "cos(x)", repr(law.text), 8)}
 [[quantity]]
 name = "value"
 measure = "value"
@@ -386,22 +383,7 @@ def correlated(rng: np.random.Generator) -> Instance:
 [parameters]
 start = "lognormal({mu!r}, {sigma!r})"
 g = "normal({centre!r}, {spread!r})"
-[domain]
-shape = "ring"
-length = "2*pi"
-[kernel]
-form = "cosine"
-coefficients = [0.0, "g/pi"]
-[rate]
-form = "linear"
-[initial]
-formula = "start*cos(x)"
-[dynamics]
-time_constant = 1.0
-duration = {duration!r}
-[scheme]
-{_ring_scheme(rng)}
-time_step = {duration / float(rng.uniform(1.5, 12))!r}
+{_cosine_mode(rng, duration, "g/pi", "start*cos(x)")}
 [dependence]
 rank_correlation = [["start", "g", {spearman!r}]]
 [[quantity]]

@@ -1,6 +1,6 @@
 """A whole run of the analytic model, in this process or (as a program) in one of its own.
 
-python -m tests.archive.campaign FOLDER SAMPLES WIDTH WORKERS DELAY [METHOD]
+python -m tests.archive.small_runs FOLDER SAMPLES WIDTH WORKERS DELAY [METHOD]
 """
 
 from __future__ import annotations
@@ -119,7 +119,7 @@ def finish(layout: Layout, model: AnalyticModel, plan: Plan, workers: int) -> in
     return solved
 
 
-def campaign(
+def small_run(
     folder: Path,
     samples: int = 256,
     width: int = 16,
@@ -138,7 +138,7 @@ def campaign(
 
 
 def extend(folder: Path, samples: int) -> int:
-    """More samples for a campaign that ended: `samples` in all."""
+    """More samples for a small run that ended: `samples` in all."""
     layout = Layout(folder)
     plan = read_plan(layout)
     model = AnalyticModel(plan.allocation.method)
@@ -156,8 +156,8 @@ def as_program(
     delay: float = 0.0,
     method: SamplingMethod = "quasi-monte carlo",
 ) -> subprocess.Popen[str]:
-    """Start a campaign in a process of its own."""
-    command = [sys.executable, "-m", "tests.archive.campaign", str(folder)]
+    """Start a small run in a process of its own."""
+    command = [sys.executable, "-m", "tests.archive.small_runs", str(folder)]
     command += [str(samples), str(width), str(workers), str(delay), method]
     environment = {
         **os.environ,
@@ -190,5 +190,5 @@ def assert_same_values(folder: Path, reference: Path) -> None:
 
 if __name__ == "__main__":
     where, n, w, k, seconds, how = sys.argv[1:]
-    campaign(Path(where), int(n), int(w), int(k), float(seconds), how)  # type: ignore[arg-type]
+    small_run(Path(where), int(n), int(w), int(k), float(seconds), how)  # type: ignore[arg-type]
     print(resource.getrusage(resource.RUSAGE_SELF).ru_maxrss)
