@@ -16,6 +16,13 @@ from typing import TYPE_CHECKING, Any
 if TYPE_CHECKING:
     from aleafield.errors import AleafieldError, ArchiveError, InputError, Interrupted
     from aleafield.field.kernels import CosineKernel, ExponentialKernel, FormulaKernel, GaussianKernel
+    from aleafield.field.noise import (
+        CosineCorrelation,
+        ExponentialCorrelation,
+        GaussianCorrelation,
+        Noise,
+        WhiteCorrelation,
+    )
     from aleafield.field.rates import (
         FormulaRate,
         LinearRate,
@@ -28,6 +35,8 @@ if TYPE_CHECKING:
     from aleafield.quantities import (
         ActiveWidth,
         At,
+        Displacement,
+        EffectiveDiffusion,
         FormulaQuantity,
         FrontPosition,
         FrontSpeed,
@@ -65,6 +74,13 @@ if TYPE_CHECKING:
 _HOMES: dict[str, tuple[str, ...]] = {
     "aleafield.errors": ("AleafieldError", "ArchiveError", "InputError", "Interrupted"),
     "aleafield.field.kernels": ("CosineKernel", "ExponentialKernel", "FormulaKernel", "GaussianKernel"),
+    "aleafield.field.noise": (
+        "CosineCorrelation",
+        "ExponentialCorrelation",
+        "GaussianCorrelation",
+        "Noise",
+        "WhiteCorrelation",
+    ),
     "aleafield.field.rates": (
         "FormulaRate",
         "LinearRate",
@@ -77,6 +93,8 @@ _HOMES: dict[str, tuple[str, ...]] = {
     "aleafield.quantities": (
         "ActiveWidth",
         "At",
+        "Displacement",
+        "EffectiveDiffusion",
         "FormulaQuantity",
         "FrontPosition",
         "FrontSpeed",
@@ -119,9 +137,13 @@ __all__ = [
     "ArchiveError",
     "At",
     "Beta",
+    "CosineCorrelation",
     "CosineKernel",
     "Discrete",
+    "Displacement",
+    "EffectiveDiffusion",
     "Exponential",
+    "ExponentialCorrelation",
     "ExponentialKernel",
     "FormulaKernel",
     "FormulaQuantity",
@@ -130,6 +152,7 @@ __all__ = [
     "FrontSpeed",
     "FunctionQuantity",
     "Gamma",
+    "GaussianCorrelation",
     "GaussianKernel",
     "InputError",
     "Integral",
@@ -142,6 +165,7 @@ __all__ = [
     "Maximum",
     "Mean",
     "Minimum",
+    "Noise",
     "Norm",
     "Normal",
     "NormalOgiveRate",
@@ -158,6 +182,7 @@ __all__ = [
     "TruncatedNormal",
     "Uniform",
     "Value",
+    "WhiteCorrelation",
     "build_study",
     "check",
     "compare",

@@ -25,7 +25,13 @@ def test_a_quarter_of_the_main_samples_but_at_least_32(samples: int, extra: floa
 
 
 def test_the_least_is_rounded_up_to_whole_blocks() -> None:
-    assert number_of_probes(1000, 1.0, 1e6, at_least=50) == 64
+    assert number_of_probes(1000, 1.0, 10.0, at_least=50) == 64
+
+
+def test_more_are_asked_for_as_far_as_they_cost_no_more_than_the_samples() -> None:
+    """1000 / 10 = 100 probes cost as much as the samples, that is 6 blocks of 16; 32 whatever they cost."""
+    assert number_of_probes(1000, 1.0, 10.0, at_least=500) == 96
+    assert number_of_probes(1000, 1.0, 1e6, at_least=500) == 32
 
 
 def test_share_of_the_cost() -> None:

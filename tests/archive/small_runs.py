@@ -1,6 +1,6 @@
 """A whole run of the analytic model, in this process or (as a program) in one of its own.
 
-python -m tests.archive.small_runs FOLDER SAMPLES WIDTH WORKERS DELAY [METHOD]
+python -m tests.archive.small_runs FOLDER SAMPLES WIDTH WORKERS DELAY METHOD REPEATS
 """
 
 from __future__ import annotations
@@ -9,6 +9,7 @@ import os
 import resource
 import subprocess
 import sys
+from collections.abc import Sequence
 from pathlib import Path
 
 import numpy as np
@@ -19,6 +20,8 @@ from aleafield.archive.ensemble_file import Summary
 from aleafield.archive.ensemble_reader import EnsembleReader
 from aleafield.archive.layout import Layout
 from aleafield.archive.lock import locked
+from aleafield.field.noise_modes import NoiseModes
+from aleafield.randomness.inputs import Input
 from aleafield.runs.execution import (
     Cost,
     Question,
@@ -33,15 +36,18 @@ from aleafield.runs.progress import NoProgress
 from aleafield.runs.statements import Asked, statements_of
 from aleafield.sampling.allocation import Allocation
 from aleafield.sampling.request import SamplingMethod
-from tests.archive.analytic_model import DURATION, AnalyticModel
+from tests.archive.analytic_model import DURATION, INPUTS, MODES, AnalyticModel
 
 ROOT = Path(__file__).resolve().parents[2]
 MOMENT_TIMES = tuple(np.linspace(0.0, DURATION, 5).tolist())
 
 
-def allocation_of(method: SamplingMethod, samples: int) -> Allocation:
+NOISE_MODES = NoiseModes(MODES, 2.0, 1e-3, 1e-4)
+
+
+def allocation_of(method: SamplingMethod, samples: int, repeats: int = 1) -> Allocation:
     """So many samples; 16 scramblings for quasi-Monte Carlo."""
-    return Allocation(method, samples, 16 if method == "quasi-monte carlo" else 1)
+    return Allocation(method, samples, 16 if method == "quasi-monte carlo" else 1, "", repeats)
 
 
 def plan_of(model: AnalyticModel, method: SamplingMethod, samples: int, width: int) -> Plan:
@@ -56,7 +62,7 @@ def plan_of(model: AnalyticModel, method: SamplingMethod, samples: int, width: i
         time_step=0.5,
         schedule_times=(DURATION,),
         path=path,
-        allocation=allocation_of(method, samples),
+        allocation=allocation_of(method, samples, model.repeats),
         probes=probes,
         probe_share=share,
         operations={one.label: model.operations(one) for one in levels},
@@ -65,6 +71,7 @@ def plan_of(model: AnalyticModel, method: SamplingMethod, samples: int, width: i
         moment_times=MOMENT_TIMES,
         kept_times=(0.25, DURATION),
         data_folder="inputs",
+        noise=NOISE_MODES if model.noisy else None,
     )
 
 
@@ -77,6 +84,7 @@ def describe(model: AnalyticModel, plan: Plan, cost: Cost) -> Description:
             QuantityColumn("time of return", "ms", "time to level", True),
         ),
         samples=plan.samples,
+        repeats=plan.repeats,
         replicates=plan.allocation.replicates,
         level=plan.level,
         probes=plan.probes,
@@ -102,7 +110,7 @@ def summarise(reader: EnsembleReader, plan: Plan, cost: Cost) -> Summary:
     """The statements of both quantities."""
     asked = Asked((0.05, 0.5), (1.0,), 0.95)
     quantities = {
-        name: statements_of(reader, plan, name, asked, certain=False).as_json(reader.unit(name))
+        name: statements_of(reader, plan, name, asked).as_json(reader.unit(name))
         for name in reader.quantities
     }
     return {"quantities": quantities, "cost": {"measured_s": cost.wall}}
@@ -126,10 +134,13 @@ def small_run(
     workers: int = 1,
     delay: float = 0.0,
     method: SamplingMethod = "quasi-monte carlo",
-    parts: int = 3,
+    parts: int = 4,
+    repeats: int = 0,
+    inputs: Sequence[Input] = INPUTS,
 ) -> int:
     """Run, or go on with, the analytic model in a folder; how many chunks were solved."""
-    layout, model = Layout(folder), AnalyticModel(method, delay=delay, parts=parts)
+    layout = Layout(folder)
+    model = AnalyticModel(method, delay=delay, parts=parts, repeats=repeats, inputs=inputs)
     make_folder(folder)
     with locked(layout):
         if not layout.plan.exists():
@@ -137,13 +148,14 @@ def small_run(
         return finish(layout, model, read_plan(layout), workers)
 
 
-def extend(folder: Path, samples: int) -> int:
+def extend(folder: Path, samples: int, inputs: Sequence[Input] = INPUTS) -> int:
     """More samples for a small run that ended: `samples` in all."""
     layout = Layout(folder)
     plan = read_plan(layout)
-    model = AnalyticModel(plan.allocation.method)
+    method, repeats = plan.allocation.method, plan.repeats
+    model = AnalyticModel(method, repeats=0 if plan.noise is None else repeats, inputs=inputs)
     if is_complete(layout, plan):
-        plan = with_more_samples(plan, model, allocation_of(plan.allocation.method, samples))
+        plan = with_more_samples(plan, model, allocation_of(method, samples, repeats))
         write_plan(layout, plan)
     return finish(layout, model, plan, 1)
 
@@ -155,10 +167,11 @@ def as_program(
     workers: int = 1,
     delay: float = 0.0,
     method: SamplingMethod = "quasi-monte carlo",
+    repeats: int = 0,
 ) -> subprocess.Popen[str]:
     """Start a small run in a process of its own."""
     command = [sys.executable, "-m", "tests.archive.small_runs", str(folder)]
-    command += [str(samples), str(width), str(workers), str(delay), method]
+    command += [str(samples), str(width), str(workers), str(delay), method, str(repeats)]
     environment = {
         **os.environ,
         "PYTHONPATH": f"{ROOT / 'src'}{os.pathsep}{ROOT}",
@@ -189,6 +202,6 @@ def assert_same_values(folder: Path, reference: Path) -> None:
 
 
 if __name__ == "__main__":
-    where, n, w, k, seconds, how = sys.argv[1:]
-    small_run(Path(where), int(n), int(w), int(k), float(seconds), how)  # type: ignore[arg-type]
+    where, n, w, k, seconds, how, paths = sys.argv[1:]
+    small_run(Path(where), int(n), int(w), int(k), float(seconds), how, repeats=int(paths))  # type: ignore[arg-type]
     print(resource.getrusage(resource.RUSAGE_SELF).ru_maxrss)

@@ -74,6 +74,29 @@ def linear_ring(
     return read_text(text, path)
 
 
+def noisy_ring(
+    samples: int = 64,
+    method: str = "quasi-monte carlo",
+    repeats: int = 2,
+    amplitude: str = "1.0",
+    seed: int = 5,
+    more: str = "",
+    *,
+    inputs: bool = True,
+) -> Study:
+    """The study above under noise, with the value at 0 besides; without inputs if asked."""
+    noise = (
+        '[[quantity]]\nname = "centre"\nmeasure = "value"\nat = 0.0\n\n'
+        '[noise]\nstrength = 0.1\ncorrelation = "gaussian"\ncorrelation_length = 1.0\n'
+    )
+    text = linear_ring(samples, method, amplitude, more=noise + more).source.text
+    text = text.replace(f"samples = {samples}", f"samples = {samples}\nnoise_repeats = {repeats}")
+    text = text.replace("seed = 5", f"seed = {seed}")
+    if not inputs:
+        text = text.replace('"uniform(0.1, 0.2)"', "0.15").replace('"uniform(8, 12)"', "10.0")
+    return read_text(text)
+
+
 def peak_of_linear_ring(
     strength: np.ndarray, time_constant: np.ndarray, amplitude: float = 1.0
 ) -> np.ndarray:

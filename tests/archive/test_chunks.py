@@ -34,7 +34,7 @@ def chunks(draw: st.DrawFn) -> Chunk:
     inputs = st.dictionaries(st.sampled_from(["h", "rate.gain", "kernel.coefficients.1"]), column)
     values = st.dictionaries(st.sampled_from(["peak", "time of return", "width-1"]), column, min_size=1)
     records = Records(
-        samples=np.arange(first, first + count, dtype=np.int64),
+        realizations=np.arange(first, first + count, dtype=np.int64),
         inputs=draw(inputs),
         values=draw(values),
         margins=draw(values) if draw(st.booleans()) else {},
@@ -45,7 +45,11 @@ def chunks(draw: st.DrawFn) -> Chunk:
     if draw(st.booleans()):
         sums = [draw(arrays(np.float64, (2, 3), elements=DOUBLES)) for _ in range(5)]
         band = draw(arrays(np.float64, (draw(st.integers(0, 2)), 2, 3), elements=DOUBLES))
-        state = FieldState(FieldMoments(count, sums[0], (sums[1], sums[2]), (sums[3], sums[4])), band)
+        history = arrays(np.float64, (draw(st.integers(1, 3)), 2), elements=DOUBLES)
+        histories = {name: draw(history) for name in draw(st.sampled_from([(), ("peak",), ("x.1", "a b")]))}
+        state = FieldState(
+            FieldMoments(count, sums[0], (sums[1], sums[2]), (sums[3], sums[4])), band, histories
+        )
         kept = draw(arrays(np.float64, (count, 1, 3), elements=DOUBLES))
     return Chunk(first, records, state, kept, draw(st.floats(0, 1e6)))
 
@@ -53,13 +57,15 @@ def chunks(draw: st.DrawFn) -> Chunk:
 def arrays_of(chunk: Chunk) -> list[tuple[str, bytes]]:
     """Everything in a chunk, named, to the bit."""
     records = chunk.records
-    found = [("samples", records.samples), ("failed", records.failed), ("failed_at", records.failed_at)]
+    found: list[tuple[str, np.ndarray]] = [("realizations", records.realizations), ("failed", records.failed)]
+    found.append(("failed_at", records.failed_at))
     for group in (records.inputs, records.values, records.margins):
         found += list(group.items())
     if chunk.state is not None:
         moments = chunk.state.moments
         found += [("sum", a) for a in (moments.reference, *moments.first, *moments.second)]
         found += [("band", chunk.state.band), ("count", np.array(chunk.state.moments.count))]
+        found += list(chunk.state.histories.items())
     if chunk.kept is not None:
         found.append(("kept", chunk.kept))
     return [(name, array.tobytes()) for name, array in found]

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import re
 from pathlib import Path
 
 import numpy as np
@@ -10,34 +9,9 @@ import pytest
 
 from aleafield.archive.ensemble_reader import open_ensemble
 from aleafield.runs.run import run
+from tests.archive.conventions import findings, strangers
 from tests.archive.small_runs import small_run
 from tests.archive.studies import linear_ring
-
-# realization is the dimension that a statistic was taken over and is therefore no longer its own (CF 1.11,
-# section 7.3); the checker accepts that only where the variable keeps a scalar coordinate of that name
-COLLAPSED = (
-    "'s cell_methods name component realization does not match a dimension, area or auxiliary coordinate"
-)
-FALSE_ALARMS = (re.compile(rf"\S+{COLLAPSED}"),)
-"""Known false alarms of the checker; anything else is a fault of ours."""
-
-
-def findings(path: Path) -> list[str]:
-    """What the checker has to say against a file, in CF 1.11."""
-    from compliance_checker.runner import CheckSuite
-
-    CheckSuite.load_all_available_checkers()
-    suite = CheckSuite()
-    dataset = suite.load_dataset(str(path))
-    try:
-        results, errors = suite.run_all(dataset, ["cf:1.11"], [])["cf:1.11"]
-    finally:
-        dataset.close()
-    assert not errors
-    missed = [
-        result for result in results if isinstance(result.value, tuple) and result.value[0] < result.value[1]
-    ]
-    return sorted({message for result in missed for message in result.msgs})
 
 
 @pytest.fixture(scope="module")
@@ -49,14 +23,12 @@ def real(tmp_path_factory: pytest.TempPathFactory) -> Path:
 
 
 def test_a_real_run_conforms(real: Path) -> None:
-    unknown = [text for text in findings(real) if not any(alarm.fullmatch(text) for alarm in FALSE_ALARMS)]
-    assert unknown == []
+    assert strangers(real) == []
 
 
 def test_an_ensemble_with_fields_of_some_only_conforms(tmp_path: Path) -> None:
     small_run(tmp_path, 1040, 1040, method="monte carlo")
-    found = findings(tmp_path / "ensemble.nc")
-    assert [text for text in found if not any(alarm.fullmatch(text) for alarm in FALSE_ALARMS)] == []
+    assert strangers(tmp_path / "ensemble.nc") == []
     with open_ensemble(tmp_path) as dataset:
         finite = np.isfinite(dataset["u"].values).all(axis=(1, 2))
         assert "first 1024 realizations" in dataset["u"].attrs["comment"]

@@ -4,13 +4,12 @@ from __future__ import annotations
 
 import random
 import signal
-import subprocess
 import time
-from collections.abc import Callable
 from pathlib import Path
 
 import pytest
 
+from tests.archive.killing import kill, stored, wait_until
 from tests.archive.small_runs import as_program, assert_same_values, extend, small_run
 
 
@@ -20,11 +19,6 @@ def undisturbed(tmp_path_factory: pytest.TempPathFactory) -> Path:
     folder = tmp_path_factory.mktemp("undisturbed")
     small_run(folder, 512, 16)
     return folder
-
-
-def stored(folder: Path) -> int:
-    """Number of chunks that lie in the parts folder."""
-    return len(list(folder.glob("parts/n*.nc")))
 
 
 @pytest.mark.parametrize("width", [8, 24, 64])
@@ -37,21 +31,6 @@ def test_every_chunk_width(undisturbed: Path, tmp_path: Path, width: int) -> Non
 def test_every_number_of_workers(undisturbed: Path, tmp_path: Path, workers: int) -> None:
     small_run(tmp_path, 512, 16, workers)
     assert_same_values(tmp_path, undisturbed)
-
-
-def wait_until(condition: Callable[[], bool], process: subprocess.Popen[str]) -> bool:
-    """Poll until the condition holds; False when the process ended before."""
-    while not condition():
-        if process.poll() is not None:
-            return False
-        time.sleep(0.001)
-    return True
-
-
-def kill(process: subprocess.Popen[str]) -> None:
-    """SIGKILL; its workers hold its pipes, so the pipes close only when they have ended too."""
-    process.kill()
-    process.communicate(timeout=20)
 
 
 @pytest.mark.parametrize("workers", [1, 2])

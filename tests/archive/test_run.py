@@ -53,14 +53,16 @@ def test_values_are_those_of_the_closed_form(finished: Path) -> None:
 
 def test_the_table_holds_the_same_numbers(finished: Path) -> None:
     lines = (finished / "ensemble.csv").read_text().splitlines()
-    assert lines[0] == "sample,replicate,failed,kernel.coefficients.1,dynamics.time_constant,peak,arrival"
+    inputs = "kernel.coefficients.1,dynamics.time_constant"
+    assert lines[0] == f"sample,repeat,replicate,failed,{inputs},peak,arrival"
     table = np.array([[float(cell or "nan") for cell in line.split(",")] for line in lines[1:]])
     with reading(finished / "ensemble.nc") as reader:
         assert np.array_equal(table[:, 0], np.arange(128))
-        assert np.array_equal(table[:, 1], np.arange(128) % 16)
-        for column, name in ((3, "kernel.coefficients.1"), (4, "dynamics.time_constant")):
+        assert not table[:, 1].any(), "without noise a sample has one run"
+        assert np.array_equal(table[:, 2], np.arange(128) % 16)
+        for column, name in ((4, "kernel.coefficients.1"), (5, "dynamics.time_constant")):
             assert np.array_equal(table[:, column], reader.input(name))
-        for column, name in ((5, "peak"), (6, "arrival")):
+        for column, name in ((6, "peak"), (7, "arrival")):
             assert np.array_equal(table[:, column], reader.values(name), equal_nan=True)
 
 

@@ -95,8 +95,8 @@ def test_samples_that_fail_are_named(capsys: pytest.CaptureFixture[str], tmp_pat
         assert f"sample {entry['sample']} (field not finite at t = {entry['time']:.4g})" in lines[0]
     assert "Traceback" not in said.err
     surviving = [line.split(",") for line in (tmp_path / "out" / "ensemble.csv").read_text().splitlines()[1:]]
-    assert sum(cells[2] == "0" for cells in surviving) == 200 - failed["count"]
-    assert all(float(cells[3]) < 0.5**0.5 for cells in surviving if cells[2] == "0")
+    assert sum(cells[3] == "0" for cells in surviving) == 200 - failed["count"]
+    assert all(float(cells[4]) < 0.5**0.5 for cells in surviving if cells[3] == "0")
 
 
 def test_a_run_of_which_nothing_is_left(capsys: pytest.CaptureFixture[str], tmp_path: Path) -> None:

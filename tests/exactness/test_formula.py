@@ -10,6 +10,7 @@ import numpy as np
 import pytest
 
 from aleafield.errors import InputError
+from aleafield.field.formula_term import FormulaTerm
 from aleafield.formula import FUNCTIONS, LAW_NAMES, RESERVED, Formula, constant, nearest_name, order_of
 
 ORACLES: dict[str, Callable[[float], float]] = {
@@ -148,6 +149,52 @@ def test_switching_times_are_found(text: str, switches: list[str], mixed: bool) 
 )
 def test_kinks_in_a_variable(text: str, kinked: bool) -> None:
     assert Formula(text).kinks_in("x") is kinked
+
+
+@pytest.mark.parametrize(
+    ("text", "degree"),
+    [
+        ("3 * a + e", 0),
+        ("u", 1),
+        ("-u + 2 * x - (a * u) / (1 + x**2)", 1),
+        ("u * u - u", 2),
+        ("(1 - u)**3 * u", 4),
+        ("(u**2)**1.0", 2),
+        ("u**0 + 1", 0),
+        ("exp(x)**a", 0),
+        ("u - u", 1),
+        ("u * (t < 3)", 1),
+        ("where(x > 0, u**2, u)", 2),
+        ("where(u > 0, 1, 2)", math.inf),
+        ("(u > 0)", math.inf),
+        ("abs(u)", math.inf),
+        ("u**2 / u", math.inf),
+        ("u**-1", math.inf),
+        ("u**0.5", math.inf),
+        ("u**a", math.inf),
+        ("2**u", math.inf),
+        ("0 * exp(u)", math.inf),
+        ("maximum(x, u)", math.inf),
+    ],
+)
+def test_degree_in_a_name(text: str, degree: float) -> None:
+    """By structure, nothing simplified; a polynomial p has |p(s u)| growing like s to the degree."""
+    formula = Formula(text)
+    assert formula.degree_in("u") == degree
+    if math.isfinite(degree) and text != "u - u":
+        values = {"a": 0.7, "x": 0.3, "t": 1.0}
+        first, last = (float(formula.evaluate({**values, "u": -s})) for s in (1e6, 2e6))
+        assert math.log2(last / first) == pytest.approx(degree, abs=1e-5)
+
+
+def test_degree_through_names_beside() -> None:
+    term = FormulaTerm(
+        Formula("s * v + w"), {"v": Formula("a * u"), "w": Formula("v * v"), "s": 2.0, "a": 3.0}
+    )
+    assert term.degree_in("u") == 2
+    assert term.degree_in("x") == 0
+    assert FormulaTerm(Formula("s * v"), {"v": Formula("a * u"), "s": 2.0}).degree_in("u") == 1
+    assert FormulaTerm(Formula("v"), {"v": Formula("tanh(u)")}).degree_in("u") == math.inf
 
 
 def test_formulas_are_values() -> None:

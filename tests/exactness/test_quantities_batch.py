@@ -12,6 +12,8 @@ from aleafield.formula import Formula
 from aleafield.geometry import Domain
 from aleafield.quantities import (
     ActiveWidth,
+    Displacement,
+    EffectiveDiffusion,
     FormulaQuantity,
     FrontPosition,
     FrontSpeed,
@@ -30,7 +32,7 @@ from aleafield.quantities import (
 )
 from aleafield.spaces import Space
 from aleafield.stepping.view import StepView
-from tests.exactness.trajectories import PAIRS, Result, measures, random_elements, space_of
+from tests.exactness.trajectories import PAIRS, Result, measures, random_elements, result_of, space_of
 
 SAMPLES = 24
 TIMES = (0.0, 0.4, 1.0)
@@ -58,6 +60,8 @@ def quantities(domain: Domain, level: FloatArray) -> list[Quantity]:
         FormulaQuantity("l", term("sin(u)"), "maximum"),
         FormulaQuantity("m", term("(u > 0) + t"), "value", 0.37),
         FunctionQuantity("n", largest_nodal_value),
+        Displacement("s", (0.0, 1.0)),
+        EffectiveDiffusion("t", (0.4, 1.0)),
     ]
     if domain.periodic:
         return [*everywhere, SpectralPower("o", 2, WINDOW)]
@@ -81,12 +85,11 @@ def states(space: Space) -> list[FloatArray]:
 
 
 def run(quantity: Quantity, space: Space, fields: list[FloatArray]) -> Result:
-    observer = quantity.observer(space, TIMES[-1])
     u, du = fields[: len(TIMES)], fields[len(TIMES) :]
-    observer.start(TIMES[0], u[0])
-    for k in range(len(TIMES) - 1):
-        observer.step(StepView(TIMES[k], u[k], du[k], TIMES[k + 1], u[k + 1], du[k + 1]))
-    return observer.result()
+    steps = [
+        StepView(TIMES[k], u[k], du[k], TIMES[k + 1], u[k + 1], du[k + 1]) for k in range(len(TIMES) - 1)
+    ]
+    return result_of(quantity, space, steps)
 
 
 def check_equal(found: Result, expected: Result, rows: FloatArray) -> None:

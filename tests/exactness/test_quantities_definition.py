@@ -15,6 +15,8 @@ from aleafield.formula import Formula
 from aleafield.quantities import (
     ActiveWidth,
     At,
+    Displacement,
+    EffectiveDiffusion,
     FormulaQuantity,
     FrontPosition,
     FrontSpeed,
@@ -57,6 +59,8 @@ def test_every_measure_has_a_name_first_and_its_time_last() -> None:
         "spectral power",
         "formula",
         "function",
+        "displacement",
+        "effective diffusion",
     }
     for measure in found.values():
         names = [spec.name for spec in dataclasses.fields(measure)]  # type: ignore[arg-type]
@@ -79,12 +83,21 @@ def test_every_measure_has_a_name_first_and_its_time_last() -> None:
         (TimeToLevel("q", 0.1, 0.0), "ms", True),
         (SpectralPower("q", 1), "mV2", False),
         (FormulaQuantity("q", TERM), "1", False),
+        (Displacement("q", (0.0, 1.0)), "mm", False),
+        (EffectiveDiffusion("q", (0.0, 1.0)), "mm2 ms-1", False),
     ],
 )
 def test_units_and_occurrence(quantity: Quantity, units: str, may_not_occur: bool) -> None:
     assert UNITS.derived(quantity.dimension) == units
     assert quantity.may_not_occur is may_not_occur
-    assert quantity.is_peak_position is isinstance(quantity, PeakPosition)
+    assert UNITS.derived(quantity.history_dimension) == (
+        "mm" if isinstance(quantity, EffectiveDiffusion) else units
+    )
+    for domain in (INTERVAL, RING):
+        wandering = isinstance(quantity, Displacement | EffectiveDiffusion) and domain is INTERVAL
+        of_peak = isinstance(quantity, PeakPosition) or wandering
+        assert quantity.is_peak_position(domain) is of_peak
+        assert quantity.takes_extremum(domain) is (of_peak or isinstance(quantity, Maximum))
 
 
 def test_a_level_may_be_a_law_or_an_expression() -> None:
@@ -114,6 +127,7 @@ def test_a_law_beside_a_formula_is_an_input() -> None:
         (Mean("q", Over(2.0, 5.0, "mean")), (2.0, 5.0)),
         (FrontSpeed("q", 0.1, (3.0, 7.0)), (3.0, 7.0)),
         (TimeToLevel("q", 0.1, 0.0), (10.0,)),
+        (Displacement("q", (0.0, 7.0)), (0.0, 7.0)),
     ],
 )
 def test_times_for_the_schedule(quantity: Quantity, times: tuple[float, ...]) -> None:
@@ -148,6 +162,7 @@ def test_points_off_the_nodes() -> None:
         (Mean("q", Over(3.0, 30.0, "mean")), "quantity.q.over: time 30; "),
         (Mean("q", Over(3.0, 4.0, "median")), "quantity.q.reduce: 'median'; one of maximum, minimum, mean"),  # type: ignore[arg-type]
         (FrontSpeed("q", 0.1, (5.0, 4.0)), r"quantity.q.between: \[5, 4\]; "),
+        (EffectiveDiffusion("q", (5.0, 40.0)), "quantity.q.between: time 40; "),
     ],
 )
 def test_times_that_cannot_be(quantity: Quantity, message: str) -> None:

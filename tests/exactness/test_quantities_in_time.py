@@ -159,11 +159,10 @@ def test_a_cubic_with_known_extremes() -> None:
         polynomials.append(Polynomial.fromroots([low, high]).integ())
     at = [np.array([p(theta) for p in polynomials]) for theta in (0.0, 1 / 3, 2 / 3, 1.0)]
     slopes = [np.array([p.deriv()(theta) for p in polynomials]) for theta in (0.0, 1.0)]
-    lowest, highest = np.array([extremes(p, 0.0, 1.0) for p in polynomials]).T
+    highest = np.array([extremes(p, 0.0, 1.0)[1] for p in polynomials])
     means = np.array([p.integ()(1.0) for p in polynomials])
     for cubic in (Cubic.through(*at), Cubic.hermite(at[0], slopes[0], at[3], slopes[1])):
         np.testing.assert_allclose(cubic.maximum(), highest, atol=1e-13)
-        np.testing.assert_allclose(cubic.minimum(), lowest, atol=1e-13)
         np.testing.assert_allclose(cubic.mean(), means, atol=1e-13)
         for share in (0.01, 0.5, 0.99):
             level = at[0] + share * (highest - at[0])

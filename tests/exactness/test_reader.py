@@ -8,9 +8,17 @@ from pathlib import Path
 import numpy as np
 import pytest
 
+import aleafield
 from aleafield.errors import InputError
 from aleafield.field.equation import FieldEquation
 from aleafield.field.kernels import CosineKernel, FormulaKernel, GaussianKernel
+from aleafield.field.noise import (
+    CosineCorrelation,
+    ExponentialCorrelation,
+    GaussianCorrelation,
+    Noise,
+    WhiteCorrelation,
+)
 from aleafield.field.rates import LinearRate, LogisticRate, StepRate
 from aleafield.formula import Formula
 from aleafield.geometry import Interval, Ring
@@ -255,6 +263,93 @@ def test_functions_come_after_the_quantities_of_the_text() -> None:
         read_text(MINIMAL_STUDY, extra_quantities=(FunctionQuantity("width", _mean),))
 
 
+NOISE = '\n[noise]\nstrength = "s"\ncorrelation = "gaussian"\ncorrelation_length = "uniform(0.2, 0.4)"\n'
+NOISE += '[parameters]\ns = "uniform(0.01, 0.02)"\n'
+
+
+def test_noise_and_its_inputs() -> None:
+    """Inputs of the noise come after those of the rest of the equation, and have its units."""
+    study = read_text(MINIMAL_STUDY + NOISE + '\n[units]\nlength = "mm"\ntime = "ms"\nactivity = "mV"\n')
+    assert study.equation.noise == Noise(Formula("s"), GaussianCorrelation(Uniform(0.2, 0.4)))
+    paths = {entry.path: entry.units for entry in study.inputs}
+    assert list(paths) == ["s", "kernel.width", "noise.correlation_length"]
+    assert paths["noise.correlation_length"] == "mm"
+    assert study.sampling.noise_repeats == 1
+    assert read_text(MINIMAL_STUDY).equation.noise is None
+
+
+@pytest.mark.parametrize(
+    ("shape", "entries", "correlation"),
+    [
+        ("interval", 'correlation = "exponential"\ncorrelation_length = 2', ExponentialCorrelation(2.0)),
+        ("ring", 'correlation = "cosine"\ncoefficients = [1, 0.5]', CosineCorrelation((1.0, 0.5))),
+        ("interval", 'correlation = "white"', WhiteCorrelation()),
+    ],
+)
+def test_correlations(shape: str, entries: str, correlation: object) -> None:
+    text = _minimal_on(shape).replace(LOGISTIC, 'form = "linear"').replace(WIDTH, 'measure = "mean"')
+    study = read_text(f"{text}\n[noise]\nstrength = 0.1\n{entries}\n[sampling]\nnoise_repeats = 4\n")
+    assert study.equation.noise == Noise(0.1, correlation)  # type: ignore[arg-type]
+    assert study.sampling.noise_repeats == 4
+
+
+WHITE = '\n[noise]\nstrength = 0.1\ncorrelation = "white"\n'
+WIDTH = 'measure = "active width"\nlevel = 0.3'
+ALLOWED_FOR_WHITE = {
+    'measure = "mean"': True,
+    'measure = "integral"\nover = [0, 60]\nreduce = "maximum"': True,
+    'measure = "spectral power"\nwavenumber = 2': True,
+    'measure = "formula"\nformula = "2*u*x - 1"\nin_space = "integral"': True,
+    'measure = "formula"\nformula = "u*u"\nin_space = "integral"': False,
+    'measure = "formula"\nformula = "abs(u)"\nin_space = "mean"': False,
+    'measure = "formula"\nformula = "u"\nin_space = "maximum"': False,
+    'measure = "formula"\nformula = "u"\nin_space = "value"\nat = 0': False,
+    'measure = "norm"': False,
+    'measure = "maximum"': False,
+    'measure = "value"\nat = 0': False,
+    'measure = "peak position"': False,
+    'measure = "time to level"\nlevel = 0.1\nat = 0': False,
+    WIDTH: False,
+}
+
+
+@pytest.mark.parametrize(("measure", "allowed"), ALLOWED_FOR_WHITE.items(), ids=str)
+def test_what_can_be_asked_of_white_noise(measure: str, allowed: bool) -> None:
+    text = _minimal_on("ring").replace(LOGISTIC, 'form = "linear"').replace(WIDTH, measure) + WHITE
+    if allowed:
+        assert read_text(text).quantities
+        return
+    with pytest.raises(InputError, match="not a function") as caught:
+        read_text(text)
+    assert caught.value.key == "quantity.width.measure"
+
+
+def test_noise_from_python_is_the_noise_of_the_text() -> None:
+    text = _minimal_on("ring").replace(WIDTH, 'measure = "mean"') + "\n[sampling]\nnoise_repeats = 2\n"
+    for noise, entries in (
+        (aleafield.Noise("s / 2", aleafield.GaussianCorrelation(Uniform(0.2, 0.4))),
+         'strength = "s / 2"\ncorrelation = "gaussian"\ncorrelation_length = "uniform(0.2, 0.4)"'),
+        (aleafield.Noise("s", aleafield.CosineCorrelation((0.0, 1.0))),
+         'strength = "s"\ncorrelation = "cosine"\ncoefficients = [0, 1]'),
+    ):  # fmt: skip
+        written = read_text(f'{text}[parameters]\ns = "uniform(0.1, 0.2)"\n[noise]\n{entries}\n')
+        built = aleafield.build_study(
+            "Another title",
+            domain=Ring(20.0),
+            kernel=GaussianKernel(0.25, Uniform(0.8, 1.2)),
+            rate=LogisticRate(10.0, 0.3),
+            time_constant=10.0,
+            duration=60.0,
+            quantities=[aleafield.Mean("width")],
+            parameters={"s": Uniform(0.1, 0.2)},
+            drive="0.8 * exp(-x**2 / 2)",
+            noise=noise,
+            sampling={"noise_repeats": 2},
+        )
+        assert built.equation.noise == written.equation.noise
+        assert built.digest == written.digest
+
+
 SAME_DIGEST = [
     ("title = ", "# a comment\ntitle = "),
     ('"How wide does an evoked bump grow?"', '"Another title"'),
@@ -273,6 +368,7 @@ OTHER_DIGEST = [
     ("[dynamics]", "[sampling]\nsamples = 2048\n\n[dynamics]"),
     ("level = 0.3", "level = 0.31"),
     ("level = 0.3", "level = 0.3\ntime = 30.0"),
+    ("level = 0.3", "level = 0.3\n" + NOISE),
 ]
 
 

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import inspect
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Iterable, Sequence
 from dataclasses import dataclass
 from itertools import pairwise
 
@@ -11,9 +11,9 @@ import numpy as np
 
 from aleafield.arrays import FloatArray
 from aleafield.geometry import Domain, Interval, Ring
-from aleafield.quantities import Quantity
+from aleafield.quantities import History, Observer, Quantity
 from aleafield.spaces import Space, make_space
-from aleafield.stepping.view import StepView
+from aleafield.stepping.view import AnyStep, NoisyStep, StepView
 
 INTERVAL = Interval(-3.0, 4.0)
 RING = Ring(7.0)
@@ -46,27 +46,42 @@ def separable(profile: Callable[[FloatArray], FloatArray], course: np.polynomial
     return Trajectory(lambda x, t: course(t) * profile(x), lambda x, t: slope(t) * profile(x))
 
 
-def follow(quantity: Quantity, space: Space, trajectory: Trajectory, times: Sequence[float]) -> Result:
-    """The result of a quantity's observer that is shown the trajectory, interpolated at the nodes, step by "
-    "step."""
+def smooth_steps(space: Space, trajectory: Trajectory, times: Sequence[float]) -> list[AnyStep]:
+    """The steps of a trajectory, interpolated at the nodes."""
 
     def at(field: Field, t: float) -> FloatArray:
         return space.coefficients(field(space.nodes, t))
 
-    observer = quantity.observer(space, times[-1])
-    observer.start(times[0], at(trajectory.field, times[0]))
-    for t0, t1 in pairwise(times):
-        observer.step(
-            StepView(
-                t0,
-                at(trajectory.field, t0),
-                at(trajectory.rate, t0),
-                t1,
-                at(trajectory.field, t1),
-                at(trajectory.rate, t1),
-            )
-        )
+    of, rate = trajectory.field, trajectory.rate
+    return [StepView(t, at(of, t), at(rate, t), s, at(of, s), at(rate, s)) for t, s in pairwise(times)]
+
+
+def noisy_steps(space: Space, field: Field, times: Sequence[float]) -> list[AnyStep]:
+    """The steps of a path that is known at their ends alone; nobody looks at its noise, and there is none."""
+    states = [space.coefficients(field(space.nodes, t)) for t in times]
+    still = np.zeros((1, len(states[0]), 1))
+    ends = zip(pairwise(times), pairwise(states), strict=True)
+    return [NoisyStep(t, u, s, v, index, still) for index, ((t, s), (u, v)) in enumerate(ends)]
+
+
+def show(observers: Iterable[Observer | History], steps: Sequence[AnyStep]) -> None:
+    """The initial state and all steps."""
+    for observer in observers:
+        observer.start(steps[0].t0, steps[0].u0)
+        for step in steps:
+            observer.step(step)
+
+
+def result_of(quantity: Quantity, space: Space, steps: Sequence[AnyStep]) -> Result:
+    """The result of a quantity that no noise is told of, shown the steps of a whole run."""
+    observer = quantity.observer(space, steps[-1].t1)
+    show([observer], steps)
     return observer.result()
+
+
+def follow(quantity: Quantity, space: Space, trajectory: Trajectory, times: Sequence[float]) -> Result:
+    """The result of a quantity's observer that is shown the trajectory, interpolated at the nodes, step by step."""
+    return result_of(quantity, space, smooth_steps(space, trajectory, times))
 
 
 def of_state(quantity: Quantity, space: Space, u: FloatArray) -> Result:

@@ -213,7 +213,7 @@ def test_failed_samples_are_said_and_end_with_status_one(tmp_path: Path) -> None
     failed = result.summary["failed"]
     assert failed["count"] > 0.05 * 64
     assert sum(failed["reasons"].values()) == failed["count"] == failed["listed"] == len(failed["list"])
-    assert set(failed["list"][0]) == {"sample", "reason", "time", "inputs"}
+    assert set(failed["list"][0]) == {"sample", "repeat", "reason", "time", "inputs"}
     assert any("samples failed" in warning for warning in result.summary["warnings"])
     assert any("more than 5 %" in demand for demand in result.unmet)
     assert result.exit_status == 1

@@ -54,7 +54,7 @@ in_space = "mean"
 def choices(text: str) -> Choices:
     """What is settled for a study."""
     study = read_text(text)
-    return make_choices(study, allocate(study.sampling, len(study.inputs)))
+    return make_choices(study, allocate(study.sampling, len(study.inputs), False))
 
 
 def test_a_quantity_that_is_zero_by_symmetry_asks_for_no_smaller_step() -> None:

@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 import math
+from dataclasses import replace
 from typing import Any
 
 import numpy as np
 
-from aleafield.report.data import FieldRecord, ModelText, Provenance, ReportData
+from aleafield.report.data import FieldRecord, HistoryRecord, ModelText, Provenance, ReportData
 from aleafield.units import Units
 
 STUDY_TEXT = """title = "How wide does an evoked bump grow?"
@@ -73,7 +74,7 @@ def probability(value: float, sampling: float, space: float) -> dict[str, Any]:
 
 
 def sample_summary() -> dict[str, Any]:
-    """A summary of three quantities in the shape of summary.json."""
+    """A summary of three quantities of a field without noise in the shape of summary.json."""
     mean = stated(
         3.14159265, space=0.0093, quadrature=0.0031, time=0.00021, bias_noise=0.0011, sampling=0.0147
     )
@@ -134,6 +135,7 @@ def sample_summary() -> dict[str, Any]:
     }
     return {
         "schema": 1,
+        "field": None,
         "quantities": {"width": width, "peak height": peak, "crossing <time>": crossing},
         "inputs": {
             "h": {"law": "normal(0.30, 0.02)", "units": "1", "mean": 0.3, "sd": 0.02},
@@ -159,6 +161,7 @@ def sample_summary() -> dict[str, Any]:
             "quadrature_points": 257,
             "time_step": 0.5,
             "probes": 128,
+            "noise": None,
             "parts": {
                 name: {"expected_order": order, "proven": True, "note": f"an invented reason for {name}"}
                 for name, order in (("space", 2.0), ("quadrature", 2.0), ("time", 4.0))
@@ -257,4 +260,124 @@ def sample_report() -> ReportData:
             "crossing <time>": 1e-7 + random.exponential(2.3e-8, 2048),
         },
         fields=sample_fields(),
+    )
+
+
+def noisy_summary() -> dict[str, Any]:
+    """A summary of a field with noise: two quantities that drift, one of which is bounded on one side only."""
+    summary = sample_summary()
+    drift: dict[str, Any] = {
+        "units": "mm",
+        "mean": stated(
+            0.1421, space=0.0021, quadrature=0.0004, time=0.0061, noise_modes=0.0083, sampling=0.0152
+        ),
+        "sd": stated(
+            0.5621, space=0.0013, quadrature=0.0002, time=0.0052, noise_modes=0.0031, sampling=0.0112
+        ),
+        "quantiles": {},
+        "exceed": {},
+        "occurs": None,
+        "sensitivity": {},
+        "variance": {
+            "parameters": stated(0.19421, sampling=0.0312),
+            "noise": stated(0.12175, sampling=0.0049),
+            "share": stated(0.6147, left=0.0982, low=0.0, high=1.0, sampling=0.0911),
+            "total": stated(0.31596, sampling=0.0251),
+        },
+    }
+    drift["mean"]["orders"] = {
+        "time": {"observed": 0.93, "expected": 1.0, "factor": 2.25},
+        "noise_modes": {"observed": None, "expected": None, "factor": 1.2612},
+    }
+    highest = {
+        "units": "mV",
+        "mean": one_sided(
+            0.8213, note="the path between the ends of the steps is not seen", space=0.012, sampling=0.009
+        ),
+        "sd": one_sided(0.0514, above=False, note="the path is not seen", space=0.0012, sampling=0.0031),
+        "quantiles": {"0.95": one_sided(0.9102, note="the path is not seen", space=0.0014, sampling=0.0052)},
+        "exceed": {},
+        "occurs": None,
+        "sensitivity": {},
+        "variance": {
+            "parameters": stated(0.0, low=0.0, sampling=0.00012),
+            "noise": stated(0.00264, sampling=0.00016),
+            "share": stated(0.0, low=0.0, high=1.0, sampling=0.0447),
+            "total": stated(0.00264, sampling=0.00018),
+        },
+    }
+    summary["quantities"] = {"drift": drift, "highest": highest}
+    summary["scheme"]["noise"] = {
+        "correlation": "gaussian",
+        "modes": 65,
+        "ring_length": 40.0,
+        "dropped_share": 6.3e-5,
+        "image_error": 4.1e-7,
+        "note": "",
+    }
+    summary["scheme"]["parts"]["noise_modes"] = {
+        "expected_order": None,
+        "proven": True,
+        "note": "the dropped variance is known",
+    }
+    summary["sampling"] = {
+        "method": "monte carlo",
+        "samples": 512,
+        "replicates": 1,
+        "points_per_replicate": 512,
+        "noise_repeats": 4,
+    }
+    summary["field"] = [
+        {
+            "time": time,
+            "variance": stated(variance, sampling=0.02 * variance),
+            "correlation_length": stated(length, sampling=0.013),
+        }
+        for time, variance, length in ((30.0, 0.00121, 0.712), (60.0, 0.00264, 0.731))
+    ]
+    summary["failed"] |= {
+        "list": [{"sample": 411, "repeat": 2, "time": 3.5, "inputs": {"h": 0.2513, "rate.gain": 13.91}}],
+        "listed": 1,
+        "count": 1,
+        "reasons": {"not_finite": 1},
+    }
+    summary["aim"] = None
+    summary["warnings"] = []
+    return summary
+
+
+def one_sided(value: float, note: str, above: bool = True, **parts: float) -> dict[str, Any]:
+    """A statistic with an open end above (or below), where the time part bounds nothing."""
+    found = stated(value, **parts)
+    found["interval"][1 if above else 0] = None
+    found["error"]["total"] = None
+    return {**found, "notes": [f"time: no bound {'above' if above else 'below'}: {note}"]}
+
+
+def sample_history(scale: float, start: float, units: str, followed: str = "") -> HistoryRecord:
+    """A fan of Brownian paths with a random drift, 41 times over 60 ms."""
+    random = np.random.default_rng(20261202)
+    t = np.linspace(0.0, 60.0, 41)
+    steps = random.normal(0.0, np.sqrt(60 / 40), (1024, 40)) + random.normal(0.02, 0.05, (1024, 1))
+    walks = start + scale * np.concatenate([np.zeros((1024, 1)), np.cumsum(steps, axis=1)], axis=1)
+    fan = np.quantile(walks, [0.05, 0.25, 0.5, 0.75, 0.95], axis=0)
+    return HistoryRecord(followed, units, t, fan, walks[:6], 1024)
+
+
+def noisy_report() -> ReportData:
+    """The report of a field with noise, its quantities followed in time."""
+    plain, random = sample_report(), np.random.default_rng(11)
+    return replace(
+        plain,
+        summary=noisy_summary(),
+        measures={"drift": "displacement", "highest": "maximum"},
+        model=replace(
+            plain.model,
+            noise="gaussian (strength 0.02 mV, correlation length 0.5 mm), 65 modes of a ring of 40 mm",
+        ),
+        values={"drift": random.normal(0.1421, 0.5621, 2048), "highest": random.normal(0.8213, 0.0514, 2048)},
+        histories={
+            "drift": sample_history(0.07, 0.0, "mm", "displacement since t = 0"),
+            "highest": sample_history(0.006, 0.8, "mV"),
+        },
     )

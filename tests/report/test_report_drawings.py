@@ -19,7 +19,7 @@ from aleafield.report.figures.field_maps import even_grid
 from aleafield.report.findings import quantity_findings
 from aleafield.report.image import png
 from aleafield.report.palette import DARK, LIGHT, linear_light, map_colours, perceptual
-from aleafield.report.parts import PARTS
+from aleafield.report.parts import CAUSES, PARTS
 from aleafield.report.svg import Frame
 from tests.report.reading import SVG, words
 from tests.report.sample_report import sample_report
@@ -177,13 +177,12 @@ VISION = {
 @pytest.mark.parametrize("vision", VISION)
 @pytest.mark.parametrize("palette", [LIGHT, DARK], ids=["light", "dark"])
 def test_neighbouring_parts_stay_apart(palette: dict[str, str], vision: str) -> None:
-    """Any two colours differ by 0.08 in Oklab at least; 0.02 is about what the eye just tells apart."""
-    colours = np.clip(
-        linear_light([palette[f"part-{part.style}"] for part in PARTS]) @ VISION[vision].T, 0, 1
-    )
-    lab = perceptual(colours)
-    apart = np.linalg.norm(lab[:, None] - lab[None], axis=-1)
-    assert apart[~np.eye(len(PARTS), dtype=bool)].min() > 0.08
+    """Any two colours of a picture differ by 0.08 in Oklab at least; 0.02 is about what the eye just tells apart."""
+    for names in ([part.style for part in PARTS], [cause.key for cause in CAUSES]):
+        colours = np.clip(linear_light([palette[f"part-{name}"] for name in names]) @ VISION[vision].T, 0, 1)
+        lab = perceptual(colours)
+        apart = np.linalg.norm(lab[:, None] - lab[None], axis=-1)
+        assert apart[~np.eye(len(names), dtype=bool)].min() > 0.08
 
 
 def contrast(first: str, second: str) -> float:
@@ -195,8 +194,8 @@ def contrast(first: str, second: str) -> float:
 @pytest.mark.parametrize("palette", [LIGHT, DARK], ids=["light", "dark"])
 def test_text_can_be_read(palette: dict[str, str]) -> None:
     """WCAG 2.1 asks 4.5 for text."""
-    for part in PARTS:
-        assert contrast(palette[f"part-{part.style}"], palette[f"on-part-{part.style}"]) >= 4.5, part
+    for name in (*(part.style for part in PARTS), *(cause.key for cause in CAUSES)):
+        assert contrast(palette[f"part-{name}"], palette[f"on-part-{name}"]) >= 4.5, name
     for ink in ("ink", "quiet", "accent", "mark", "alarm"):
         for ground in ("paper", "panel"):
             assert contrast(palette[ink], palette[ground]) >= 4.5, (ink, ground)

@@ -34,6 +34,7 @@ b = 0.25
 [dynamics]
 time_constant = "uniform(9, 11)"
 duration = 5.0
+{noise}
 [scheme]
 {scheme}
 [sampling]
@@ -51,9 +52,10 @@ def study(
     rate: str = 'form = "logistic"\ngain = 2',
     scheme: str = "nodes = 16\ntime_step = 0.5",
     level: float = 0.6,
+    noise: str = "",
 ) -> Study:
     """A small study on a ring."""
-    return read_text(STUDY.format(kernel=kernel, rate=rate, scheme=scheme, level=level))
+    return read_text(STUDY.format(kernel=kernel, rate=rate, scheme=scheme, level=level, noise=noise))
 
 
 @pytest.fixture(scope="module")
@@ -78,6 +80,8 @@ def folder(tmp_path_factory: pytest.TempPathFactory) -> Path:
                 "duration": "5 ms",
                 "integrals": "the kernel acted by its exact Fourier symbol on the firing rate at 16 points",
                 "steps": 10,
+                "noise": None,
+                "bridged": (),
             },
         ),
         (
@@ -105,8 +109,15 @@ def folder(tmp_path_factory: pytest.TempPathFactory) -> Path:
                 "integrals": "integrals of the step rate resolved the threshold crossings between 64 points",
             },
         ),
+        (
+            {
+                "noise": '[noise]\nstrength = "uniform(0.1, 0.2)"\ncorrelation = "cosine"\n'
+                "coefficients = [1.0, 0.5]"
+            },
+            {"noise": "cosine (strength uniform(0.1, 0.2) mV, coefficients 1, 0.5), 3 modes of the ring"},
+        ),
     ],
-    ids=["cosine", "formula", "step"],
+    ids=["cosine", "formula", "step", "noise"],
 )
 def test_a_study_in_words(changes: dict[str, str], expected: dict[str, object]) -> None:
     built = study(**changes)  # type: ignore[arg-type]

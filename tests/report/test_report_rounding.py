@@ -33,7 +33,8 @@ from aleafield.report.rounding import DASH, earned, percent, short, typographic
         (0.0, (0.0, 0.0), 0.0, ("0", "0", "0", "0")),
         (3.14159, (None, None), None, ("3.1", None, None, None)),
         # one-sided
-        (3.14159, (3.12, None), None, ("3.142", "3.120", None, "0.022")),
+        (3.14159, (3.12, None), None, ("3.142", "3.120", None, None)),
+        (3.14159, (None, 3.2), None, ("3.142", None, "3.200", None)),
         (None, (None, None), None, (DASH, None, None, None)),
     ],
 )

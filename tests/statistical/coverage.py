@@ -2,9 +2,13 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
+
 import numpy as np
 from numpy.typing import NDArray
 from scipy.stats import binom, norm, qmc
+
+from aleafield.estimates import Estimate, Sample
 
 FALSE_ALARM = 1e-3
 """Chance that a test of coverage fails although the true coverage is as stated."""
@@ -16,6 +20,12 @@ def least_hits(trials: int, coverage: float = 0.95) -> int:
     P(K < least) <= FALSE_ALARM for K binomial(trials, coverage).
     """
     return int(binom.ppf(FALSE_ALARM, trials, coverage))
+
+
+def hits(samples: list[Sample], estimate: Callable[[Sample], Estimate], truth: float) -> int:
+    """How many intervals hold the truth."""
+    found = [estimate(sample) for sample in samples]
+    return sum(e.low is not None and e.high is not None and e.low <= truth <= e.high for e in found)
 
 
 def normal_scramblings(trials: int, points: int, columns: int, seed: int) -> NDArray[np.float64]:

@@ -19,7 +19,7 @@ from aleafield.estimates import (
     estimate_quantile,
     estimate_sd,
 )
-from tests.statistical.coverage import least_hits, normal_scramblings
+from tests.statistical.coverage import hits, least_hits, normal_scramblings
 
 TRIALS = 400
 WEIGHTS = np.array([0.8, 0.6])
@@ -33,12 +33,6 @@ TRUTHS: dict[str, tuple[Callable[[Sample], Estimate], float]] = {
     "exceed .3": (lambda s: estimate_exceedance(s, float(norm.isf(0.3)), 0.95), 0.3),
     "exceed .02": (lambda s: estimate_exceedance(s, float(norm.isf(0.02)), 0.95), 0.02),
 }
-
-
-def hits(samples: list[Sample], estimate: Callable[[Sample], Estimate], truth: float) -> int:
-    """How many intervals hold the truth."""
-    found = [estimate(sample) for sample in samples]
-    return sum(e.low is not None and e.high is not None and e.low <= truth <= e.high for e in found)
 
 
 @pytest.fixture(scope="module")
@@ -59,7 +53,7 @@ def repeated() -> list[Sample]:
     generator = np.random.default_rng(13)
     between = np.repeat(generator.normal(size=(TRIALS, 128)), 2, axis=1)
     rows = 0.8 * between + 0.6 * generator.normal(size=(TRIALS, 256))
-    return [Sample.of(row, replicate=np.arange(256) // 2, replicates=128) for row in rows]
+    return [Sample.of(row, replicate=np.arange(256) // 2, replicates=128, clustered=True) for row in rows]
 
 
 @pytest.mark.parametrize("statistic", list(TRUTHS))

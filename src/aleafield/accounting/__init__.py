@@ -5,13 +5,21 @@ neighbouring levels.  Output are statements: a value, the parts of its error, an
 `docs/error_split.md` states the mathematics.
 """
 
-from aleafield.accounting.order import RELATIVE_ROUND_OFF
-from aleafield.accounting.probes import SHARE, number_of_probes, share_of_probes
+from aleafield.accounting.order import RELATIVE_ROUND_OFF, anticipated_factor
+from aleafield.accounting.probes import (
+    SHARE,
+    PilotDifferences,
+    demand,
+    least_number,
+    number_of_probes,
+    share_of_probes,
+)
 from aleafield.accounting.quantity import QuantityStatements, quantity_statements
 from aleafield.accounting.records import MESH, LevelValues, Pair, PartDifferences
 from aleafield.accounting.split import split_error
 from aleafield.accounting.statement import Statement
 from aleafield.accounting.statistic import MEAN, OCCURS, SD, Statistic, exceed, quantile
+from aleafield.accounting.variance import Clusters, VarianceStatements
 
 __all__ = [
     "MEAN",
@@ -20,13 +28,19 @@ __all__ = [
     "RELATIVE_ROUND_OFF",
     "SD",
     "SHARE",
+    "Clusters",
     "LevelValues",
     "Pair",
     "PartDifferences",
+    "PilotDifferences",
     "QuantityStatements",
     "Statement",
     "Statistic",
+    "VarianceStatements",
+    "anticipated_factor",
+    "demand",
     "exceed",
+    "least_number",
     "number_of_probes",
     "quantile",
     "quantity_statements",

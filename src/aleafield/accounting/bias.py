@@ -9,17 +9,19 @@ from dataclasses import dataclass
 import numpy as np
 
 from aleafield.accounting.measured import MeasuredPart, PairedValues
-from aleafield.accounting.order import safety_factor
+from aleafield.accounting.order import SAFETY, safety_factor
 from aleafield.accounting.regression import Shift
 from aleafield.accounting.shifted import range_of
 from aleafield.accounting.statistic import MEAN, Statistic
 from aleafield.arrays import FloatArray
-from aleafield.estimates import Sample
-from aleafield.estimates.blocks import mean_of, normal
+from aleafield.estimates.blocks import BlockArray
 from aleafield.estimates.sd import standard_deviation
 
-USUAL_CONFIDENCE = 0.95
-"""Residual standard deviations stand for the noise of a regression up to this confidence, as measured."""
+OPEN = (
+    "extremes over a window of a noisy path are seen at the ends of steps only (order 1/2 at best); those of a point "
+    "value, mean or integral of the field are found between steps too"
+)
+"""Why a part has an open side, and what to do."""
 
 
 @dataclass(frozen=True)
@@ -76,6 +78,9 @@ def bias_of(
         return Unmeasured(f"the {name} part cannot be measured: every probe failed")
     if statistic.kind == "sd" and measured.sample.certain:
         return Bias(0.0, 0.0)
+    sides = measured.open_sides(statistic)
+    if len(sides) == 2 or (sides and statistic.kind == "sd"):
+        return Unmeasured(f"the {name} part gives no bound: {OPEN}")
     if statistic.kind not in ("exceed", "occurs") and not measured.enough_pairs:
         return Unmeasured(f"the {name} part cannot be measured: the quantity occurs on too few probes")
     if statistic.has_influence:
@@ -159,7 +164,7 @@ def _influence_bias(
     """
     sample, factor = measured.sample, measured.conditional_order.factor
     found = [
-        _influence_of(sample, pair, statistic, value, confidence)
+        _influence_of(measured, pair, statistic, value, confidence)
         for pair in measured.candidates
         if pair.in_both.any()
     ]
@@ -177,25 +182,28 @@ def _influence_bias(
 
 
 def _influence_of(
-    sample: Sample, pair: PairedValues, statistic: Statistic, value: float, confidence: float
+    measured: MeasuredPart, pair: PairedValues, statistic: Statistic, value: float, confidence: float
 ) -> tuple[float, float]:
     """Mean psi of one pair and its half-width.
 
     Where all samples are equal the sd has no influence values: the sd of the differences stands for both.
     """
+    sample = measured.sample
     share = len(sample.given) / sample.n_valid
     if statistic == MEAN:
-        return _mean_and_half_width(sample, pair, mean_influence(pair, value, share), confidence)
+        return mean_and_half_width(measured, mean_influence(pair, value, share), pair.block, confidence)
     if value == 0.0:
         spread = standard_deviation((pair.upper - pair.lower)[pair.in_both])
         return spread, spread
     influence = sd_influence(pair, float(sample.given.mean()), value, share)
-    return _mean_and_half_width(sample, pair, influence, confidence)
+    return mean_and_half_width(measured, influence, pair.block, confidence)
 
 
 def _richardson(measured: MeasuredPart) -> float:
     """f = rho^p / (rho^p - 1): difference of two levels to error of the coarser one; 1 for spectral parts."""
     part, observed = measured.part, measured.order.observed
+    if part.known_factor is not None:
+        return part.known_factor / SAFETY
     if part.observed_only:
         return safety_factor(min(max(observed or 1.0, 0.5), 2.0), part.ratio_fine, 1.0)
     if part.expected_order is None:
@@ -203,43 +211,35 @@ def _richardson(measured: MeasuredPart) -> float:
     return safety_factor(part.expected_order, part.ratio_fine, 1.0)
 
 
-def _mean_and_half_width(
-    sample: Sample, pair: PairedValues, influence: FloatArray, confidence: float
+def mean_and_half_width(
+    measured: MeasuredPart, influence: FloatArray, block: BlockArray, confidence: float
 ) -> tuple[float, float]:
-    """Mean over the probes, and t over probes (as drawn from a finite sample) or over blocks of probes."""
-    n = len(influence)
-    mean = mean_of(influence, pair.block, sample.replicates)
-    if n >= sample.n_valid and (sample.plain or sample.certain):
-        return mean.value, 0.0
-    half_width = mean.half_width(confidence)
-    if sample.plain:
-        half_width *= math.sqrt(1.0 - n / sample.n_valid)
-    return mean.value, half_width
+    """Mean over the probes (k,), and t over probes or clusters (as drawn from a finite sample) or scramblings."""
+    mean = measured.sample.mean_over(influence, block)
+    finite = 0.0 if measured.sample.certain else measured.finite(len(influence))
+    return mean.value, finite * mean.half_width(confidence) if finite > 0.0 else 0.0
 
 
 def _shift_bias(measured: MeasuredPart, statistic: Statistic, value: float, confidence: float) -> Bias | None:
     """Change of the statistic when F times the fitted differences are taken off quantity and margin.
 
     Size: the largest change, rounding of either sign included.  Noise: the further change when the fits
-    move by their residual standard deviation either way (F included), quantity and margin in quadrature;
-    mean and sd take the noise of the quantity's own difference from their influence values instead.
+    move by what they may be off either way (F included), quantity and margin in quadrature; mean and sd take
+    the noise of the quantity's own difference from their influence values instead.
     """
     sample = measured.sample
-    widen = max(1.0, normal(confidence) / normal(USUAL_CONFIDENCE))
     margin_shift = None if sample.margin is None else measured.margin_shift
     shifts: list[Shift | None] = list(measured.shifts)
-    residuals = [measured.order.factor * fit.residual * widen for fit in measured.fits]
+    noises: list[Shift | None] = list(measured.noises(confidence))
     if statistic.kind == "occurs" or len(sample.given) == 0:
-        shifts, residuals = [np.zeros_like], [0.0]
+        shifts, noises = [np.zeros_like], [None]
     elif not shifts:
-        shifts, residuals = [None], [0.0]
+        shifts, noises = [None], [None]
     if statistic.has_influence:
-        residuals = [0.0] * len(shifts)
-    margin_residual = 0.0
-    if margin_shift is not None:
-        margin_residual = measured.margin_order.factor * measured.margin_fit.residual * widen
+        noises = [None] * len(shifts)
+    margin_noise = None if margin_shift is None else measured.margin_noise(confidence)
     size, noise, signed = 0.0, 0.0, None
-    for shift, residual in zip(shifts, residuals, strict=True):
+    for shift, off in zip(shifts, noises, strict=True):
         centre = range_of(statistic, sample, shift, margin_shift)
         if centre is None:
             return None
@@ -257,11 +257,11 @@ def _shift_bias(measured: MeasuredPart, statistic: Statistic, value: float, conf
             size = max(size, abs(rounded[0] - value), abs(rounded[1] - value))
         by_value, by_margin = 0.0, 0.0
         for sign in (-1.0, 1.0):
-            if residual > 0.0:
-                moved = range_of(statistic, sample, _moved(shift, sign * residual), margin_shift)
+            if off is not None:
+                moved = range_of(statistic, sample, _moved_along(shift, sign, off), margin_shift)
                 by_value = max(by_value, _change(centre, moved))
-            if margin_residual > 0.0:
-                moved = range_of(statistic, sample, shift, _moved(margin_shift, sign * margin_residual))
+            if margin_noise is not None:
+                moved = range_of(statistic, sample, shift, _moved_along(margin_shift, sign, margin_noise))
                 by_margin = max(by_margin, _change(centre, moved))
         noise = max(noise, math.hypot(by_value, by_margin))
     return None if math.isinf(noise) else Bias(size, noise, signed or 0.0)
@@ -269,6 +269,10 @@ def _shift_bias(measured: MeasuredPart, statistic: Statistic, value: float, conf
 
 def _moved(shift: Shift | None, by: float) -> Shift | None:
     return None if shift is None else lambda values: shift(values) + by
+
+
+def _moved_along(shift: Shift | None, sign: float, by: Shift) -> Shift | None:
+    return None if shift is None else lambda values: shift(values) + sign * by(values)
 
 
 def _change(centre: tuple[float, float], moved: tuple[float, float] | None) -> float:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 from functools import cached_property
 
@@ -10,7 +11,9 @@ import numpy as np
 from aleafield.accounting.order import RELATIVE_ROUND_OFF, Order, judge_order, reduction
 from aleafield.accounting.records import Pair, PartDifferences
 from aleafield.accounting.regression import DifferenceFit, Shift, fit_differences
+from aleafield.accounting.statistic import Statistic
 from aleafield.arrays import BoolArray, FloatArray, IntArray
+from aleafield.ensemble.level import Side
 from aleafield.estimates import Sample
 from aleafield.estimates.blocks import BlockArray
 from aleafield.estimates.sd import standard_deviation
@@ -36,6 +39,8 @@ class PairedValues:
         Where it occurs at the run's level.
     block : int array (k,)
         Independent block of each probe.
+    at : int array (k,)
+        Position of each probe in the sample.
     """
 
     upper: FloatArray
@@ -44,6 +49,7 @@ class PairedValues:
     in_lower: BoolArray
     in_run: BoolArray
     block: BlockArray
+    at: IntArray
 
     @property
     def in_both(self) -> BoolArray:
@@ -60,7 +66,7 @@ def pair_with_run(sample: Sample, probes: IntArray, pair: Pair, divisor: float) 
     in_upper, in_lower = pair.coarser.occurs[usable], pair.finer.occurs[usable]
     carried = np.where(in_run & in_upper, run, upper)
     lower = np.where(in_upper & in_lower, carried - (upper - lower) / divisor, lower)
-    return PairedValues(carried, lower, in_upper, in_lower, in_run, sample.replicate[at])
+    return PairedValues(carried, lower, in_upper, in_lower, in_run, sample.replicate[at], at)
 
 
 @dataclass(frozen=True, eq=False)
@@ -94,7 +100,9 @@ class MeasuredPart:
     @cached_property
     def enough_pairs(self) -> bool:
         """Whether the quantity occurs at both levels on enough probes."""
-        return int(self.candidates[0].in_both.sum()) >= max(1, min(LEAST_PAIRS, len(self.sample.given)))
+        pair = self.candidates[0]
+        count = self.sample.independent_in(pair.block[pair.in_both])
+        return count >= max(1, min(LEAST_PAIRS, self.sample.independent))
 
     @cached_property
     def round_off(self) -> float:
@@ -110,7 +118,9 @@ class MeasuredPart:
 
     @cached_property
     def order(self) -> Order:
-        """Order of the quantity, from the probes on which it occurs at all levels."""
+        """Order of the quantity, from the probes on which it occurs at all levels; that of the margin for a passage."""
+        if self.part.passage:
+            return self.margin_order
         fine, coarse = self.part.fine, self.part.coarse
         both = self.usable & fine.occurs
         difference = fine.coarser.values - fine.finer.values
@@ -150,7 +160,7 @@ class MeasuredPart:
             both = pair.in_both
             if both.any():
                 upper, lower = pair.upper[both], pair.lower[both]
-                found.append(fit_differences(upper, upper - lower, centre, scale, self.sample.certain))
+                found.append(self._fit(upper, upper - lower, centre, scale, pair.block[both]))
         return tuple(found)
 
     @property
@@ -166,15 +176,67 @@ class MeasuredPart:
         at_probes = self.sample.margin[self.part.probes[self.usable]]
         difference = _margin_difference(self.part.fine)[self.usable]
         centre, scale = float(margin.mean()), standard_deviation(margin)
-        return fit_differences(at_probes, difference, centre, scale, self.sample.certain)
+        block = self.sample.replicate[self.part.probes[self.usable]]
+        return self._fit(at_probes, difference, centre, scale, block)
+
+    def _fit(
+        self, quantity: FloatArray, difference: FloatArray, centre: float, scale: float, block: BlockArray
+    ) -> DifferenceFit:
+        """A regression over probes in these blocks, with its covariance where the differences are noisy."""
+        own = np.arange(len(block)) if self.sample.plain else block
+        return fit_differences(
+            quantity,
+            difference,
+            centre,
+            scale,
+            self.sample.certain,
+            independent=self.sample.independent_in(block),
+            block=own if self.part.noisy else None,
+        )
 
     @property
     def margin_shift(self) -> Shift:
         """F times the regression of the margin."""
         return _times(self.margin_order.factor, self.margin_fit)
 
+    def noises(self, confidence: float) -> tuple[Shift, ...]:
+        """F times what each regression may be off by."""
+        finite = self.finite(int(self.usable.sum()))
+        return tuple(_times(self.order.factor, fit.half_width(confidence, finite)) for fit in self.fits)
 
-def _times(factor: float, fit: DifferenceFit) -> Shift:
+    def margin_noise(self, confidence: float) -> Shift:
+        """F times what the regression of the margin may be off by."""
+        finite = self.finite(int(self.usable.sum()))
+        return _times(self.margin_order.factor, self.margin_fit.half_width(confidence, finite))
+
+    def finite(self, probes: int) -> float:
+        """By what so many probes, drawn from a finite sample, know its mean better than that of the law.
+
+        0 where they are all of it; scrambled points are not drawn from one another.
+        """
+        if self.sample.scrambled:
+            return 1.0
+        return math.sqrt(max(0.0, 1.0 - probes / self.sample.n_valid))
+
+    def open_sides(self, statistic: Statistic) -> frozenset[Side]:
+        """Sides of the run's statistic on which this part bounds nothing.
+
+        A quantity whose occurrence is open is read off the wrong samples: a mean, sd or quantile given that it
+        occurs may then lie on either side, unless all samples occur and the truth can only add some.
+        """
+        part, sample = self.part, self.sample
+        occurrence = None if sample.margin is None else part.open_occurrence
+        sides: set[Side | None] = set()
+        if statistic.kind != "occurs":
+            sides.add(part.open_side)
+        if statistic.is_probability:
+            sides.add(occurrence)
+        elif occurrence == "below" or (occurrence == "above" and len(sample.given) < sample.n_valid):
+            sides |= {"above", "below"}
+        return frozenset(side for side in sides if side is not None)
+
+
+def _times(factor: float, fit: Shift) -> Shift:
     return lambda values: factor * fit(values)
 
 

@@ -106,11 +106,18 @@ def judge_order(part: PartDifferences, fine: FloatArray, coarse: FloatArray, rou
           expected order);
         - the first of these at the expected order where the difference is rounding;
 
+        where it is known beforehand it is that, and for a part with an open side that of order 1: what no order
+        bounds lies on the other side;
+
         and never below `least_factor`, nor, for an erratic part, below 1 + 3 / (rho^0.5 - 1): it may look as if it
         converged.
     """
     size_fine, size_coarse = root_mean_square(fine), root_mean_square(coarse)
-    if size_fine <= round_off:
+    if part.known_factor is not None:
+        order = Order(None, None, part.known_factor, None)
+    elif part.open:
+        order = Order(None, 1.0, safety_factor(1.0, part.ratio_fine), None)
+    elif size_fine <= round_off:
         order = _unseen_at_round_off(part)
     elif size_coarse == 0.0 and len(coarse) == 0:
         order = _unseen(part)
@@ -123,6 +130,23 @@ def judge_order(part: PartDifferences, fine: FloatArray, coarse: FloatArray, rou
     if part.erratic:
         least = max(least, safety_factor(SMALLEST_ORDER, part.ratio_fine, CAUTIOUS_SAFETY))
     return Order(order.observed, order.expected, max(order.factor, least), order.message)
+
+
+def anticipated_factor(
+    expected_order: float | None, ratio: float, known_factor: float | None = None
+) -> float:
+    """The factor of a part before its order is observed: as if it were the expected one.
+
+    Parameters
+    ----------
+    expected_order : float or None
+        None for faster than any power.
+    ratio : of mesh widths or steps, coarser over finer, > 1
+    known_factor : as in `PartDifferences`
+    """
+    if known_factor is not None:
+        return known_factor
+    return safety_factor(LARGEST_SPECTRAL_ORDER if expected_order is None else expected_order, ratio)
 
 
 def root_mean_square(values: FloatArray) -> float:

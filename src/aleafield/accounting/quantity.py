@@ -10,6 +10,7 @@ from aleafield.accounting.records import PartDifferences
 from aleafield.accounting.split import combine
 from aleafield.accounting.statement import Statement
 from aleafield.accounting.statistic import MEAN, OCCURS, SD, exceed, quantile
+from aleafield.accounting.variance import Clusters, VarianceStatements, variance_statements
 from aleafield.estimates import Sample
 
 
@@ -27,6 +28,8 @@ class QuantityStatements:
         Probability that it occurs and lies above the level.
     occurs : Statement or None
         Probability that it occurs; None for a quantity that always does.
+    variance : VarianceStatements or None
+        Its variance parted into parameters and noise; None without noise.
     """
 
     mean: Statement
@@ -34,6 +37,7 @@ class QuantityStatements:
     quantiles: Mapping[float, Statement]
     exceed: Mapping[float, Statement]
     occurs: Statement | None
+    variance: VarianceStatements | None = None
 
     def as_json(self, units: str) -> dict[str, object]:
         """The quantity in the shape of summary.json; keys of quantiles and exceed as Python prints them."""
@@ -45,7 +49,7 @@ class QuantityStatements:
             "exceed": {repr(float(c)): statement.as_json() for c, statement in self.exceed.items()},
             "occurs": None if self.occurs is None else self.occurs.as_json(),
             "sensitivity": {},
-            "variance": None,
+            "variance": None if self.variance is None else self.variance.as_json(),
         }
 
 
@@ -55,6 +59,7 @@ def quantity_statements(
     quantiles: Sequence[float],
     exceed_levels: Sequence[float],
     confidence: float,
+    clusters: Clusters | None = None,
 ) -> QuantityStatements:
     """All statements of one quantity; the parts are measured once.
 
@@ -65,6 +70,8 @@ def quantity_statements(
     quantiles : probabilities in (0, 1)
     exceed_levels : levels in the units of the quantity
     confidence : float in (0, 1)
+    clusters : Clusters or None
+        Which realizations share their parameter sample; None without noise.
 
     Raises
     ------
@@ -78,4 +85,5 @@ def quantity_statements(
         quantiles={p: combine(sample, measured, quantile(p), confidence) for p in quantiles},
         exceed={c: combine(sample, measured, exceed(c), confidence) for c in exceed_levels},
         occurs=None if sample.margin is None else combine(sample, measured, OCCURS, confidence),
+        variance=None if clusters is None else variance_statements(sample, measured, clusters, confidence),
     )

@@ -7,6 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from aleafield.arrays import BoolArray, FloatArray, IntArray
+from aleafield.ensemble.level import Side
 
 PART_NAMES = ("space", "quadrature", "time", "noise_modes")
 """The discretisation parts in the order of the summary."""
@@ -101,6 +102,22 @@ class PartDifferences:
         The error jumps about from level to level: no corrected value is offered.
     round_off : float
         Differences up to this size (units of the quantity) are rounding, besides 1e-13 of its largest value.
+    known_factor : float or None
+        The factor where it follows from what is known beforehand (noise modes: from the variance that is dropped
+        at both levels); no order is observed then, and `coarse` may be None.
+    open_side : "above", "below" or None
+        Side of the run's value on which the truth may lie at a distance that no order bounds: an extreme over a
+        window of a noisy path, seen at the ends of steps only.
+    open_occurrence : "above", "below" or None
+        The same for the margin: "above" where the quantity occurs once it does at any time of the window,
+        "below" where it must do so throughout.
+    passage : bool
+        The quantity jumps as the path of a noisy field moves: a path that just misses a level reaches it much
+        later.  The root mean square of its differences then falls like the root of the part, their mean like the
+        part; the order is that of the margin, which is continuous.
+    noisy : bool
+        The differences hold noise that does not follow the quantity (a study with noise in the tissue): it
+        averages out, and a regression on the quantity is as uncertain as its mean, not as its residuals.
     """
 
     name: str
@@ -115,6 +132,11 @@ class PartDifferences:
     peak: bool = False
     round_off: float = 0.0
     erratic: bool = False
+    known_factor: float | None = None
+    open_side: Side | None = None
+    open_occurrence: Side | None = None
+    passage: bool = False
+    noisy: bool = False
 
     def __post_init__(self) -> None:
         if self.name not in (*PART_NAMES, MESH):
@@ -124,6 +146,11 @@ class PartDifferences:
         pairs = [self.fine] + ([] if self.coarse is None else [self.coarse])
         if any(level.values.shape != self.probes.shape for p in pairs for level in (p.coarser, p.finer)):
             raise ValueError("all arrays of a part need the shape (n_p,) of its probes")
+
+    @property
+    def open(self) -> bool:
+        """Whether no order bounds the quantity or its margin on some side."""
+        return self.open_side is not None or self.open_occurrence is not None
 
     @property
     def order_of_chance(self) -> float | None:

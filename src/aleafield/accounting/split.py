@@ -3,18 +3,20 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
+from typing import Protocol
 
 import numpy as np
 
-from aleafield.accounting.bias import Bias, Unmeasured, bias_of, joint_change
+from aleafield.accounting.bias import OPEN, Bias, Unmeasured, bias_of, joint_change
 from aleafield.accounting.measured import MeasuredPart
 from aleafield.accounting.order import AGREEMENT, SMALLEST_ORDER, Order
 from aleafield.accounting.records import MESH, PartDifferences
 from aleafield.accounting.statement import ERROR_KEYS, Statement, no_statement, representable
 from aleafield.accounting.statistic import MEAN, Statistic
-from aleafield.estimates import Sample
+from aleafield.ensemble.level import Side
+from aleafield.estimates import Estimate, Sample
 
 RESOLUTION = 0.1
 """A part below this share of the total is honest only inside the total."""
@@ -66,18 +68,47 @@ def combine(
 ) -> Statement:
     """`split_error` for parts that are already measured."""
     with np.errstate(over="ignore", invalid="ignore"):
-        estimate = statistic.estimate(sample, confidence)
-        if estimate.value is None or estimate.low is None or estimate.high is None:
-            return no_statement(estimate.reason or "not determined")
-        if not math.isfinite(estimate.value):
-            return no_statement("it is beyond the range of double precision")
-        parts = [m for m in measured if m.part.name != MESH]
-        found = _measure(parts, statistic, estimate.value, confidence)
-        for mesh in measured:
-            if mesh.part.name == MESH and _converges(_order_for(mesh, statistic)):
-                rest = [m for m in parts if m.part.name not in MESH_PARTS]
-                found = _together(found, _measure([mesh, *rest], statistic, estimate.value, confidence))
-    orders = {m.part.name: _order_for(m, statistic) for m in parts if m.usable.any()}
+        return state(
+            statistic.estimate(sample, confidence), sample, measured, _OfStatistic(statistic, confidence)
+        )
+
+
+class Subject(Protocol):
+    """What is stated: a number, and how the parts of the discretisation act on it."""
+
+    @property
+    def limits(self) -> tuple[float, float]:
+        """Smallest and largest possible value; the interval is cut there."""
+
+    @property
+    def corrected(self) -> bool:
+        """Whether a corrected value is offered."""
+
+    def biases(self, measured: Sequence[MeasuredPart], value: float) -> Biases:
+        """The biases of all parts, `value` being the number itself."""
+
+    def order(self, measured: MeasuredPart) -> Order:
+        """The order that judged a part."""
+
+    def open_sides(self, measured: MeasuredPart) -> frozenset[Side]:
+        """Sides on which a part bounds nothing."""
+
+
+def state(
+    estimate: Estimate, sample: Sample, measured: Sequence[MeasuredPart], subject: Subject
+) -> Statement:
+    """An estimate of the run with the parts of its error, put together as `split_error` says."""
+    if estimate.value is None or estimate.low is None or estimate.high is None:
+        return no_statement(estimate.reason or "not determined")
+    if not math.isfinite(estimate.value):
+        return no_statement("it is beyond the range of double precision")
+    parts = [m for m in measured if m.part.name != MESH]
+    found = subject.biases(parts, estimate.value)
+    for mesh in measured:
+        if mesh.part.name == MESH and _converges(subject.order(mesh)):
+            rest = [m for m in parts if m.part.name not in MESH_PARTS]
+            found = _together(found, subject.biases([mesh, *rest], estimate.value))
+    orders = {m.part.name: subject.order(m) for m in parts if m.usable.any()}
     sampled = Sampled(estimate.value, estimate.value - estimate.low, estimate.high - estimate.value)
     sampling = None if sample.certain else max(sampled.left, sampled.right)
     sizes = {name: bias.size for name, bias in found.known.items()}
@@ -86,11 +117,14 @@ def combine(
         error.update(sizes, sampling=sampling)
         return representable(Statement(None, error, None, reason="; ".join(found.lost), orders=orders))
     noise = math.hypot(*(bias.noise for bias in found.known.values()))
-    plain = _statement(statistic, sampled, sizes, noise if sizes else None, sampling)
+    plain = _statement(subject.limits, sampled, sizes, noise if sizes else None, sampling)
     notes = (*found.notes, *_notes(plain, orders, parts))
+    sides = {m.part.name: subject.open_sides(m) for m in parts}
+    if any(sides.values()):
+        return representable(_opened(plain, sides, notes, orders))
     corrected = None
     erratic = any(m.part.erratic for m in measured)
-    if statistic == MEAN and sizes and not erratic and not _diverges(plain, orders):
+    if subject.corrected and sizes and not erratic and not _diverges(plain, orders):
         corrected = _corrected(sampled, found.known, noise, sampling)
     return representable(
         Statement(plain.value, plain.error, plain.interval, corrected, notes=notes, orders=orders)
@@ -98,8 +132,8 @@ def combine(
 
 
 @dataclass(frozen=True)
-class _Biases:
-    """Biases of all parts of a statistic, why some are not determined, and what to say of them."""
+class Biases:
+    """Biases of all parts of a number, why some are not determined, and what to say of them."""
 
     known: dict[str, Bias]
     lost: tuple[str, ...] = ()
@@ -110,25 +144,69 @@ class _Biases:
         """Sum of the sizes."""
         return math.fsum(bias.size for bias in self.known.values())
 
+    @staticmethod
+    def of(biases: Mapping[str, Bias | Unmeasured]) -> Biases:
+        """Biases by part, those apart that the probes do not determine."""
+        lost = dict.fromkeys(bias.reason for bias in biases.values() if isinstance(bias, Unmeasured))
+        return Biases({name: b for name, b in biases.items() if isinstance(b, Bias)}, tuple(lost))
 
-def _measure(
-    measured: Sequence[MeasuredPart], statistic: Statistic, value: float, confidence: float
-) -> _Biases:
-    """Biases one by one; quantiles and probabilities raised to what all parts do at once."""
-    biases = {m.part.name: bias_of(m, statistic, value, confidence) for m in measured}
-    lost = [bias.reason for bias in biases.values() if isinstance(bias, Unmeasured)]
-    known = {name: bias for name, bias in biases.items() if isinstance(bias, Bias)}
-    if not lost and not statistic.has_influence and len(measured) > 1:
+
+@dataclass(frozen=True)
+class _OfStatistic:
+    """A statistic as the subject of a statement."""
+
+    statistic: Statistic
+    confidence: float
+
+    @property
+    def limits(self) -> tuple[float, float]:
+        return self.statistic.limits
+
+    @property
+    def corrected(self) -> bool:
+        return self.statistic == MEAN
+
+    def biases(self, measured: Sequence[MeasuredPart], value: float) -> Biases:
+        """Biases one by one; quantiles and probabilities raised to what all parts do at once."""
+        statistic = self.statistic
+        found = Biases.of({m.part.name: bias_of(m, statistic, value, self.confidence) for m in measured})
+        if found.lost or statistic.has_influence or len(measured) < 2:
+            return found
         joint = joint_change(measured, statistic, value)
         if math.isinf(joint):
-            lost.append("with all parts together the quantity might not occur at all")
-        else:
-            sizes = _raised_to(joint, {name: bias.size for name, bias in known.items()})
-            known = {name: replace(bias, size=sizes[name]) for name, bias in known.items()}
-    return _Biases(known, tuple(lost))
+            return replace(found, lost=("with all parts together the quantity might not occur at all",))
+        sizes = _raised_to(joint, {name: bias.size for name, bias in found.known.items()})
+        return Biases({name: replace(bias, size=sizes[name]) for name, bias in found.known.items()})
+
+    def order(self, measured: MeasuredPart) -> Order:
+        if self.statistic.kind == "occurs":
+            return measured.margin_order
+        by_values = self.statistic.kind in ("quantile", "exceed")
+        return measured.order if by_values else measured.conditional_order
+
+    def open_sides(self, measured: MeasuredPart) -> frozenset[Side]:
+        return measured.open_sides(self.statistic)
 
 
-def _together(apart: _Biases, joined: _Biases) -> _Biases:
+def _opened(
+    closed: Statement, sides: Mapping[str, frozenset[Side]], notes: tuple[str, ...], orders: dict[str, Order]
+) -> Statement:
+    """A statement whose interval is open where a part bounds nothing: that part and the total are not known."""
+    assert closed.interval is not None
+    error = dict(closed.error) | {name: None for name, open_at in sides.items() if open_at} | {"total": None}
+    low, high = closed.interval
+    at = frozenset[Side]().union(*sides.values())
+    said = tuple(
+        f"{name}: no bound {' or '.join(sorted(open_at))} the stated value: {OPEN}"
+        for name, open_at in sides.items()
+        if open_at
+    )
+    interval = (None if "below" in at else low, None if "above" in at else high)
+    known = {name: order for name, order in orders.items() if not sides[name]}
+    return Statement(closed.value, error, interval, notes=(*said, *notes), orders=known)
+
+
+def _together(apart: Biases, joined: Biases) -> Biases:
     """The biases with space and quadrature bounded together, where that is the tighter bound.
 
     Along the path the two may be of opposite sign: nodal values of a collocation scheme, for one, feel the
@@ -152,7 +230,7 @@ def _together(apart: _Biases, joined: _Biases) -> _Biases:
         f"space and quadrature cancel in part: {total:.2g} one by one, {mesh.size:.2g} together; each is "
         "shown with its share of the latter"
     )
-    return _Biases(known, (), (note,) if mesh.size < CANCELLATION * total else ())
+    return Biases(known, (), (note,) if mesh.size < CANCELLATION * total else ())
 
 
 def _converges(order: Order) -> bool:
@@ -172,21 +250,17 @@ def _raised_to(joint: float, sizes: dict[str, float]) -> dict[str, float]:
 
 
 def _statement(
-    statistic: Statistic,
+    limits: tuple[float, float],
     sampled: Sampled,
     sizes: dict[str, float],
     noise: float | None,
     sampling: float | None,
 ) -> Statement:
-    """Value, error and interval; probabilities cut to [0, 1], an sd at 0, the total uncut."""
+    """Value, error and interval, the latter cut to what is possible, the total uncut."""
     bias = math.fsum(sizes.values())
     left = bias + math.hypot(sampled.left, noise or 0.0)
     right = bias + math.hypot(sampled.right, noise or 0.0)
-    low, high = sampled.value - left, sampled.value + right
-    if statistic.is_probability or statistic.kind == "sd":
-        low = max(low, 0.0)
-    if statistic.is_probability:
-        high = min(high, 1.0)
+    low, high = max(sampled.value - left, limits[0]), min(sampled.value + right, limits[1])
     error: dict[str, float | None] = dict.fromkeys(ERROR_KEYS)
     error.update(sizes, bias_noise=noise, sampling=sampling, total=max(left, right))
     return Statement(sampled.value, error, (low, high))
@@ -200,14 +274,7 @@ def _corrected(sampled: Sampled, biases: dict[str, Bias], noise: float, sampling
     by = math.fsum(bias.correction for bias in biases.values())
     moved = replace(sampled, value=sampled.value - by)
     sizes = {name: MODEL_TERM * bias.size for name, bias in biases.items()}
-    return representable(_statement(MEAN, moved, sizes, noise, sampling))
-
-
-def _order_for(measured: MeasuredPart, statistic: Statistic) -> Order:
-    """The order that judged this statistic."""
-    if statistic.kind == "occurs":
-        return measured.margin_order
-    return measured.order if statistic.kind in ("quantile", "exceed") else measured.conditional_order
+    return representable(_statement(MEAN.limits, moved, sizes, noise, sampling))
 
 
 def _resolved(statement: Statement, name: str) -> bool:

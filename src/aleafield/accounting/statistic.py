@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 from typing import Literal
 
@@ -40,6 +41,14 @@ class Statistic:
     def has_influence(self) -> bool:
         """Whether its bias is a mean of influence values: not so for quantiles and probabilities."""
         return self.kind in ("mean", "sd")
+
+    @property
+    def limits(self) -> tuple[float, float]:
+        """Smallest and largest possible value."""
+        return (
+            0.0 if self.is_probability or self.kind == "sd" else -math.inf,
+            1.0 if self.is_probability else math.inf,
+        )
 
     def estimate(self, sample: Sample, confidence: float) -> Estimate:
         """The statistic of a sample with its sampling interval."""

@@ -15,12 +15,12 @@ from aleafield.ensemble.level import Level
 from aleafield.ensemble.records import Records
 
 LANE = 8
-"""Batches are padded to a multiple of this, so that a sample's values do not depend on the cut."""
+"""Batches are padded to a multiple of this, so that a realization's values do not depend on the cut."""
 
 
 @dataclass(frozen=True, order=True)
 class Task:
-    """Samples first .. first + count - 1 at one level."""
+    """Realizations first .. first + count - 1 at one level: whole samples, with all their noise paths."""
 
     level: Level
     first: int
@@ -33,18 +33,18 @@ class Task:
 
     @property
     def last(self) -> int:
-        """One past the last sample."""
+        """One past the last realization."""
         return self.first + self.count
 
     @property
     def indices(self) -> IntArray:
-        """Sample indices, the last one repeated up to a multiple of 8, shape (S,)."""
+        """Indices of the realizations, the last one repeated up to a multiple of 8, shape (S,)."""
         padded = -(-self.count // LANE) * LANE
         return np.minimum(np.arange(self.first, self.first + padded, dtype=np.int64), self.last - 1)
 
 
 def cut(level: Level, first: int, last: int, width: int) -> Iterator[Task]:
-    """Tasks for samples first .. last - 1, cut at the multiples of `width`."""
+    """Tasks for realizations first .. last - 1, cut at the multiples of `width`."""
     start = first
     while start < last:
         stop = min(last, (start // width + 1) * width)
@@ -59,13 +59,13 @@ class Chunk:
     Attributes
     ----------
     first : int
-        Index of the first sample.
+        Index of the first realization.
     records : Records
-        Of the samples of the task, without fields.
+        Of the realizations of the task, without fields and histories.
     state : FieldState or None
-        What the fields at the moment times add to the ensemble; None at the extra levels.
+        What fields and histories at the moment times add to the ensemble; None at the extra levels.
     kept : float array (k, K, n) or None
-        Fields at the kept times of the first k samples of the chunk.
+        Fields at the kept times of the first k realizations of the chunk.
     seconds : float
         Processor time that it took.
     """
@@ -78,7 +78,7 @@ class Chunk:
 
     @property
     def last(self) -> int:
-        """One past the last sample."""
+        """One past the last realization."""
         return self.first + len(self.records)
 
 
@@ -90,18 +90,18 @@ def encode(chunk: Chunk) -> bytes:
     dataset = netCDF4.Dataset("chunk.nc", "w", memory=1 << 16)
     dataset.setncattr("first", np.int64(chunk.first))
     dataset.setncattr("seconds", chunk.seconds)
-    _put(dataset, "samples", ("sample",), records.samples)
-    _put(dataset, "failed", ("sample",), records.failed)
-    _put(dataset, "failed_at", ("sample",), records.failed_at)
+    _put(dataset, "realizations", ("realization",), records.realizations)
+    _put(dataset, "failed", ("realization",), records.failed)
+    _put(dataset, "failed_at", ("realization",), records.failed_at)
     for group in ("inputs", "values", "margins"):
         columns: Mapping[str, FloatArray] = getattr(records, group)
         dataset.setncattr(group, json.dumps(list(columns)))
         if columns:
-            _put(dataset, group, (f"n_{group}", "sample"), np.stack(list(columns.values())))
+            _put(dataset, group, (f"n_{group}", "realization"), np.stack(list(columns.values())))
     if chunk.state is not None:
         put_state(dataset, chunk.state)
     if chunk.kept is not None and len(chunk.kept):
-        _put(dataset, "kept", ("kept_sample", "kept_time", "x"), chunk.kept)
+        _put(dataset, "kept", ("kept_realization", "kept_time", "x"), chunk.kept)
     return bytes(dataset.close())
 
 
@@ -112,7 +112,7 @@ def decode(data: bytes) -> Chunk:
     with netCDF4.Dataset("chunk.nc", memory=data) as dataset:
         dataset.set_auto_mask(False)
         records = Records(
-            samples=dataset["samples"][:],
+            realizations=dataset["realizations"][:],
             failed=dataset["failed"][:],
             failed_at=dataset["failed_at"][:],
             inputs=_columns(dataset, "inputs"),

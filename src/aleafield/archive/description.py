@@ -10,7 +10,7 @@ from aleafield.arrays import FloatArray
 from aleafield.ensemble.level import Level
 
 MOST_KEPT = 1024
-"""Fields are stored for at most so many samples, the first ones."""
+"""Fields are stored for at most so many realizations, the first ones."""
 
 
 @dataclass(frozen=True)
@@ -24,12 +24,25 @@ class InputColumn:
 
 @dataclass(frozen=True)
 class QuantityColumn:
-    """One quantity: name, units, measure, and whether it may have no value (it then has a margin)."""
+    """One quantity.
+
+    Attributes
+    ----------
+    name, units, measure : str
+    may_not_occur : bool
+        Whether it may have no value; it then has a margin.
+    followed : str
+        What its history shows, where it has one; empty where that is the quantity itself.
+    followed_units : str
+        Units of its history; empty where they are its own.
+    """
 
     name: str
     units: str
     measure: str
     may_not_occur: bool
+    followed: str = ""
+    followed_units: str = ""
 
 
 @dataclass(frozen=True)
@@ -61,13 +74,15 @@ class Description:
     ----------
     inputs, quantities : columns in the order of the study
     samples : int
-        Parameter samples S.
+        Parameter samples.
+    repeats : int
+        Noise paths of each: realization j is path j mod repeats of sample j // repeats.
     replicates : int
         Scramblings; sample i belongs to i mod replicates.
     level : Level
         The run's.
     probes : int
-        Number of the first samples that are also solved at the extra levels.
+        Number of the first samples that are also solved, with all their paths, at the extra levels.
     extra_levels : tuple of Level
     axes : Axes
     attributes : mapping
@@ -77,6 +92,7 @@ class Description:
     inputs: tuple[InputColumn, ...]
     quantities: tuple[QuantityColumn, ...]
     samples: int
+    repeats: int
     replicates: int
     level: Level
     probes: int
@@ -85,6 +101,11 @@ class Description:
     attributes: Mapping[str, Any] = field(default_factory=dict)
 
     @property
+    def realizations(self) -> int:
+        """All noise paths of all parameter samples."""
+        return self.samples * self.repeats
+
+    @property
     def kept(self) -> int:
-        """Number of samples whose fields are stored."""
-        return min(self.samples, MOST_KEPT) if self.axes.kept_times else 0
+        """Number of realizations whose fields are stored."""
+        return min(self.realizations, MOST_KEPT) if self.axes.kept_times else 0

@@ -14,7 +14,7 @@ from aleafield.archive.description import Description
 from aleafield.archive.durable import commit, partial, remove, storing, write_bytes
 from aleafield.archive.ensemble_reader import EnsembleReader
 from aleafield.archive.ensemble_variables import EnsembleVariables
-from aleafield.archive.field_state import FieldState, encode_state
+from aleafield.archive.field_state import PATHS, FieldState, encode_state
 from aleafield.archive.layout import Layout
 from aleafield.archive.statistic_variables import add_statistics
 from aleafield.ensemble.level import Level
@@ -24,10 +24,10 @@ Summary = dict[str, Any]
 
 
 class ChunkSource(Protocol):
-    """Where an ensemble's chunks come from, in the order of their samples."""
+    """Where an ensemble's chunks come from, in the order of their realizations."""
 
     def chunks(self, level: Level) -> Iterator[Chunk]:
-        """The chunks of a level, without gaps, from sample 0 on."""
+        """The chunks of a level, without gaps, from realization 0 on."""
         ...
 
 
@@ -63,10 +63,11 @@ def build(
         set_attributes(dataset, {"Conventions": "CF-1.11", **attributes})
         summary = summarise(EnsembleReader(dataset))
         add_statistics(dataset, variables.names, summary["quantities"])
-    write_bytes(layout.field_state(description.samples), state)
+    state_path = layout.field_state(description.realizations)
+    write_bytes(state_path, state)
     commit(path)
     for old in layout.field_states():
-        if old != layout.field_state(description.samples):
+        if old != state_path:
             remove(old)
     return summary
 
@@ -87,6 +88,10 @@ def _stream_main(variables: EnsembleVariables, description: Description, source:
     variables.found["field_mean", "", ""][:] = state.moments.mean
     variables.found["field_sd", "", ""][:] = state.moments.sd
     variables.found["field_band", "", ""][:] = state.quantiles()
+    variables.make_histories(tuple(state.histories))
+    for name, history in state.histories.items():
+        variables.found["fan", name, ""][:] = state.fan(name)
+        variables.found["paths", name, ""][:] = history[:PATHS]
     return state
 
 

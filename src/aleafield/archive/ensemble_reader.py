@@ -8,7 +8,9 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
+from numpy.typing import NDArray
 
+from aleafield.archive.description import MOST_KEPT
 from aleafield.archive.ensemble_variables import Key
 from aleafield.arrays import BoolArray, FloatArray, IntArray
 from aleafield.ensemble.records import FINITE, Records
@@ -21,8 +23,8 @@ if TYPE_CHECKING:
 class EnsembleReader:
     """The columns of an open ensemble.
 
-    A level is named by its label; the empty label means the run's own level, along all realizations, any
-    other one an extra level of the split, along the probes.
+    A level is named by its label; the empty label means the run's own level, along all S realizations, any
+    other one an extra level of the split, along the probes: the first n_p realizations.
 
     Attributes
     ----------
@@ -50,7 +52,7 @@ class EnsembleReader:
 
     @property
     def probes(self) -> int:
-        """Number of probes; 0 where nothing was solved at other levels."""
+        """Number of realizations that are probes; 0 where nothing was solved at other levels."""
         return len(self._dataset.dimensions["probe"]) if "probe" in self._dataset.dimensions else 0
 
     def attribute(self, name: str) -> Any:
@@ -62,7 +64,7 @@ class EnsembleReader:
         return str(self._found["value", quantity, ""].units)
 
     def values(self, quantity: str, level: str = "") -> FloatArray:
-        """Values of a quantity, NaN where it does not occur or the sample failed, (S,) or (n_p,)."""
+        """Values of a quantity, NaN where it does not occur or the realization failed, (S,) or (n_p,)."""
         return self._column(("value", quantity, level))
 
     def margins(self, quantity: str, level: str = "") -> FloatArray | None:
@@ -75,23 +77,28 @@ class EnsembleReader:
         return np.asarray(self._found["failed", "", level][:], dtype=np.int64)
 
     def valid(self, level: str = "") -> BoolArray:
-        """Which samples did not fail, (S,) or (n_p,)."""
+        """Which realizations did not fail, (S,) or (n_p,)."""
         return np.asarray(self._found["failed", "", level][:] == FINITE)
 
     def failed_at(self) -> FloatArray:
-        """Model times at which failed samples ceased to be finite, (S,)."""
+        """Model times at which failed realizations ceased to be finite, (S,)."""
         return self._column(("failed_at", "", ""))
 
-    def replicate(self, first: int = 0, last: int | None = None) -> IntArray:
-        """Scrambling of realizations first .. last - 1, default all, (last - first,)."""
-        return np.asarray(self._found["replicate", "", ""][first:last], dtype=np.int64)
+    @property
+    def repeats(self) -> int:
+        """Noise paths of each parameter sample."""
+        return int(self._found["repeat", "", ""][-1]) + 1
+
+    def numbers(self, name: str, first: int = 0, last: int | None = None) -> NDArray[np.int32]:
+        """Number of the "sample", "repeat" or "replicate" of realizations first .. last - 1, (last - first,)."""
+        return np.asarray(self._found[name, "", ""][first:last], dtype=np.int32)
 
     def input(self, path: str) -> FloatArray:
         """Values of an input, (S,)."""
         return self._column(("input", path, ""))
 
     def axis(self, name: str) -> FloatArray:
-        """Values along "x", "t" or "t_moments"; empty where the file has no such axis."""
+        """Values along "x", "t", "t_moments", "band" or "fan"; empty where the file has no such axis."""
         key = ("axis", name, "")
         return self._column(key) if key in self._found else np.zeros(0)
 
@@ -112,8 +119,22 @@ class EnsembleReader:
         key = ("field", "", "")
         return np.asarray(self._found[key][first:last]) if key in self._found else None
 
+    @property
+    def kept(self) -> int:
+        """Number of realizations whose fields are stored, the first ones."""
+        if ("field", "", "") not in self._found:
+            return 0
+        return min(len(self), MOST_KEPT)
+
+    def histories(self, quantity: str) -> tuple[FloatArray, FloatArray] | None:
+        """A quantity in time, at "t_moments": its quantiles (5, K) at the probabilities of the axis "fan", and
+        single realizations (<= 6, K); None where it was not followed."""
+        if ("fan", quantity, "") not in self._found:
+            return None
+        return self._column(("fan", quantity, "")), self._column(("paths", quantity, ""))
+
     def rows(self, first: int, last: int, level: str = "") -> Records:
-        """Samples first .. last - 1 (probes, at an extra level) as records without fields."""
+        """Realizations first .. last - 1 (probes, at an extra level) as records without fields."""
         cut = slice(first, last)
 
         def columns(role: str, at: str) -> dict[str, FloatArray]:
@@ -125,7 +146,7 @@ class EnsembleReader:
             np.asarray(self._found["failed_at", "", ""][cut]) if not level else np.full(len(failed), np.nan)
         )
         return Records(
-            samples=np.arange(first, first + len(failed), dtype=np.int64),
+            realizations=np.arange(first, first + len(failed), dtype=np.int64),
             inputs=columns("input", ""),
             values=columns("value", level),
             margins=columns("margin", level),

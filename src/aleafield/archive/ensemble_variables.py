@@ -9,7 +9,7 @@ import numpy as np
 
 from aleafield.archive.attributes import set_attributes
 from aleafield.archive.description import Description, QuantityColumn
-from aleafield.archive.field_state import BAND, BAND_SAMPLES
+from aleafield.archive.field_state import BAND, BAND_SAMPLES, FAN, FAN_REALIZATIONS, PATHS
 from aleafield.archive.names import Names
 from aleafield.ensemble.level import Level
 from aleafield.ensemble.records import FAILURE_MEANINGS
@@ -56,10 +56,10 @@ class EnsembleVariables:
 
     def _make_dimensions(self) -> None:
         description, axes = self._description, self._description.axes
-        lengths = {"realization": description.samples, "t_moments": len(axes.moment_times), "x": len(axes.x)}
-        lengths["band"] = len(BAND)
+        lengths = {"realization": description.realizations, "t_moments": len(axes.moment_times)}
+        lengths |= {"x": len(axes.x), "band": len(BAND)}
         if description.extra_levels:
-            lengths["probe"] = description.probes
+            lengths["probe"] = description.probes * description.repeats
         if description.kept:
             lengths["t"] = len(axes.kept_times)
         for name, length in lengths.items():
@@ -85,12 +85,13 @@ class EnsembleVariables:
         return variable
 
     def _make_numbers(self) -> None:
-        count = np.arange(self._description.samples, dtype=np.int32)
+        count = np.arange(self._description.realizations, dtype=np.int32)
+        sample, repeat = np.divmod(count, np.int32(self._description.repeats))
         columns = {
             "realization": ("number of the realization", count),
-            "sample": ("number of the parameter sample", count),
-            "repeat": ("number of the noise path of the sample", np.zeros_like(count)),
-            "replicate": ("number of the scrambling of the sample", count % self._description.replicates),
+            "sample": ("number of the parameter sample", sample),
+            "repeat": ("number of the noise path of the sample", repeat),
+            "replicate": ("number of the scrambling of the sample", sample % self._description.replicates),
         }
         for name, (long_name, values) in columns.items():
             standard = "realization" if name == "realization" else None
@@ -136,8 +137,8 @@ class EnsembleVariables:
         self._make(("value", quantity.name, ""), name, ALONG, about)
 
     def _make_probes(self) -> None:
-        probes = np.arange(self._description.probes, dtype=np.int32)
-        about = {"long_name": "number of the parameter sample of the probe", "units": "1"}
+        probes = np.arange(self._description.probes * self._description.repeats, dtype=np.int32)
+        about = {"long_name": "number of the realization of the probe", "units": "1"}
         self._make(("probe", "", ""), "probe", ("probe",), about, "i4")[:] = probes
         for level in self._description.extra_levels:
             name = self.names.take(f"failed_{level.label}")
@@ -151,6 +152,7 @@ class EnsembleVariables:
             "nodes": level.nodes,
             "quadrature_points": level.quadrature_points,
             "halvings_of_the_step": level.halvings,
+            "noise_modes": level.modes or None,
             "ancillary_variables": failed,
         }
         about = {"long_name": f"{quantity.name} at level {level.label}", "units": quantity.units}
@@ -197,7 +199,37 @@ class EnsembleVariables:
             "units": axes.field_units,
             "coordinates": self._coordinates,
             "ancillary_variables": "failed",
-            "comment": some if description.kept < description.samples else None,
+            "comment": some if description.kept < description.realizations else None,
         }
         field = self._make(("field", "", ""), "u", (*ALONG, "t", "x"), about, blocks=(rows, *shape))
         field.set_var_chunk_cache(size=2 * 8 * rows * shape[0] * shape[1])
+
+    def make_histories(self, names: Sequence[str]) -> None:
+        """Add fans and single paths of the quantities that are followed in time; without any, nothing."""
+        if not names:
+            return
+        few = min(PATHS, self._description.realizations)
+        for name, length in (("fan", len(FAN)), ("path", few)):
+            self._dataset.createDimension(name, length)
+        probabilities = {"long_name": "probability of a quantile of a quantity in time", "units": "1"}
+        self._make(("axis", "fan", ""), "fan", ("fan",), probabilities)[:] = FAN
+        numbers = {"long_name": "number of the realization of the path", "units": "1"}
+        self._make(("path", "", ""), "path", ("path",), numbers, "i4")[:] = np.arange(few, dtype=np.int32)
+        for quantity in self._description.quantities:
+            if quantity.name in names:
+                self._make_history(quantity)
+
+    def _make_history(self, quantity: QuantityColumn) -> None:
+        words = f"{quantity.followed} of {quantity.name}" if quantity.followed else quantity.name
+        units = quantity.followed_units or quantity.units
+        where = " in which it occurs" if quantity.may_not_occur else ""
+        fan = {
+            "long_name": f"quantiles of {words} in time over the first {FAN_REALIZATIONS} realizations at most"
+            f"{where}",
+            "units": units,
+        }
+        name = self.names.take(f"{quantity.name}_fan")
+        self._make(("fan", quantity.name, ""), name, ("fan", "t_moments"), fan)
+        paths = {"long_name": f"{words} in time in single realizations", "units": units}
+        name = self.names.take(f"{quantity.name}_paths")
+        self._make(("paths", quantity.name, ""), name, ("path", "t_moments"), paths)

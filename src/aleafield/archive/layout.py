@@ -75,12 +75,12 @@ class Layout:
         """Present while a process works in the folder."""
         return self.folder / ".lock"
 
-    def field_state(self, samples: int) -> Path:
-        """What an extension needs of the fields of so many samples besides the ensemble."""
-        return self.folder / f"field_state_{samples}.nc"
+    def field_state(self, realizations: int) -> Path:
+        """What an extension needs of the fields of so many realizations besides the ensemble."""
+        return self.folder / f"field_state_{realizations}.nc"
 
     def field_states(self) -> list[Path]:
-        """Field states of any number of samples."""
+        """Field states of any number of realizations."""
         return sorted(self.folder.glob("field_state_*.nc"))
 
     def foreign(self) -> list[str]:

@@ -6,7 +6,7 @@ import re
 
 FIXED = (
     *("realization", "sample", "repeat", "replicate", "probe", "failed", "failed_at"),
-    *("u", "t", "x", "t_moments", "band"),
+    *("u", "t", "x", "t_moments", "band", "fan", "path"),
 )
 """Names that are taken before any input or quantity."""
 

@@ -21,12 +21,12 @@ def write_table(layout: Layout, reader: EnsembleReader) -> None:
     path = layout.table
     with storing(path), open(partial(path), "w", newline="", encoding="utf-8") as file:
         writer = csv.writer(file, lineterminator="\n")
-        writer.writerow(["sample", "replicate", "failed", *reader.inputs, *reader.quantities])
+        writer.writerow(["sample", "repeat", "replicate", "failed", *reader.inputs, *reader.quantities])
         for first in range(0, len(reader), ROWS):
             last = min(first + ROWS, len(reader))
             records = reader.rows(first, last)
-            numbers = [records.samples, reader.replicate(first, last), records.failed]
-            columns = [column.tolist() for column in numbers]
+            numbers = [reader.numbers(name, first, last) for name in ("sample", "repeat", "replicate")]
+            columns = [*(column.tolist() for column in numbers), records.failed.tolist()]
             columns += [records.inputs[path].tolist() for path in reader.inputs]
             columns += [_cells(records.values[name].tolist()) for name in reader.quantities]
             writer.writerows(zip(*columns, strict=True))

@@ -12,11 +12,14 @@ from aleafield.randomness.inputs import Input
 
 
 class ForwardModel(Protocol):
-    """Whatever can be evaluated at a level on sample indices.
+    """Whatever can be evaluated at a level on realizations.
+
+    A realization is a parameter sample with one noise path: number j is path j mod R of sample j // R, R the
+    number of `repeats`.  Without repeats realizations and samples are the same.
 
     Monte Carlo, quasi-Monte Carlo, the error split, pilots, resumption and workers are built on `evaluate`
     alone; none of them knows of kernels, meshes or time steppers.  An implementation must be picklable, and the
-    values of a sample must not depend on the other samples of the batch.
+    values of a realization must not depend on the others of the batch.  Noise paths are shared by all levels.
     """
 
     @property
@@ -24,14 +27,19 @@ class ForwardModel(Protocol):
         """The uncertain inputs, in the order of the sampling dimensions."""
         ...
 
-    def evaluate(self, level: Level, samples: IntArray, times: Sequence[float] = ()) -> Records:
-        """Quantities (and the fields at `times`) of the samples at a level.
+    @property
+    def repeats(self) -> int:
+        """Noise paths of each parameter sample; 1 without repeats, and without noise."""
+        ...
+
+    def evaluate(self, level: Level, realizations: IntArray, times: Sequence[float] = ()) -> Records:
+        """Quantities (and fields and histories at `times`) of the realizations at a level.
 
         Parameters
         ----------
         level : Level
-        samples : int array (S,), S a multiple of 8 where equality to the bit is wanted
-        times : model times at which the fields are wanted, increasing
+        realizations : int array (S,), S a multiple of 8 where equality to the bit is wanted
+        times : model times at which fields and histories are wanted, increasing
         """
         ...
 
@@ -40,7 +48,7 @@ class ForwardModel(Protocol):
         ...
 
     def operations(self, level: Level) -> float:
-        """Floating-point operations for one sample at a level: counted, never timed."""
+        """Floating-point operations for one realization at a level: counted, never timed."""
         ...
 
     def points(self, level: Level) -> FloatArray:

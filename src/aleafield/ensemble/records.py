@@ -22,12 +22,12 @@ FAILURE_MEANINGS: Mapping[int, str] = {
 
 @dataclass
 class Records:
-    """Values of S samples at one level.
+    """Values of S realizations at one level.
 
     Attributes
     ----------
-    samples : int array (S,)
-        Sample indices.
+    realizations : int array (S,)
+        Their indices: realization j is noise path j mod R of parameter sample j // R, with R paths a sample.
     inputs : mapping of path to float array (S,)
     values : mapping of quantity name to float array (S,)
         NaN where the quantity does not occur or the sample failed.
@@ -39,32 +39,37 @@ class Records:
         Model time at which a failed sample ceased to be finite; NaN otherwise.
     fields : float array (S, K, n) or None
         The field at the K requested times and the level's nodes in increasing x.
+    histories : mapping of quantity name to float array (S, K)
+        For noisy fields: quantities of one state, followed at the K requested times; NaN where one does not
+        occur or the realization failed.
     """
 
-    samples: IntArray
+    realizations: IntArray
     inputs: dict[str, FloatArray]
     values: dict[str, FloatArray]
     margins: dict[str, FloatArray] = field(default_factory=dict)
     failed: IntArray = field(default_factory=lambda: np.zeros(0, dtype=np.int64))
     failed_at: FloatArray = field(default_factory=lambda: np.zeros(0))
     fields: FloatArray | None = None
+    histories: dict[str, FloatArray] = field(default_factory=dict)
 
     def __len__(self) -> int:
-        return len(self.samples)
+        return len(self.realizations)
 
     @property
     def valid(self) -> BoolArray:
-        """Which samples did not fail, shape (S,)."""
+        """Which realizations did not fail, shape (S,)."""
         return np.asarray(self.failed == FINITE)
 
     def first(self, count: int) -> Records:
-        """The first `count` samples: what remains of a padded batch."""
+        """The first `count` realizations: what remains of a padded batch."""
         return Records(
-            samples=self.samples[:count],
+            realizations=self.realizations[:count],
             inputs={k: v[:count] for k, v in self.inputs.items()},
             values={k: v[:count] for k, v in self.values.items()},
             margins={k: v[:count] for k, v in self.margins.items()},
             failed=self.failed[:count],
             failed_at=self.failed_at[:count],
             fields=None if self.fields is None else self.fields[:count],
+            histories={k: v[:count] for k, v in self.histories.items()},
         )

@@ -10,13 +10,16 @@ from aleafield.estimates.probability import estimate_exceedance, estimate_occurr
 from aleafield.estimates.quantile import estimate_quantile
 from aleafield.estimates.sample import Sample
 from aleafield.estimates.sd import estimate_sd
+from aleafield.estimates.variance_parts import VarianceParts, estimate_variance_parts
 
 __all__ = [
     "Estimate",
     "Sample",
+    "VarianceParts",
     "estimate_exceedance",
     "estimate_mean",
     "estimate_occurrence",
     "estimate_quantile",
     "estimate_sd",
+    "estimate_variance_parts",
 ]

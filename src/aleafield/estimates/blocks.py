@@ -16,10 +16,10 @@ BlockArray = NDArray[np.signedinteger[Any]]
 """Labels of blocks, in as few bytes as they need."""
 SEGMENT = 1 << 12
 """Samples that are worked on at a time where whole columns would only serve as scratch."""
-
-
 FEW = 10
 """With fewer hits or misses, or samples beyond a quantile, than this, blocks are not trusted alone."""
+ALL_AGREE = 1e-6
+"""A standard error below this share of one hit is rounding: one hit more in one block gives far more."""
 
 
 def segments(n: int) -> Iterator[slice]:
@@ -101,6 +101,20 @@ def block_mean(values: FloatArray | BoolArray, block: BlockArray, n_blocks: int)
     return BlockMean(centre, error, n - 1)
 
 
-def mean_of(values: FloatArray, block: BlockArray, n_blocks: int) -> BlockMean:
-    """Mean over independent values (one block in all: plain Monte Carlo) or over blocks."""
-    return plain_mean(values) if n_blocks == 1 else block_mean(values, block, n_blocks)
+def number_in_clusters(share: float, n: int, hits: BlockMean) -> float:
+    """How many independent samples would know a probability as well as n samples in clusters do.
+
+    P (1 - P) / se^2 is n over the design effect (Kish 1965).  Repeats of one parameter sample are never of
+    unlike minds on average, nor more alike than equal, so it lies between the number of clusters and n; where
+    all clusters agree nothing is seen of it, and it is the number of clusters.
+
+    Parameters
+    ----------
+    share : pooled share of hits
+    n : samples that count
+    hits : the share with its standard error over clusters
+    """
+    clusters = hits.degrees + 1.0
+    if n * hits.standard_error <= ALL_AGREE:
+        return clusters
+    return min(max(share * (1.0 - share) / hits.standard_error**2, clusters), float(n))

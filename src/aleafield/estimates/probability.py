@@ -7,15 +7,12 @@ import math
 import numpy as np
 
 from aleafield.arrays import BoolArray
-from aleafield.estimates.blocks import FEW, block_mean, normal, student
+from aleafield.estimates.blocks import ALL_AGREE, FEW, block_mean, normal, number_in_clusters, student
 from aleafield.estimates.estimate import Estimate, exact, nothing_given, undetermined
 from aleafield.estimates.sample import Sample
 
 MOST_GAIN = 50.0
 """No claim of more than this many times the number of samples, however well the blocks agree."""
-
-ALL_AGREE = 1e-6
-"""A standard error below this share of one hit is rounding: one hit more in one block gives far more."""
 
 
 def wilson(share: float, n: float, deviate: float) -> tuple[float, float]:
@@ -53,8 +50,8 @@ def estimate_exceedance(sample: Sample, level: float, confidence: float) -> Esti
         n_eff = P (1 - P) / se^2,
 
     at most the number n of samples with fewer than 10 hits or misses, at most 50 n otherwise, and n where all
-    blocks agree.  Not used: Wald's interval P +- z se and t over block shares, which both miss rare events
-    far too often.
+    blocks agree; for A clusters at least A and at most n, and A where all agree.  Not
+    used: Wald's interval P +- z se and t over block shares, which both miss rare events far too often.
 
     Parameters
     ----------
@@ -85,9 +82,11 @@ def _probability(sample: Sample, hits: BoolArray, confidence: float) -> Estimate
         return Estimate(share, *wilson(share, n, normal(confidence)))
     blocks = block_mean(hits[sample.valid], sample.replicate[sample.valid], sample.replicates)
     if blocks.degrees < 1:
-        return undetermined(n)
+        return undetermined(blocks.degrees + 1)
     effective = float(n)
-    if n * blocks.standard_error > ALL_AGREE:
+    if sample.clustered:
+        effective = number_in_clusters(share, n, blocks)
+    elif n * blocks.standard_error > ALL_AGREE:
         most = n if min(n_hits, n - n_hits) < FEW else MOST_GAIN * n
         effective = min(share * (1.0 - share) / blocks.standard_error**2, most)
     return Estimate(share, *wilson(share, effective, student(confidence, blocks.degrees)))

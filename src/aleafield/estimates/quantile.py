@@ -2,9 +2,11 @@
 
 from __future__ import annotations
 
+import math
+
 from aleafield.arrays import FloatArray
 from aleafield.errors import InputError
-from aleafield.estimates.blocks import FEW, block_mean
+from aleafield.estimates.blocks import FEW, block_mean, normal, number_in_clusters, student
 from aleafield.estimates.estimate import Estimate, exact, nothing_given, undetermined
 from aleafield.estimates.sample import Sample
 
@@ -63,8 +65,10 @@ def estimate_quantile(sample: Sample, p: float, confidence: float) -> Estimate:
         d = t sd(F_r(q)) / sqrt(R) + 1 / (2 n),
 
     F_r the empirical distribution of block r and t on R - 1 degrees of freedom; where fewer than 10 samples
-    lie beyond the quantile the wider of this and the order statistics.  The percentile bootstrap and clipping
-    to the range of the samples miss extreme quantiles far too often.
+    lie beyond the quantile the wider of this and the order statistics.  Clusters: the order statistics of as
+    many independent samples as know F(q) equally well, their ranks brought to the pooled samples (Korn and
+    Graubard 1998, from memory); Woodruff's interval is symmetric and often not determined there.  The
+    percentile bootstrap and clipping to the range of the samples miss extreme quantiles far too often.
 
     Parameters
     ----------
@@ -90,6 +94,8 @@ def estimate_quantile(sample: Sample, p: float, confidence: float) -> Estimate:
         return nothing_given(sample.n_valid)
     if sample.certain:
         return exact(float(sample.given[0]))
+    if sample.clustered:
+        return _from_clusters(sample, p, confidence)
     ordered = sample.ordered
     value = ordered_quantile(ordered, p)
     few = n * min(p, 1.0 - p) < FEW
@@ -109,3 +115,20 @@ def estimate_quantile(sample: Sample, p: float, confidence: float) -> Estimate:
         return undetermined(n)
     below, above = (ordered_quantile(ordered, p + side * distance) for side in (-1.0, 1.0))
     return Estimate(value, min(below, ends[0]), max(above, ends[1]))
+
+
+def _from_clusters(sample: Sample, p: float, confidence: float) -> Estimate:
+    """Order statistics for the effective number of independent samples, with t in place of the normal."""
+    ordered, n = sample.ordered, len(sample.given)
+    value = ordered_quantile(ordered, p)
+    share = block_mean(sample.given <= value, sample.given_block, sample.replicates)
+    if share.degrees < 1:
+        return undetermined(sample.independent)
+    shorter = (normal(confidence) / student(confidence, share.degrees)) ** 2
+    effective = int(number_in_clusters(p, n, share) * shorter)
+    low, high = order_statistic_ranks(effective, p, confidence)
+    if low < 1 or high > effective:
+        return undetermined(sample.independent)
+    # at least low of effective lie below exactly where at least low n / effective of n do
+    first, last = math.floor(low * n / effective), math.ceil((high - 1) * n / effective)
+    return Estimate(value, float(ordered[first - 1]), float(ordered[last]))

@@ -8,7 +8,7 @@ from functools import cached_property
 import numpy as np
 
 from aleafield.arrays import BoolArray, FloatArray
-from aleafield.estimates.blocks import BlockArray
+from aleafield.estimates.blocks import BlockArray, BlockMean, block_mean, plain_mean
 
 
 @dataclass(frozen=True, eq=False)
@@ -20,11 +20,11 @@ class Sample:
 
     - plain Monte Carlo: each realization is a block of its own, `replicates` = 1 and `replicate` all 0;
     - quasi-Monte Carlo: a block is one scrambling, `replicates` = 16;
-    - repeated noise paths: a block is one parameter sample with all its repeats, `replicate` = its number and
-      `replicates` = the number of parameter samples (under quasi-Monte Carlo a scrambling holds the repeats
-      of its points, and nothing changes).
+    - repeated noise paths under plain Monte Carlo: a block is a *cluster*, one parameter sample with all its
+      repeats, `replicate` = its number, `replicates` = the number of parameter samples, `clustered` set;
+    - repeated noise paths under quasi-Monte Carlo: a block is one scrambling with the repeats of its points.
 
-    With `replicates` > 1 all intervals rest on the spread between blocks.
+    Unless the sample is plain all intervals rest on the spread between blocks.
 
     Attributes
     ----------
@@ -42,6 +42,8 @@ class Sample:
         Number of blocks; 1 for plain Monte Carlo.
     certain : bool
         No input and no noise: one realization is the whole law, and there is no sampling error.
+    clustered : bool
+        The blocks are parameter samples with repeated noise paths, drawn plainly.
 
     Raises
     ------
@@ -57,6 +59,7 @@ class Sample:
     replicate: BlockArray
     replicates: int = 1
     certain: bool = False
+    clustered: bool = False
 
     @staticmethod
     def of(
@@ -67,6 +70,7 @@ class Sample:
         replicate: BlockArray | None = None,
         replicates: int = 1,
         certain: bool = False,
+        clustered: bool = False,
     ) -> Sample:
         """A sample whose occurrence follows from its margin (without one the quantity always occurs)."""
         values = np.asarray(values, dtype=np.float64)
@@ -76,7 +80,7 @@ class Sample:
         if replicate is None:
             replicate = np.zeros(values.shape, dtype=label)
         replicate = np.asarray(replicate, dtype=label)
-        return Sample(values, occurs, valid, margin, replicate, replicates, certain)
+        return Sample(values, occurs, valid, margin, replicate, replicates, certain, clustered)
 
     def __post_init__(self) -> None:
         arrays = [self.occurs, self.valid, self.replicate] + ([] if self.margin is None else [self.margin])
@@ -117,4 +121,25 @@ class Sample:
     @property
     def plain(self) -> bool:
         """Whether each realization is independent of all others."""
-        return self.replicates == 1
+        return self.replicates == 1 and not self.clustered
+
+    @property
+    def scrambled(self) -> bool:
+        """Whether blocks are scramblings, within which points repel each other."""
+        return self.replicates > 1 and not self.clustered
+
+    @cached_property
+    def independent(self) -> int:
+        """How many of `given` count when a statistic asks for a least number: clusters count once."""
+        return self.independent_in(self.given_block)
+
+    def independent_in(self, block: BlockArray) -> int:
+        """How many of the realizations in these blocks (k,) count: clusters once, others each."""
+        return len(np.unique(block)) if self.clustered else len(block)
+
+    def mean_over(self, values: FloatArray, block: BlockArray) -> BlockMean:
+        """Mean of values (k,), k >= 1, of realizations in these blocks (k,), from independent values or blocks.
+
+        They may be any of the realizations: blocks that hold none of them are no evidence and are left out.
+        """
+        return plain_mean(values) if self.plain else block_mean(values, block, self.replicates)

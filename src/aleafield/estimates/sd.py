@@ -7,8 +7,9 @@ import math
 import numpy as np
 
 from aleafield.arrays import FloatArray
-from aleafield.estimates.blocks import BlockArray, block_counts, block_mean, segments, student
+from aleafield.estimates.blocks import BlockArray, block_counts, block_mean, segments
 from aleafield.estimates.estimate import Estimate, exact, nothing_given, undetermined
+from aleafield.estimates.positive import log_interval
 from aleafield.estimates.sample import Sample
 
 LEAST_SAMPLES = 64
@@ -27,8 +28,9 @@ def block_factor(sample: Sample) -> float:
 
     The mean square about the sample's mean falls short of the variance by the variance of that mean.  For
     independent samples the divisor n - 1 makes up for it; scrambled points know their mean far better, and
-    n - 1 would then leave a bias of s / (2 n), more than their whole error.  So the square of the standard
-    error that the blocks show is added instead.
+    n - 1 would then leave a bias of s / (2 n), more than their whole error; clusters know it less well.  So the
+    square of the standard error that the blocks show is added instead.  For A clusters of R repeats the square
+    of the result is the sum of the noise and the parameter part of the variance, see `variance_parts`.
     """
     values = sample.given
     n = len(values)
@@ -40,18 +42,11 @@ def block_factor(sample: Sample) -> float:
 
 
 def estimate_sd(sample: Sample, confidence: float) -> Estimate:
-    """Standard deviation s of the quantity, given that it occurs, with the interval s exp(+-t SE).
+    """Standard deviation s of the quantity, given that it occurs, with a jackknife interval of its logarithm.
 
-    SE is the jackknife standard error of ln s (Quenouille, Tukey), leaving out one sample (plain Monte Carlo)
-    or one block at a time, and t has as many degrees of freedom as samples or blocks, less one.  The
-    logarithm keeps the interval positive.  With blocks the divisor is n, see `block_factor`.  Samples of a
-    skew quantity often miss its tail, and then both s and SE are too small: the upper end is
-    s exp((t + k (2 t^2 + 1)) SE),
-
-        k = max(0, skewness of the jackknife deviations) / (6 sqrt(n)),
-
-    after the correction of t for skewness of Johnson 1978.  The chi-square interval of normal theory does not
-    cover for skew quantities.
+    The jackknife leaves out one sample (plain Monte Carlo) or one block at a time; see `log_interval`.  With
+    blocks the divisor is n, see `block_factor`.  The chi-square interval of normal theory does not cover for
+    skew quantities.
 
     Parameters
     ----------
@@ -61,8 +56,9 @@ def estimate_sd(sample: Sample, confidence: float) -> Estimate:
     Returns
     -------
     Estimate
-        In the units of the quantity; not determined by fewer than 64 samples, nor where one sample or block
-        alone makes the spread.  A certain quantity, and samples that are all equal, have sd 0 exactly.
+        In the units of the quantity; not determined by fewer than 64 samples (clusters count once), nor where
+        one sample or block alone makes the spread.  A certain quantity, and samples that are all equal, have
+        sd 0 exactly.
     """
     values = sample.given
     n = len(values)
@@ -70,8 +66,8 @@ def estimate_sd(sample: Sample, confidence: float) -> Estimate:
         return nothing_given(sample.n_valid)
     if sample.certain:
         return exact(0.0)
-    if n < LEAST_SAMPLES:
-        return undetermined(n, f"a standard deviation needs {LEAST_SAMPLES}")
+    if sample.independent < LEAST_SAMPLES:
+        return undetermined(sample.independent, f"a standard deviation needs {LEAST_SAMPLES}")
     s = standard_deviation(values) * block_factor(sample)
     if s == 0.0:
         return exact(0.0)
@@ -82,19 +78,10 @@ def estimate_sd(sample: Sample, confidence: float) -> Estimate:
     )
     parts = len(variances)
     if parts < 2 or not (variances > 1e-12 * s**2).all():
-        return undetermined(n, "the spread comes from one of them")
-    deviation = np.log(variances, out=variances)
-    deviation *= 0.5
-    deviation -= deviation.mean()
-    error = float(np.sqrt((parts - 1) / parts * (deviation @ deviation)))
-    t = student(confidence, parts - 1)
-    upward = t - _skewness(deviation) / (6.0 * math.sqrt(parts)) * (2.0 * t**2 + 1.0)
-    return Estimate(s, s * math.exp(-t * error), s * math.exp(max(t, upward) * error))
-
-
-def _skewness(deviation: FloatArray) -> float:
-    """Skewness of deviations from their mean (n,), not all 0."""
-    return float(np.mean(deviation**3) / np.mean(deviation**2) ** 1.5)
+        return undetermined(sample.independent, "the spread comes from one of them")
+    logarithms = np.log(variances, out=variances)
+    logarithms *= 0.5
+    return log_interval(s, logarithms, confidence)
 
 
 def _variances_without_one(values: FloatArray) -> FloatArray:

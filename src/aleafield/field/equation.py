@@ -1,4 +1,4 @@
-"""The field equation: tau du/dt = -u + integral of w f(u) + xi, u(x, 0) = u0(x)."""
+"""The field equation: tau du = (-u + integral of w f(u) + xi) dt + sigma dW, u(x, 0) = u0(x)."""
 
 from __future__ import annotations
 
@@ -8,6 +8,7 @@ from dataclasses import dataclass, field
 from aleafield.arrays import FloatArray
 from aleafield.field.formula_term import FormulaTerm, constant
 from aleafield.field.kernels import Connectivity
+from aleafield.field.noise import Noise
 from aleafield.field.parameter import (
     Bindable,
     Binding,
@@ -43,6 +44,7 @@ class FieldEquation:
     drive : FormulaTerm in x and t, units of activity
     initial : FormulaTerm in x, units of activity
     parameters : named numbers that the other entries use
+    noise : Noise, None where there is none
     """
 
     domain: Domain
@@ -52,9 +54,10 @@ class FieldEquation:
     drive: FormulaTerm = field(default_factory=lambda: constant(0.0))
     initial: FormulaTerm = field(default_factory=lambda: constant(0.0))
     parameters: Mapping[str, Parameter] = field(default_factory=dict)
+    noise: Noise | None = None
 
     def uncertain(self) -> Iterator[Uncertain]:
-        """All laws of the model in the order parameters, kernel, rate, drive, initial, dynamics."""
+        """All laws of the model in the order parameters, kernel, rate, drive, initial, dynamics, noise."""
         for name, value in self.parameters.items():
             if isinstance(value, Law):
                 yield Uncertain(name, value, DIMENSIONLESS)
@@ -63,6 +66,8 @@ class FieldEquation:
         yield from self.drive.uncertain("drive")
         yield from self.initial.uncertain("initial")
         yield from self.dynamics.uncertain("dynamics")
+        if self.noise is not None:
+            yield from self.noise.uncertain("noise")
 
     def binding(self, inputs: Mapping[str, FloatArray]) -> Binding:
         """Inputs and evaluated parameters of a batch."""
@@ -77,6 +82,7 @@ class FieldEquation:
             dynamics=self.dynamics.bind("dynamics", binding),
             drive=self.drive.bind("drive", binding),
             initial=self.initial.bind("initial", binding),
+            noise=None if self.noise is None else self.noise.bind("noise", binding),
         )
 
     def bindables(self) -> Iterator[tuple[str, Bindable]]:
@@ -87,3 +93,5 @@ class FieldEquation:
         yield "drive", self.drive
         yield "initial", self.initial
         yield "dynamics", self.dynamics
+        if self.noise is not None:
+            yield "noise", self.noise

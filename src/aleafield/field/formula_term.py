@@ -64,6 +64,14 @@ class FormulaTerm(Bindable):
                     changed = True
         return any(f.kinks_in(name) for f in self.formulas() for name in dependent)
 
+    def degree_in(self, variable: str) -> float:
+        """Degree as a polynomial in the variable, by structure: 0, 1, 2, .. or inf where it is none."""
+        formulas = {name: value for name, value in self.names.items() if isinstance(value, Formula)}
+        degrees: dict[str, float] = {}
+        for name in order_of(formulas, "formula"):
+            degrees[name] = formulas[name].degree_in(variable, degrees)
+        return self.formula.degree_in(variable, degrees)
+
     def evaluate(
         self, variables: Mapping[str, float | FloatArray], axes: int, inside: float | None = None
     ) -> FloatArray:

@@ -9,11 +9,14 @@ from typing import Any, Self
 
 import numpy as np
 
-from aleafield.arrays import FloatArray
+from aleafield.arrays import BoolArray, FloatArray
 from aleafield.errors import InputError
 from aleafield.formula import Formula, order_of
 from aleafield.randomness.laws import Law
 from aleafield.units import DIMENSIONLESS, Dimension
+
+IMPROBABLE = 1e-12
+"""Probability of an impossible value up to which a law is accepted."""
 
 Parameter = float | Formula | Law
 """A number before binding."""
@@ -21,7 +24,58 @@ Bound = float | FloatArray
 """A number after binding: a float where it is certain, shape (S,) where it depends on the sample."""
 
 
-def number(dimension: Dimension, *, default: Any = dataclasses.MISSING, positive: bool = False) -> Any:
+@dataclass(frozen=True)
+class Sign:
+    """Which finite values a number may have.
+
+    Attributes
+    ----------
+    word : what it must be, for messages
+    fault : what a law gives that it must not
+    zero, negative : whether such values are possible
+    instead : laws that never give an impossible value
+    """
+
+    word: str
+    fault: str
+    zero: bool
+    negative: bool
+    instead: str = ""
+
+    def impossible(self, values: FloatArray) -> BoolArray:
+        """Which of the values (S,) cannot be, finite or not; shape (S,)."""
+        wrong = ~np.isfinite(values)
+        if not self.negative:
+            wrong |= values < 0
+        if not self.zero:
+            wrong |= values == 0
+        return np.asarray(wrong)
+
+    def probability_of_impossible(self, law: Law) -> float:
+        """Probability with which a law gives an impossible value."""
+        if self.negative:
+            return 0.0
+        return law.probability_below(0.0) if self.zero else float(law.cdf(0.0))
+
+
+ANY_SIGN = Sign("finite", "", zero=True, negative=True)
+POSITIVE = Sign(
+    "positive", "zero or negative", zero=False, negative=False,
+    instead="use truncated_normal(mean, sd, low, high) with low > 0, or lognormal",
+)  # fmt: skip
+NOT_NEGATIVE = Sign(
+    "zero or positive", "negative", zero=True, negative=False,
+    instead="use truncated_normal(mean, sd, low, high) with low >= 0, or lognormal",
+)  # fmt: skip
+
+
+def number(
+    dimension: Dimension,
+    *,
+    default: Any = dataclasses.MISSING,
+    positive: bool = False,
+    not_negative: bool = False,
+) -> Any:
     """A dataclass field that holds a `Parameter` (or a tuple of them).
 
     Parameters
@@ -29,8 +83,10 @@ def number(dimension: Dimension, *, default: Any = dataclasses.MISSING, positive
     dimension : exponents of (activity, length, time)
     default : value where the study gives none
     positive : whether values at or below zero are impossible
+    not_negative : whether values below zero are impossible
     """
-    return field(default=default, metadata={"dimension": dimension, "positive": positive})
+    sign = POSITIVE if positive else NOT_NEGATIVE if not_negative else ANY_SIGN
+    return field(default=default, metadata={"dimension": dimension, "sign": sign})
 
 
 def beside() -> Any:
@@ -89,6 +145,16 @@ class Uncertain:
     dimension: Dimension
 
 
+@dataclass(frozen=True)
+class ImpossibleValue:
+    """A value that cannot be: path of the number, position in the batch, what was found, what must be."""
+
+    path: str
+    position: int
+    found: str
+    needed: str
+
+
 class Bindable:
     """A dataclass of model numbers: finds its laws, binds a batch, tells impossible values.
 
@@ -96,13 +162,19 @@ class Bindable:
     field that holds another Bindable (the term of a formula) is followed under the same path.
     """
 
+    def _held(self) -> Iterator[Bindable]:
+        """The objects in fields of this one, which have its path."""
+        for spec in dataclasses.fields(self):  # type: ignore[arg-type]
+            value = getattr(self, spec.name)
+            if isinstance(value, Bindable):
+                yield value
+
     def _numbers(self, prefix: str) -> Iterator[tuple[str, Any, Mapping[str, Any]]]:
+        """(path, value, metadata) of the numbers of this object, not of the objects that it holds."""
         for spec in dataclasses.fields(self):  # type: ignore[arg-type]
             value = getattr(self, spec.name)
             path = f"{prefix}.{spec.name}" if prefix else spec.name
-            if isinstance(value, Bindable):
-                yield from value._numbers(prefix)
-            elif "dimension" in spec.metadata:
+            if "dimension" in spec.metadata:
                 if isinstance(value, tuple):
                     for index, entry in enumerate(value):
                         yield f"{path}.{index}", entry, spec.metadata
@@ -113,7 +185,7 @@ class Bindable:
                     yield (
                         f"{prefix}.{name}",
                         entry,
-                        {"dimension": DIMENSIONLESS, "positive": False, "beside": True},
+                        {"dimension": DIMENSIONLESS, "sign": ANY_SIGN, "beside": True},
                     )
 
     def uncertain(self, prefix: str) -> Iterator[Uncertain]:
@@ -121,6 +193,8 @@ class Bindable:
         for path, value, metadata in self._numbers(prefix):
             if isinstance(value, Law):
                 yield Uncertain(path, value, metadata["dimension"])
+        for held in self._held():
+            yield from held.uncertain(prefix)
 
     def bind(self, prefix: str, binding: Binding) -> Self:
         """The same object with floats and (S,) arrays in place of expressions and laws."""
@@ -150,7 +224,7 @@ class Bindable:
         return bound
 
     def refuse_impossible_laws(self, prefix: str, certain: Mapping[str, float]) -> None:
-        """Refuse a law that gives a value at or below zero, where none can be, with probability above 1e-12.
+        """Refuse a law that gives a value that cannot be, by its sign, with probability above 1e-12.
 
         Parameters
         ----------
@@ -165,14 +239,14 @@ class Bindable:
         for path, value, metadata in self._numbers(prefix):
             if value is None or metadata.get("beside"):
                 continue
+            sign: Sign = metadata["sign"]
             if isinstance(value, Law):
-                share = float(value.cdf(0.0)) if metadata["positive"] else 0.0
-                if share > 1e-12:
+                share = sign.probability_of_impossible(value)
+                if share > IMPROBABLE:
                     raise InputError(
                         path,
-                        f"{value.text} is zero or negative with probability {share:.3g}",
-                        "this number must be positive: use truncated_normal(mean, sd, low, high) with low > 0, "
-                        "or lognormal",
+                        f"{value.text} is {sign.fault} with probability {share:.3g}",
+                        f"this number must be {sign.word}: {sign.instead}",
                     )
                 continue
             given = f"{value!r} given"
@@ -183,18 +257,24 @@ class Bindable:
                 given = f"{text} is {value!r}"
             if not np.isfinite(value):
                 raise InputError(path, given, "this number must be finite")
-            if metadata["positive"] and not value > 0:
-                raise InputError(path, given, "this number must be positive")
+            if sign.impossible(np.array([value])).any():
+                raise InputError(path, given, f"this number must be {sign.word}")
+        for held in self._held():
+            held.refuse_impossible_laws(prefix, certain)
 
-    def impossible_samples(self, prefix: str) -> Iterator[tuple[str, int, float]]:
-        """Of a bound object: (path, position in the batch, value) of values that cannot be."""
+    def impossible_samples(self, prefix: str) -> Iterator[ImpossibleValue]:
+        """Of a bound object: the values of its samples that cannot be."""
         for path, value, metadata in self._numbers(prefix):
             if value is None or isinstance(value, Formula) or "beside" in metadata:
                 continue  # what stands beside a formula may be of any sign
             values = np.atleast_1d(np.asarray(value, dtype=np.float64))
-            wrong = ~np.isfinite(values) | ((values <= 0) if metadata["positive"] else False)
-            for position in np.flatnonzero(wrong):
-                yield path, int(position), float(values[position])
+            sign: Sign = metadata["sign"]
+            for position in np.flatnonzero(sign.impossible(values)):
+                found = float(values[position])
+                word = sign.word if np.isfinite(found) else "finite"
+                yield ImpossibleValue(path, int(position), repr(found), f"this number must be {word}")
+        for held in self._held():
+            yield from held.impossible_samples(prefix)
 
 
 def bound(value: Parameter | FloatArray) -> Bound:

@@ -12,6 +12,7 @@ import numpy as np
 
 from aleafield.arrays import FloatArray
 from aleafield.errors import InputError
+from aleafield.formula.degree import degree
 from aleafield.formula.language import CONSTANTS, KINKED, nearest_name
 from aleafield.formula.parser import Push, Read, parse, shown
 
@@ -127,6 +128,22 @@ class Formula:
             for call in _calls(self._tree, KINKED)
             for argument in (call.args[:1] if _name_of(call) == "where" else call.args)
         )
+
+    def degree_in(self, name: str, others: Mapping[str, float] | None = None) -> float:
+        """Degree as a polynomial in the name, by structure: 0, 1, 2, .. or inf where it is none.
+
+        Parameters
+        ----------
+        name : str
+        others : mapping, optional
+            Degrees in it of further names, those of formulas that hold it; all others are free of it.
+
+        Examples
+        --------
+        >>> Formula("a * u * (x < 1) + u**2 / 3").degree_in("u")
+        2.0
+        """
+        return degree(self._tree, {**(others or {}), name: 1.0})
 
     def __eq__(self, other: object) -> bool:
         return isinstance(other, Formula) and self.text == other.text

@@ -12,18 +12,24 @@ from aleafield.arrays import FloatArray, IntArray
 from aleafield.ensemble.level import Level, PathPart
 from aleafield.ensemble.records import FIELD_NOT_FINITE, FINITE, QUANTITY_NOT_FINITE, Records
 from aleafield.field.equation import FieldEquation
+from aleafield.field.noise_modes import NoiseModes
 from aleafield.field.switching import switch_times, switching
+from aleafield.forward.noise import BatchNoise
 from aleafield.forward.recorder import FieldRecorder
 from aleafield.projection.discretisation import Discretisation
 from aleafield.projection.pairing import Pairing, resolve
 from aleafield.projection.path import split_path
 from aleafield.projection.scheme import Scheme
-from aleafield.quantities import FormulaQuantity, PeakPosition, Quantity
+from aleafield.projection.semidiscrete import SemiDiscreteField
+from aleafield.quantities import FormulaQuantity, History, Observer, PeakPosition, Quantity
 from aleafield.randomness.design import Design
 from aleafield.randomness.inputs import Input
-from aleafield.spaces import make_space
-from aleafield.stepping.runge_kutta import integrate
+from aleafield.spaces import Space, make_space
+from aleafield.stepping import euler_maruyama, runge_kutta
 from aleafield.stepping.schedule import Schedule
+
+FINEST_HALVINGS = 1
+"""Halvings of the finest level of the error split: bridges inside steps are the same at all its levels."""
 
 
 @dataclass(frozen=True)
@@ -51,6 +57,10 @@ class FieldModel:
         Largest step of the run's schedule, units of time.
     peak_references : mapping, optional
         On a ring, by quantity: the position about which peak positions are unwrapped.
+    noise : NoiseModes, optional
+        The modes that are kept; needed where the equation has noise.
+    repeats : int
+        Noise paths of each parameter sample.
     """
 
     def __init__(
@@ -62,12 +72,16 @@ class FieldModel:
         inputs: Sequence[Input],
         time_step: float,
         peak_references: Mapping[str, float] | None = None,
+        noise: NoiseModes | None = None,
+        repeats: int = 1,
     ) -> None:
         references = peak_references or {}
         self.equation = equation
         self.scheme = scheme
         self.design = design
         self.time_step = time_step
+        self.noise = noise
+        self._repeats = repeats
         self.quantities = tuple(
             replace(q, reference=references[q.name])
             if isinstance(q, PeakPosition) and q.name in references
@@ -89,9 +103,15 @@ class FieldModel:
         return self._inputs
 
     @property
+    def repeats(self) -> int:
+        """Noise paths of each parameter sample."""
+        return self._repeats
+
+    @property
     def level(self) -> Level:
         """The run's level."""
-        return Level(self.pairing.nodes, self.pairing.quadrature_points)
+        modes = 0 if self.noise is None else self.noise.modes
+        return Level(self.pairing.nodes, self.pairing.quadrature_points, modes=modes)
 
     @property
     def duration(self) -> float:
@@ -124,14 +144,17 @@ class FieldModel:
         return np.asarray(space.nodes[space.display_order])
 
     def operations(self, level: Level) -> float:
-        """Floating-point operations of one sample: four evaluations a step."""
+        """Floating-point operations of one realization: four evaluations a step, or one and the noise."""
         prepared = self._prepared(level)
-        return 4.0 * len(prepared.schedule) * prepared.discretisation.operations
+        discretisation, steps = prepared.discretisation, len(prepared.schedule)
+        if self.noise is None:
+            return 4.0 * steps * discretisation.operations
+        return steps * (discretisation.operations + discretisation.noise_operations)
 
     def path(self, level: Level) -> tuple[PathPart, ...]:
-        """Space, quadrature and time part of a level's error."""
-        parts = split_path(self.pairing, level)
-        peaks = frozenset(q.name for q in self.quantities if q.is_peak_position)
+        """Space, quadrature, time and noise part of a level's error."""
+        parts = split_path(self.pairing, level, self.noise)
+        peaks = frozenset(q.name for q in self.quantities if q.is_peak_position(self.equation.domain))
         completed = []
         for part in parts:
             if part.name == "space":
@@ -141,62 +164,107 @@ class FieldModel:
                 )
                 off = {q.name: 2.0 for q in self.quantities if q.off_the_nodes(spaces)}
                 part = replace(part, least_factor=off, peaks=peaks)
+            if self.noise is not None:
+                part = replace(part, passages=frozenset(q.name for q in self.quantities if q.is_passage))
+            if part.name == "time" and self.noise is not None:
+                sides = {q.name: q.open_side for q in self.quantities if q.open_side is not None}
+                occurrence = {
+                    q.name: q.open_occurrence for q in self.quantities if q.open_occurrence is not None
+                }
+                part = replace(part, open_side=sides, open_occurrence=occurrence)
             completed.append(part)
         return tuple(completed)
 
-    def evaluate(self, level: Level, samples: IntArray, times: Sequence[float] = ()) -> Records:
-        """Quantities, and fields at `times`, of the samples at a level (see `ForwardModel.evaluate`)."""
+    def evaluate(self, level: Level, realizations: IntArray, times: Sequence[float] = ()) -> Records:
+        """Quantities, and fields and histories at `times`, at a level (see `ForwardModel.evaluate`)."""
         prepared = self._prepared(level)
         space = prepared.discretisation.space
-        inputs = self.design.values(samples)
+        inputs = self.design.values(realizations // self._repeats)
         binding = self.equation.binding(inputs)
-        system = prepared.discretisation.system(self.equation.bind(binding), len(samples))
-        observers = [
-            q.bind(f"quantity.{q.name}", binding).observer(space, self.duration) for q in self.quantities
-        ]
-        recorder = FieldRecorder(space, times, len(samples)) if len(times) else None
+        system = prepared.discretisation.system(self.equation.bind(binding), len(realizations))
+        quantities = [q.bind(f"quantity.{q.name}", binding) for q in self.quantities]
+        recorder = FieldRecorder(space, times, len(realizations)) if len(times) else None
+        recorders = [] if recorder is None else [recorder]
         with np.errstate(all="ignore"):
-            failed_at = integrate(
-                system, prepared.schedule, observers if recorder is None else [*observers, recorder]
+            if self.noise is None:
+                observers = [q.observer(space, self.duration) for q in quantities]
+                failed_at = runge_kutta.integrate(system, prepared.schedule, [*observers, *recorders])
+                return self._records(realizations, inputs, observers, failed_at, recorder, {})
+            noise = self._noise(system, level, realizations)
+            observers = [q.observer(space, self.duration, noise) for q in quantities]
+            histories = self._histories(quantities, space, times)
+            failed_at = euler_maruyama.integrate(
+                system,
+                prepared.schedule,
+                noise.paths,
+                [*observers, *recorders, *histories.values()],
+                steps_per_base=noise.steps_per_base,
             )
-            return self._records(samples, inputs, observers, failed_at, recorder)
+            return self._records(realizations, inputs, observers, failed_at, recorder, histories)
+
+    def _noise(self, system: SemiDiscreteField, level: Level, realizations: IntArray) -> BatchNoise:
+        assert system.forcing is not None
+        bridged = any(q.bridged for q in self.quantities)
+        return BatchNoise(
+            system.forcing,
+            self.design.seed,
+            realizations // self._repeats,
+            realizations % self._repeats,
+            level.modes,
+            self.schedule(),
+            level.halvings,
+            max(level.halvings, FINEST_HALVINGS) if bridged else level.halvings,
+        )
+
+    @staticmethod
+    def _histories(
+        quantities: Sequence[Quantity], space: Space, times: Sequence[float]
+    ) -> dict[str, History]:
+        if not len(times):
+            return {}
+        found = {q.name: q.history(space, times) for q in quantities}
+        return {name: history for name, history in found.items() if history is not None}
 
     def _records(
         self,
-        samples: IntArray,
+        realizations: IntArray,
         inputs: dict[str, FloatArray],
-        observers: Sequence[Any],
+        observers: Sequence[Observer],
         failed_at: FloatArray,
         recorder: FieldRecorder | None,
+        histories: Mapping[str, History],
     ) -> Records:
         failed = np.where(np.isfinite(failed_at), FIELD_NOT_FINITE, FINITE).astype(np.int64)
         values: dict[str, FloatArray] = {}
         margins: dict[str, FloatArray] = {}
         for quantity, observer in zip(self.quantities, observers, strict=True):
             value, margin = observer.result()
-            value = np.broadcast_to(value, samples.shape).astype(np.float64)
-            occurs = np.ones(len(samples), dtype=bool)
+            value = np.broadcast_to(value, realizations.shape).astype(np.float64)
+            occurs = np.ones(len(realizations), dtype=bool)
             if margin is not None:
                 margins[quantity.name] = np.array(margin)
                 occurs = ~(margin < 0)
             wrong = occurs & ~np.isfinite(value) & (failed == FINITE)
             failed[wrong] = QUANTITY_NOT_FINITE
             values[quantity.name] = np.where(occurs, value, np.nan)
-        for array in (*values.values(), *margins.values()):
+        followed = {name: np.array(history.values) for name, history in histories.items()}
+        for array in (*values.values(), *margins.values(), *followed.values()):
             array[failed != FINITE] = np.nan
         return Records(
-            samples=np.array(samples),
+            realizations=np.array(realizations),
             inputs={path: np.array(column) for path, column in inputs.items()},
             values=values,
             margins=margins,
             failed=failed,
             failed_at=failed_at,
             fields=None if recorder is None else recorder.fields,
+            histories=followed,
         )
 
     def _prepared(self, level: Level) -> _Prepared:
         if level not in self._levels:
             self._levels[level] = _Prepared(
-                Discretisation(self.equation, level, self.pairing), self.schedule(level.halvings)
+                Discretisation(self.equation, level, self.pairing, self.noise),
+                self.schedule(level.halvings),
             )
         return self._levels[level]

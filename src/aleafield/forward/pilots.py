@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -11,12 +11,16 @@ from aleafield.arrays import FloatArray, IntArray
 from aleafield.ensemble.forward_model import ForwardModel
 from aleafield.ensemble.level import Level
 from aleafield.ensemble.records import Records
+from aleafield.forward.field_model import FieldModel
 
 PILOTS = 32
 """Samples 0 to 31 are the pilots of every study with inputs, however many samples it has."""
 TOLERANCES: Mapping[float, tuple[float, float]] = {4: (1e-5, 1e-3), 2: (1e-4, 2e-3), 1: (1e-2, 1e-2)}
 """By the expected order in time, what may change on halving the step: the field relative to the largest |u|,
 and a quantity relative to its standard deviation over the pilots.  A lower order pays more for every digit."""
+NOISY_TOLERANCES = (2e-3, 2e-2)
+"""The same for noisy fields, along the same paths and in root mean square; the field may also change by the second
+share of its standard deviation.  The law of a field is nearer than its paths: 2 % of path is less of any moment."""
 TINY = 1e-9
 """Changes below this share of the largest |u| are nothing: a quantity may be zero by symmetry."""
 MOST_HALVINGS = 8
@@ -46,34 +50,47 @@ class Demand:
     tolerance: float
 
 
-def pilot_samples(n_inputs: int) -> IntArray:
-    """Indices of the pilots, a multiple of 8; sample 0 alone, repeated, where nothing is uncertain."""
-    return np.arange(PILOTS, dtype=np.int64) if n_inputs else np.zeros(8, dtype=np.int64)
+def pilot_realizations(model: FieldModel) -> IntArray:
+    """Indices of the pilots, each with its first noise path, a multiple of 8.
+
+    Realization 0 alone, repeated, where nothing is uncertain.
+    """
+    if not model.inputs and model.noise is None:
+        return np.zeros(8, dtype=np.int64)
+    return np.arange(PILOTS, dtype=np.int64) * model.repeats
 
 
 def choose_halvings(
-    model: ForwardModel, level: Level, samples: IntArray, times: Sequence[float], demand: Demand | None
+    model: ForwardModel,
+    level: Level,
+    realizations: IntArray,
+    times: Sequence[float],
+    demand: Demand | None,
 ) -> Settled:
     """The least number of halvings of the model's step after which halving it again changes next to nothing.
 
     Judged over the whole run, since any step gets a steady state right: the field at `times` by its largest
-    change, every quantity by its root-mean-square change over the pilots.
+    change (of a noisy field by its root mean square), every quantity by its root-mean-square change over the
+    pilots.
 
     Parameters
     ----------
     model : ForwardModel
     level : Level
-    samples : pilots
+    realizations : pilots
     times : model times spread over the run
     demand : Demand or None
     """
     order = next(part.expected_order for part in model.path(level) if part.name == "time") or 1.0
-    tolerances = TOLERANCES[max(known for known in TOLERANCES if known <= max(order, 1.0))]
-    coarse = model.evaluate(_halved(level, 0), samples, times)
+    if level.modes:
+        tolerances = NOISY_TOLERANCES
+    else:
+        tolerances = TOLERANCES[max(known for known in TOLERANCES if known <= max(order, 1.0))]
+    coarse = model.evaluate(_halved(level, 0), realizations, times)
     restless = ""
     for halvings in range(MOST_HALVINGS):
-        fine = model.evaluate(_halved(level, halvings + 1), samples, times)
-        restless = _restless(coarse, fine, tolerances, demand)
+        fine = model.evaluate(_halved(level, halvings + 1), realizations, times)
+        restless = _restless(coarse, fine, tolerances, demand, noisy=level.modes > 0)
         if not restless:
             return Settled(halvings)
         coarse = fine
@@ -85,10 +102,12 @@ def choose_halvings(
 
 
 def _halved(level: Level, halvings: int) -> Level:
-    return Level(level.nodes, level.quadrature_points, halvings)
+    return replace(level, halvings=halvings)
 
 
-def _restless(coarse: Records, fine: Records, tolerances: tuple[float, float], demand: Demand | None) -> str:
+def _restless(
+    coarse: Records, fine: Records, tolerances: tuple[float, float], demand: Demand | None, *, noisy: bool
+) -> str:
     """What still changes with the step, in words; empty where nothing does."""
     of_field, of_spread = tolerances
     both = coarse.valid & fine.valid
@@ -99,14 +118,19 @@ def _restless(coarse: Records, fine: Records, tolerances: tuple[float, float], d
     assert coarse.fields is not None
     assert fine.fields is not None
     scale = float(np.abs(fine.fields[both]).max())
-    if np.abs(coarse.fields[both] - fine.fields[both]).max() > of_field * scale:
+    change = coarse.fields[both] - fine.fields[both]
+    if noisy:
+        still = max(of_field * scale, of_spread * _root_mean_square(fine.fields[both].std(axis=0)))
+        if _root_mean_square(change) > still:
+            return "the field"
+    elif np.abs(change).max() > of_field * scale:
         return "the field"
     for name, values in fine.values.items():
         difference = (coarse.values[name] - values)[both]
         difference = difference[np.isfinite(difference)]
         if len(difference) == 0:
             continue
-        size = float(np.sqrt(np.mean(difference**2)))
+        size = _root_mean_square(difference)
         spread = float(np.nanstd(values[both]))
         allowed = max(of_spread * spread, of_field * float(np.nanmax(np.abs(values[both]))), TINY * scale)
         if demand is not None and demand.quantity == name:
@@ -114,6 +138,10 @@ def _restless(coarse: Records, fine: Records, tolerances: tuple[float, float], d
         if size > allowed:
             return f"the quantity {name}"
     return ""
+
+
+def _root_mean_square(values: FloatArray) -> float:
+    return float(np.sqrt(np.mean(values**2)))
 
 
 def circular_mean(positions: FloatArray, length: float) -> float:

@@ -8,11 +8,11 @@ import numpy as np
 
 from aleafield.arrays import FloatArray
 from aleafield.spaces import Space
-from aleafield.stepping.view import StepView
+from aleafield.stepping.view import AnyStep
 
 
 class FieldRecorder:
-    """Keeps nodal values at requested times; inside a step by the cubic Hermite interpolant.
+    """Keeps nodal values at requested times; inside a step as the step interpolates its states.
 
     Parameters
     ----------
@@ -32,7 +32,7 @@ class FieldRecorder:
         while self._next < len(self._times) and self._times[self._next] <= t:
             self._store(u)
 
-    def step(self, view: StepView) -> None:
+    def step(self, view: AnyStep) -> None:
         """All requested times inside the step."""
         slack = 1e-9 * view.length
         while self._next < len(self._times) and self._times[self._next] <= view.t1 + slack:

@@ -7,9 +7,12 @@ import numpy as np
 from aleafield.arrays import FloatArray
 from aleafield.ensemble.level import Level
 from aleafield.field.equation import FieldEquation
+from aleafield.field.noise_modes import NoiseModes
+from aleafield.field.parameter import bound
 from aleafield.field.rates import StepRate
 from aleafield.field.switching import switching
 from aleafield.operators import KernelOperator, OperatorChoice, choose_operator
+from aleafield.projection.forcing import Forcing, NoiseProjection
 from aleafield.projection.integral import (
     ClosedIntegral,
     CrossingSources,
@@ -29,6 +32,8 @@ _PER_POINT = 300.0
 """Operations, in those of a shared matrix product, that the rate costs at a point (8 ns measured)."""
 _PER_UNKNOWN = 150.0
 """The same for the arithmetic of a Runge-Kutta stage on an unknown."""
+_PER_NUMBER = 700.0
+"""The same for a normal random number (20 ns measured)."""
 _ROWS = 9
 """Rows of the kernel matrix from which its largest row sum is sampled."""
 
@@ -43,6 +48,8 @@ class Discretisation:
     level : Level
     pairing : Pairing
         Of the same equation.
+    noise : NoiseModes, optional
+        The ring whose modes the noise has; how many are kept the level says.
 
     Attributes
     ----------
@@ -52,8 +59,9 @@ class Discretisation:
     test_rule : Rule
         Its points are the test points x.
     operator_choice : OperatorChoice
-    operations : float
-        Cost of one rate of change of one sample, counted in operations of a shared matrix product.
+    operations, noise_operations : float
+        Cost of one rate of change, and of the noise of one step, of one realization, counted in operations of a
+        shared matrix product.
 
     Raises
     ------
@@ -61,12 +69,19 @@ class Discretisation:
         Where the level's counts are too small.
     """
 
-    def __init__(self, equation: FieldEquation, level: Level, pairing: Pairing) -> None:
+    def __init__(
+        self, equation: FieldEquation, level: Level, pairing: Pairing, noise: NoiseModes | None = None
+    ) -> None:
         self.pairing = pairing
         self.domain = equation.domain
         self.space: Space = make_space(pairing.projector, self.domain, level.nodes)
         self.rule: Rule = pairing.source_rule(level.quadrature_points)
         self.test_rule, self.restriction = _projection(pairing, self.space, level.quadrature_points)
+        self._noise: NoiseProjection | None = None
+        if noise is not None:
+            self._noise = NoiseProjection(
+                self.space, self.test_rule.points, self.restriction, level.modes, noise.length, noise.white
+            )
         self._restarts = switching(equation).uncertain
         self._prolongation = self.space.prolongation(self.rule.points)
         kernel = typical(equation).kernel
@@ -91,6 +106,13 @@ class Discretisation:
         prolongation = {"identity": 0.0, "dense": 2.0 * n * q}.get(self._prolongation.name, _PER_UNKNOWN * q)
         return self.operator_choice.cost + prolongation + _PER_POINT * q + _PER_UNKNOWN * n
 
+    @property
+    def noise_operations(self) -> float:
+        """Cost of the noise of one step of one realization: numbers drawn, and the product with the modes."""
+        if self._noise is None:
+            return 0.0
+        return self._noise.modes * (_PER_NUMBER + 2.0 * self.space.n)
+
     def system(self, equation: FieldEquation, batch_size: int) -> SemiDiscreteField:
         """The semi-discrete field of a batch.
 
@@ -110,7 +132,13 @@ class Discretisation:
             equation.dynamics.time_constant,  # type: ignore[arg-type]
             batch_size,
             self._restarts,
+            self._forcing(equation),
         )
+
+    def _forcing(self, equation: FieldEquation) -> Forcing | None:
+        if self._noise is None or equation.noise is None:
+            return None
+        return self._noise.forcing(equation.noise, bound(equation.dynamics.time_constant))
 
     def gain(self, equation: FieldEquation) -> FloatArray | None:
         """Size of the linearised integral term: max |f'| times a sampled largest row sum of |w|; () or (S,).

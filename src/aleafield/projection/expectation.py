@@ -5,8 +5,9 @@ Verified pair by pair by tests/convergence, whose table is docs/orders.md.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
+from aleafield.field.noise import Roughness
 from aleafield.projection.smoothness import RateSmoothness
 
 RULE_ORDERS: dict[str, float | None] = {
@@ -44,6 +45,9 @@ class Expected:
         return f"{words} (observed only)" if self.observed_only else words
 
 
+_UNSCHEDULED = "the drive switches at times that are uncertain or depend on x: not on the schedule"
+_ROUGH = "the noise, and with it the field, is as rough in x as Brownian motion: "
+_WHITE = "the noise is white in space and the field no function: "
 _JUMP = Expected(1.0, "the rate jumps and is sampled at the points, which pins where it jumps to them", True)
 
 
@@ -70,6 +74,8 @@ class Ingredients:
         a quadrature point.
     drive_in_time : bool
         Whether every switch of the drive lies on the schedule.
+    noise : "smooth", "rough", "white" or None
+        How smooth the noise is in x; None where there is none.
     """
 
     projector: str
@@ -83,6 +89,7 @@ class Ingredients:
     closed: bool
     aligned: bool
     drive_in_time: bool
+    noise: Roughness | None = None
 
     @property
     def spectral(self) -> bool:
@@ -91,9 +98,21 @@ class Ingredients:
 
 
 def space_order(of: Ingredients) -> Expected:
-    """Order of the error that the projector makes, the quadrature points held."""
+    """Order of the error that the projector makes, the quadrature points held.
+
+    A field is as smooth in x as its noise.  Smooth noise changes no order.  Rough noise has paths like Brownian
+    motion: a point between nodes is missed by h^(1/2), an inner product by h, in root mean square; but all levels
+    keep the same finite number of modes, about as many as the run has unknowns, so that no order is claimed.
+    Of white noise only functionals of L2 exist; a linear functional g of the projection of W is that of W at
+    P_n g, so that it converges, in root mean square, as the projection of g does.
+    """
     if of.rate == "jump":
         return _JUMP
+    if of.noise == "rough":
+        return Expected(0.5, _ROUGH + "h^(1/2) at a point, h in integrals", observed_only=True)
+    if of.noise == "white":
+        order = None if of.spectral and of.projector != "chebyshev" else 2.0
+        return Expected(order, _WHITE + "smooth functionals of it converge as their projections do", True)
     step = of.rate == "step"
     if not of.data_smooth:
         reason = "the drive or the initial state has a kink or a jump: "
@@ -112,9 +131,21 @@ def space_order(of: Ingredients) -> Expected:
 
 
 def quadrature_order(of: Ingredients) -> Expected:
-    """Order of the error of the integrals, the projector held."""
+    """Order of the error of the integrals, the projector held.
+
+    Under rough noise f(u) is as rough as Brownian motion, whose integral every rule misses by h in root mean
+    square.  Under white noise, with a linear rate, the rules meet the product of the kernel and rough elements.
+    """
     if of.rate == "jump":
         return _JUMP
+    if of.noise == "rough":
+        return Expected(1.0, _ROUGH + "no rule is of a higher order", observed_only=True)
+    if of.noise == "white":
+        return replace(_deterministic_quadrature_order(of), observed_only=True)
+    return _deterministic_quadrature_order(of)
+
+
+def _deterministic_quadrature_order(of: Ingredients) -> Expected:
     if of.rate == "step" and of.closed and not of.spectral:
         return _closed_order(of)
     if of.rate == "step":
@@ -156,13 +187,28 @@ def _kink_at_panel_ends(of: Ingredients) -> bool:
 
 
 def time_order(of: Ingredients) -> Expected:
-    """Order of the classical Runge-Kutta method over the whole run."""
+    """Order over the whole run: of the classical Runge-Kutta method, under noise of Euler-Maruyama.
+
+    References
+    ----------
+    Kloeden and Platen 1992, "Numerical Solution of Stochastic Differential Equations", section 10.3: additive
+    noise and a drift with two derivatives, strong order 1 (from memory).
+    """
+    if of.noise is not None:
+        return _order_under_noise(of)
     if not of.drive_in_time:
-        return Expected(
-            1.0, "the drive switches at times that are uncertain or depend on x: not on the schedule"
-        )
+        return Expected(1.0, _UNSCHEDULED)
     if of.rate == "jump":
         return _JUMP
     if of.rate != "smooth":
         return Expected(2.0, "the rate is not differentiable: nor is the right-hand side in time", True)
     return Expected(4.0, "classical Runge-Kutta")
+
+
+def _order_under_noise(of: Ingredients) -> Expected:
+    if of.rate == "jump":
+        return _JUMP
+    if of.rate != "smooth":
+        return Expected(1.0, "Euler-Maruyama for a rate that is not differentiable", observed_only=True)
+    reason = "Euler-Maruyama, additive noise: strong order 1"
+    return Expected(1.0, reason if of.drive_in_time else f"{reason}; {_UNSCHEDULED}")

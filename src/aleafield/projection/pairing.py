@@ -161,6 +161,7 @@ def resolve(scheme: Scheme, equation: FieldEquation) -> Pairing:
         closed=kernel_use == "closed",
         aligned=aligned,
         drive_in_time=not switching(equation).uncertain,
+        noise=None if equation.noise is None else equation.noise.correlation.roughness,
     )
     return Pairing(
         projector=scheme.projector,
@@ -291,6 +292,17 @@ def _warnings(of: Ingredients, equation: FieldEquation) -> list[str]:
                 if of.spectral
                 else "order 2 only where it lies on a node of every level"
             )
+        )
+    if of.noise == "rough":
+        found.append(
+            "noise: with an exponential correlation the field is as rough in x as Brownian motion: space and "
+            "quadrature converge slowly, at orders that are only observed"
+            + (", and a spectral projector gains nothing" if of.spectral else "")
+        )
+    if of.noise == "white":
+        found.append(
+            "noise: white in space, so that the field is not a function: its variance at a point grows like 1 / h, "
+            "and only its integrals against smooth functions converge"
         )
     if not of.drive_in_time:
         found.append(

@@ -137,6 +137,10 @@ class MassRestriction(Restriction):
             term = np.take(values, index, axis=1)
             term *= weight
             load += term
+        return self.of_load(load)
+
+    def of_load(self, load: FloatArray) -> FloatArray:
+        """Unknowns (S, n) from inner products with the hat functions (S, n), which are overwritten."""
         unknowns = self._solve(load)
         if self._correction is not None:
             ends = unknowns[:, :1] * self._ends[0] + unknowns[:, -1:] * self._ends[1]

@@ -1,4 +1,4 @@
-"""The semi-discrete field u_n' = P_n N(u_n): everything a time stepper may know of it."""
+"""The semi-discrete field u_n' = P_n N(u_n), noise included: everything a time stepper may know of it."""
 
 from __future__ import annotations
 
@@ -7,6 +7,7 @@ import numpy as np
 from aleafield.arrays import FloatArray
 from aleafield.field.formula_term import FormulaTerm
 from aleafield.field.parameter import Bound, per_sample
+from aleafield.projection.forcing import Forcing
 from aleafield.projection.integral import IntegralTerm
 from aleafield.projection.restriction import Restriction
 from aleafield.spaces import Space
@@ -43,7 +44,7 @@ class ProjectedTerm:
 
 
 class SemiDiscreteField:
-    """tau u' = -u + P_n [ integral of w f(u) + drive ] for a batch of samples.
+    """tau du = (-u + P_n [ integral of w f(u) + drive ]) dt + sigma P_n dW for a batch of samples.
 
     Parameters
     ----------
@@ -57,6 +58,8 @@ class SemiDiscreteField:
     restarts : bool
         Whether the drive may change from step to step at times that no schedule holds, so that a derivative
         at the end of a step must not be taken for that at the start of the next.
+    forcing : Forcing, optional
+        The noise; None where there is none.
     """
 
     def __init__(
@@ -68,9 +71,11 @@ class SemiDiscreteField:
         time_constant: Bound,
         batch_size: int,
         restarts: bool,
+        forcing: Forcing | None = None,
     ) -> None:
         self.space = space
         self.restarts = restarts
+        self.forcing = forcing
         self._integral = integral
         self._drive = drive
         self._initial = initial
@@ -98,3 +103,8 @@ class SemiDiscreteField:
         change -= u
         change *= self._speed
         return change
+
+    def noise(self, increments: FloatArray) -> FloatArray:
+        """(sigma / tau) P_n dW, increments of the unknowns (S, n) from those of the modes (S, m)."""
+        assert self.forcing is not None, "a field without noise"
+        return self.forcing.apply(increments)

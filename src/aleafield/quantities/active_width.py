@@ -5,11 +5,12 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 from aleafield.arrays import FloatArray
+from aleafield.ensemble.level import Side
 from aleafield.field.parameter import Parameter, number
 from aleafield.quantities.crossings import level_crossings
 from aleafield.quantities.in_time import Reading
 from aleafield.quantities.margins import margin_above
-from aleafield.quantities.quantity import At, When
+from aleafield.quantities.quantity import At, Over, When
 from aleafield.quantities.timed import TimedQuantity
 from aleafield.spaces import Space
 from aleafield.units import ACTIVITY, LENGTH
@@ -38,6 +39,11 @@ class ActiveWidth(TimedQuantity):
     name: str
     level: Parameter = number(ACTIVITY)
     when: When = At()
+
+    @property
+    def open_occurrence(self) -> Side | None:
+        """Over a window it may occur between the ends of steps too."""
+        return "above" if isinstance(self.when, Over) else None
 
     def reading(self, space: Space) -> Reading:
         """Width and largest value less level."""

@@ -3,36 +3,65 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from dataclasses import dataclass
 
 import numpy as np
 
 from aleafield.arrays import FloatArray
-from aleafield.quantities.timed import WholeFieldQuantity
+from aleafield.quantities.quantity import At, When
+from aleafield.quantities.timed import LinearQuantity, WholeFieldQuantity
 from aleafield.spaces import Space
 from aleafield.units import ACTIVITY
 
 
-class Integral(WholeFieldQuantity):
-    """Integral of u over the domain."""
+@dataclass(frozen=True)
+class Integral(LinearQuantity):
+    """Integral of u over the domain.
+
+    Parameters
+    ----------
+    name : str
+    when : At or Over
+    """
 
     measure = "integral"
     dimension = (1, 1, 0)
+    name: str
+    when: When = At()
 
-    def number(self, space: Space) -> Callable[[FloatArray], FloatArray]:
+    @property
+    def defined_for_white_noise(self) -> bool:
+        """It is: its variance does not depend on the mesh."""
+        return True
+
+    def functional(self, space: Space) -> FloatArray:
         """The integral of the element."""
-        return lambda u: (u * space.integral_weights).sum(axis=-1)
+        return space.integral_weights
 
 
-class Mean(WholeFieldQuantity):
-    """Integral of u divided by the size of the domain."""
+@dataclass(frozen=True)
+class Mean(LinearQuantity):
+    """Integral of u divided by the size of the domain.
+
+    Parameters
+    ----------
+    name : str
+    when : At or Over
+    """
 
     measure = "mean"
     dimension = ACTIVITY
+    name: str
+    when: When = At()
 
-    def number(self, space: Space) -> Callable[[FloatArray], FloatArray]:
+    @property
+    def defined_for_white_noise(self) -> bool:
+        """It is: its variance does not depend on the mesh."""
+        return True
+
+    def functional(self, space: Space) -> FloatArray:
         """The mean of the element."""
-        weights = space.integral_weights / space.domain.length
-        return lambda u: (u * weights).sum(axis=-1)
+        return space.integral_weights / space.domain.length
 
 
 class Norm(WholeFieldQuantity):

@@ -73,11 +73,6 @@ class Cubic:
         turned = self(self.turning_points()).max(axis=0)
         return np.asarray(np.maximum(np.maximum(self.start, self.end), turned))
 
-    def minimum(self) -> FloatArray:
-        """Smallest value in the step, in closed form."""
-        turned = self(self.turning_points()).min(axis=0)
-        return np.asarray(np.minimum(np.minimum(self.start, self.end), turned))
-
     def first_reach(self, level: FloatArray) -> FloatArray:
         """The first theta at which p >= level, for cubics that start below it and have maximum() >= level.
 

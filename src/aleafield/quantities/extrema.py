@@ -8,6 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from aleafield.arrays import FloatArray
+from aleafield.geometry import Domain
 from aleafield.quantities.in_time import Reading, plain
 from aleafield.quantities.peaks import peak
 from aleafield.quantities.quantity import At, When
@@ -22,8 +23,7 @@ class Maximum(WholeFieldQuantity):
     measure = "maximum"
     dimension = ACTIVITY
 
-    @property
-    def takes_extremum(self) -> bool:
+    def takes_extremum(self, domain: Domain) -> bool:
         """It looks for the largest value."""
         return True
 
@@ -38,8 +38,7 @@ class Minimum(WholeFieldQuantity):
     measure = "minimum"
     dimension = ACTIVITY
 
-    @property
-    def takes_extremum(self) -> bool:
+    def takes_extremum(self, domain: Domain) -> bool:
         """It looks for the smallest value."""
         return True
 
@@ -64,14 +63,16 @@ class PeakPosition(TimedQuantity):
 
     measure = "peak position"
     dimension = LENGTH
-    is_peak_position = True
     name: str
     reference: float | None = None
     when: When = At()
 
-    @property
-    def takes_extremum(self) -> bool:
+    def takes_extremum(self, domain: Domain) -> bool:
         """It looks for the largest value."""
+        return True
+
+    def is_peak_position(self, domain: Domain) -> bool:
+        """It is one on every domain."""
         return True
 
     def reading(self, space: Space) -> Reading:

@@ -13,9 +13,10 @@ from aleafield.errors import InputError
 from aleafield.field.formula_term import FormulaTerm
 from aleafield.geometry import Domain, Interval
 from aleafield.quadrature import composite_gauss, gauss_legendre, periodic_trapezoid
+from aleafield.quantities.functional import LinearFunctional
 from aleafield.quantities.in_time import Reading
 from aleafield.quantities.peaks import parabolic_peak
-from aleafield.quantities.point import PointEvaluation, off_the_nodes, refuse_outside
+from aleafield.quantities.point import off_the_nodes, point_evaluation, refuse_outside
 from aleafield.quantities.quantity import At, When
 from aleafield.quantities.timed import TimedQuantity
 from aleafield.spaces import PiecewiseLinear, Space
@@ -68,10 +69,14 @@ class FormulaQuantity(TimedQuantity):
     at: float | None = None
     when: When = At()
 
-    @property
-    def takes_extremum(self) -> bool:
+    def takes_extremum(self, domain: Domain) -> bool:
         """Whether the formula is reduced by its maximum."""
         return self.in_space == "maximum"
+
+    @property
+    def defined_for_white_noise(self) -> bool:
+        """Whether it is linear in u, up to a constant, and integrated over space."""
+        return self.in_space in ("mean", "integral") and self.term.degree_in("u") <= 1
 
     def __post_init__(self) -> None:
         if self.in_space not in get_args(InSpace):
@@ -105,7 +110,8 @@ class FormulaQuantity(TimedQuantity):
 
     def _reduction(self, space: Space) -> Callable[[FloatArray, Pointwise], FloatArray]:
         if self.at is not None:
-            evaluate, point = PointEvaluation(space, self.at), np.array([self.at])
+            evaluate = LinearFunctional(point_evaluation(space, self.at))
+            point = np.array([self.at])
             return lambda u, formula: formula(evaluate(u)[:, None], point)[:, 0]
         if self.in_space == "maximum":
             smooth = not (self.term.kinks_in("u") or self.term.kinks_in("x"))

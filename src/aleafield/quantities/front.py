@@ -8,24 +8,26 @@ from typing import Literal, get_args
 import numpy as np
 
 from aleafield.arrays import FloatArray
+from aleafield.ensemble.level import Side
 from aleafield.errors import InputError
 from aleafield.field.parameter import Parameter, number
 from aleafield.geometry import Domain
 from aleafield.quantities.crossings import level_crossings
 from aleafield.quantities.in_time import Clock, Reading, Snapshot
 from aleafield.quantities.margins import margin_above
-from aleafield.quantities.quantity import At, Observer, Quantity, When
+from aleafield.quantities.noisy import NoisyPaths
+from aleafield.quantities.quantity import At, Observer, Over, Quantity, When
 from aleafield.quantities.timed import TimedQuantity
 from aleafield.spaces import Space
-from aleafield.stepping.view import StepView
+from aleafield.stepping.view import AnyStep
 from aleafield.units import ACTIVITY, LENGTH, SPEED
 
-Side = Literal["right", "left"]
+FrontSide = Literal["right", "left"]
 
 
-def refuse_no_front(quantity: Quantity, side: Side, domain: Domain) -> None:
+def refuse_no_front(quantity: Quantity, side: FrontSide, domain: Domain) -> None:
     """Raise InputError on a ring, where no crossing is the outermost, and for a side that is none."""
-    if side not in get_args(Side):
+    if side not in get_args(FrontSide):
         raise InputError(quantity.key("side"), f"{side!r}", "'right' or 'left' is needed")
     if domain.periodic:
         raise InputError(
@@ -35,7 +37,7 @@ def refuse_no_front(quantity: Quantity, side: Side, domain: Domain) -> None:
         )
 
 
-def front_reading(space: Space, level: float | FloatArray, side: Side) -> Reading:
+def front_reading(space: Space, level: float | FloatArray, side: FrontSide) -> Reading:
     """Position of the front and its margin, min(largest value - level, level - value at the side's end)."""
 
     def front(u: FloatArray, t: float, inside: float | None) -> tuple[FloatArray, FloatArray]:
@@ -55,8 +57,8 @@ class FrontPosition(TimedQuantity):
     "left").
 
     It occurs where the field exceeds the level somewhere and does not at that side's end of the interval.
-    Over a window it occurs if it does at all evaluated times: both ends, a third and two thirds of every
-    step.
+    Over a window it occurs if it does at all evaluated times: both ends of every step, and without noise a third
+    and two thirds of it.
 
     Parameters
     ----------
@@ -72,12 +74,17 @@ class FrontPosition(TimedQuantity):
     may_not_occur = True
     name: str
     level: Parameter = number(ACTIVITY)
-    side: Side = "right"
+    side: FrontSide = "right"
     when: When = At()
 
     def refuse_domain(self, domain: Domain) -> None:
         """Raise InputError on a ring."""
         refuse_no_front(self, self.side, domain)
+
+    @property
+    def open_occurrence(self) -> Side | None:
+        """Over a window it may be gone between the ends of steps."""
+        return "below" if isinstance(self.when, Over) else None
 
     def reading(self, space: Space) -> Reading:
         """Position and margin of the front."""
@@ -104,7 +111,7 @@ class FrontSpeed(Quantity):
     name: str
     level: Parameter = number(ACTIVITY)
     between: tuple[float, float] = (0.0, 1.0)
-    side: Side = "right"
+    side: FrontSide = "right"
 
     def refuse_domain(self, domain: Domain) -> None:
         """Raise InputError on a ring."""
@@ -114,7 +121,7 @@ class FrontSpeed(Quantity):
         """Both times; InputError where they do not ascend or lie outside the run."""
         return self.ascending("between", self.between, duration)
 
-    def observer(self, space: Space, duration: float) -> Observer:
+    def observer(self, space: Space, duration: float, noise: NoisyPaths | None = None) -> Observer:
         """Two snapshots of the position."""
         self.refuse_domain(space.domain)
         reading = front_reading(space, self.level, self.side)  # type: ignore[arg-type]
@@ -142,7 +149,7 @@ class SpeedObserver:
         self._first.start(t, u)
         self._last.start(t, u)
 
-    def step(self, view: StepView) -> None:
+    def step(self, view: AnyStep) -> None:
         """Show both the step."""
         self._first.step(view)
         self._last.step(view)

@@ -11,7 +11,7 @@ import numpy as np
 from aleafield.arrays import FloatArray
 from aleafield.quantities.cubic import Cubic
 from aleafield.quantities.quantity import At, Observer, Over
-from aleafield.stepping.view import StepView
+from aleafield.stepping.view import AnyStep, NoisyStep
 
 Take = Callable[[FloatArray, float, float | None], tuple[FloatArray, FloatArray | None]]
 """(u (S, n) finite, time, middle of the step or None) -> values (S,), margins (S,) or None."""
@@ -89,6 +89,10 @@ class Clock:
         """Whether t is `other` or later."""
         return t >= other - self._tolerance
 
+    def within(self, view: AnyStep, window: Over) -> bool:
+        """Whether a step lies in a window."""
+        return self.not_before(view.t0, window.start) and self.not_before(window.end, view.t1)
+
 
 class Snapshot:
     """Observer of a reading at one time of the schedule.
@@ -108,7 +112,7 @@ class Snapshot:
         """Take the reading of the initial state if it is its time."""
         self._look(t, u)
 
-    def step(self, view: StepView) -> None:
+    def step(self, view: AnyStep) -> None:
         """Take the reading at the end of the step if it is its time."""
         self._look(view.t1, view.u1)
 
@@ -129,7 +133,8 @@ class Window:
 
     In each step the reading is taken at both ends and at a third and two thirds of the cubic Hermite state.
     The cubic through the four numbers stands for it: for a linear functional of the state this is exactly its
-    own cubic Hermite interpolant, of order 4.  Maximum and minimum are those of the cubic in closed form, the
+    own cubic Hermite interpolant, of order 4.  Of a noisy path the reading is taken at both ends, and the straight
+    line between them stands for it.  Maximum and minimum are those of the cubic or the line in closed form, the
     mean is its exact integral.  Only running numbers are kept.
 
     Parameters
@@ -148,17 +153,16 @@ class Window:
     def start(self, t: float, u: FloatArray) -> None:
         """Nothing: the first step shows its initial state too."""
 
-    def step(self, view: StepView) -> None:
+    def step(self, view: AnyStep) -> None:
         """Reduce over the step if it lies in the window."""
-        window, clock = self._window, self._clock
-        if not (clock.not_before(view.t0, window.start) and clock.not_before(window.end, view.t1)):
+        if not self._clock.within(view, self._window):
             return
         first = self._end
         middle = view.t0 + 0.5 * view.length
         if first is None or self._reading.jumps:
             first = self._reading.of_state(view.u0, view.t0, middle)
         readings = [first]
-        for theta in (1 / 3, 2 / 3, 1.0):
+        for theta in (1.0,) if isinstance(view, NoisyStep) else (1 / 3, 2 / 3, 1.0):
             t = view.t0 + theta * view.length
             with np.errstate(all="ignore"):
                 state = view.state(theta)
@@ -176,15 +180,15 @@ class Window:
         return np.asarray(values - period * np.rint((values - before) / period))
 
     def _reduce(self, values: list[FloatArray], length: float) -> None:
-        before, inside = self._value, Cubic.through(*values)
+        before = self._value
         if self._window.reduce == "mean":
-            part = inside.mean() * (length / (self._window.end - self._window.start))
+            part = _mean(values) * (length / (self._window.end - self._window.start))
             self._value = part if before is None else before + part
         elif self._window.reduce == "maximum":
-            largest = np.maximum.reduce([inside.maximum(), *values])
+            largest = _largest(values)
             self._value = largest if before is None else np.maximum(before, largest)
         else:
-            smallest = np.minimum.reduce([inside.minimum(), *values])
+            smallest = -_largest([-value for value in values])
             self._value = smallest if before is None else np.minimum(before, smallest)
 
     def _reduce_margin(self, margins: list[FloatArray]) -> None:
@@ -192,7 +196,7 @@ class Window:
             return
         before = self._margin
         if self._reading.occurs == "once":
-            largest = np.maximum.reduce([Cubic.through(*margins).maximum(), *margins])
+            largest = _largest(margins)
             self._margin = largest if before is None else np.maximum(before, largest)
         else:
             smallest = np.minimum.reduce(margins)
@@ -205,6 +209,17 @@ class Window:
         values = np.maximum(self._value, self._reading.least)
         margin = self._margin
         return values if margin is None else np.where(margin >= 0, values, np.nan), margin
+
+
+def _mean(values: list[FloatArray]) -> FloatArray:
+    """The integral of the cubic through four values of a step, or of the line through two, over its length."""
+    return Cubic.through(*values).mean() if len(values) == 4 else 0.5 * (values[0] + values[1])
+
+
+def _largest(values: list[FloatArray]) -> FloatArray:
+    """Largest value of the cubic through four values of a step, or of the line through two."""
+    inside = [Cubic.through(*values).maximum()] if len(values) == 4 else []
+    return np.asarray(np.maximum.reduce([*inside, *values]))
 
 
 def observe(when: At | Over, reading: Reading, duration: float) -> Observer:

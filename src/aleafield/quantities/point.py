@@ -15,24 +15,9 @@ _AT_A_NODE = 1e-9
 """A point nearer to a node than this share of an element is the node."""
 
 
-class PointEvaluation:
-    """The linear functional u -> u(at), with the same bits for a row in every batch.
-
-    Parameters
-    ----------
-    space : Space
-    at : float
-        Coordinate in the domain.
-    """
-
-    def __init__(self, space: Space, at: float) -> None:
-        row = space.evaluation_matrix(np.array([at]))[0]
-        self._places = np.flatnonzero(row)
-        self._weights = row[self._places]
-
-    def __call__(self, u: FloatArray) -> FloatArray:
-        """Values (S,) of the states u (S, n)."""
-        return np.asarray((np.take(u, self._places, axis=1) * self._weights).sum(axis=-1))
+def point_evaluation(space: Space, at: float) -> FloatArray:
+    """Weights (n,) of the functional u -> u(at) for elements of the space, at a coordinate of the domain."""
+    return np.asarray(space.evaluation_matrix(np.array([at]))[0])
 
 
 def refuse_outside(at: float, domain: Domain, key: str) -> None:

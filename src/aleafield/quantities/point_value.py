@@ -4,17 +4,17 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
+from aleafield.arrays import FloatArray
 from aleafield.geometry import Domain
-from aleafield.quantities.in_time import Reading, plain
-from aleafield.quantities.point import PointEvaluation, off_the_nodes, refuse_outside
+from aleafield.quantities.point import off_the_nodes, point_evaluation, refuse_outside
 from aleafield.quantities.quantity import At, When
-from aleafield.quantities.timed import TimedQuantity
+from aleafield.quantities.timed import LinearQuantity
 from aleafield.spaces import Space
 from aleafield.units import ACTIVITY
 
 
 @dataclass(frozen=True)
-class Value(TimedQuantity):
+class Value(LinearQuantity):
     """u(at).
 
     Parameters
@@ -35,9 +35,9 @@ class Value(TimedQuantity):
         """Raise InputError where the point lies outside."""
         refuse_outside(self.at, domain, self.key("at"))
 
-    def reading(self, space: Space) -> Reading:
+    def functional(self, space: Space) -> FloatArray:
         """The element's value at the point."""
-        return plain(PointEvaluation(space, self.at))
+        return point_evaluation(space, self.at)
 
     def off_the_nodes(self, spaces: tuple[Space, ...]) -> bool:
         """Whether the point is not a node of each piecewise-linear space."""

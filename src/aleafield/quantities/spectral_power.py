@@ -33,6 +33,11 @@ class SpectralPower(TimedQuantity):
     wavenumber: int
     when: When = At()
 
+    @property
+    def defined_for_white_noise(self) -> bool:
+        """It is: the variance of one mode does not depend on the mesh."""
+        return True
+
     def refuse_domain(self, domain: Domain) -> None:
         """Raise InputError on an interval."""
         if not domain.periodic:

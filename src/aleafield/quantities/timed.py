@@ -3,14 +3,22 @@
 from __future__ import annotations
 
 from abc import abstractmethod
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from typing import get_args
 
+import numpy as np
+
 from aleafield.arrays import FloatArray
+from aleafield.ensemble.level import Side
 from aleafield.errors import InputError
-from aleafield.quantities.in_time import Reading, observe, plain
-from aleafield.quantities.quantity import At, Observer, Quantity, Reduction, When
+from aleafield.quantities.bridge import BridgedFunctional
+from aleafield.quantities.bridged_window import BridgedWindow
+from aleafield.quantities.functional import LinearFunctional
+from aleafield.quantities.history import History
+from aleafield.quantities.in_time import Clock, Reading, observe, plain
+from aleafield.quantities.noisy import NoisyPaths
+from aleafield.quantities.quantity import At, Observer, Over, Quantity, Reduction, When
 from aleafield.spaces import Space
 
 
@@ -47,10 +55,69 @@ class TimedQuantity(Quantity):
         ends = (self.when.start, self.when.end)
         return self.ascending("over", ends, duration)
 
-    def observer(self, space: Space, duration: float) -> Observer:
+    @property
+    def _extremum(self) -> Side | None:
+        """The side on which an extreme over the window lies; None for a mean, and at one time."""
+        if not isinstance(self.when, Over):
+            return None
+        sides: dict[str, Side | None] = {"maximum": "above", "minimum": "below", "mean": None}
+        return sides[self.when.reduce]
+
+    @property
+    def open_side(self) -> Side | None:
+        """Over a window the side of the extreme."""
+        return self._extremum
+
+    def observer(self, space: Space, duration: float, noise: NoisyPaths | None = None) -> Observer:
         """A snapshot or a window over the reading."""
         self.refuse_domain(space.domain)
         return observe(self.when, self.reading(space), duration)
+
+    def history(self, space: Space, times: Sequence[float]) -> History | None:
+        """The reading at several times, for a quantity at one time."""
+        if isinstance(self.when, Over):
+            return None
+        reading = self.reading(space)
+
+        def number(u: FloatArray, t: float) -> FloatArray:
+            values, margin = reading.of_state(u, t)
+            return values if margin is None else np.where(margin >= 0, values, np.nan)
+
+        return History(number, times)
+
+
+class LinearQuantity(TimedQuantity):
+    """A linear functional of the state; a concrete class adds `functional`.
+
+    Under noise its largest and smallest values over a window are those of Brownian bridges inside the steps.
+    """
+
+    @abstractmethod
+    def functional(self, space: Space) -> FloatArray:
+        """Weights (n,) of the unknowns of `space`."""
+
+    def reading(self, space: Space) -> Reading:
+        """The functional as it stands."""
+        return plain(LinearFunctional(self.functional(space)))
+
+    @property
+    def bridged(self) -> bool:
+        """For an extreme over a window."""
+        return self._extremum is not None
+
+    @property
+    def open_side(self) -> Side | None:
+        """None: extremes are exact in law."""
+        return None
+
+    def observer(self, space: Space, duration: float, noise: NoisyPaths | None = None) -> Observer:
+        """As for any other reading; bridged for an extreme over a window under noise."""
+        if noise is None or not self.bridged:
+            return super().observer(space, duration)
+        assert isinstance(self.when, Over)
+        self.refuse_domain(space.domain)
+        inside = BridgedFunctional(LinearFunctional(self.functional(space)), noise, self.name)
+        return BridgedWindow(self.when, inside, Clock(duration))
 
 
 @dataclass(frozen=True)

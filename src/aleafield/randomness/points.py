@@ -13,7 +13,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from aleafield.arrays import FloatArray, IntArray
-from aleafield.randomness.streams import bit_generator, generator
+from aleafield.randomness.streams import bit_generator, generator, uniforms
 
 if TYPE_CHECKING:
     from scipy.stats.qmc import Sobol
@@ -49,8 +49,7 @@ class PlainPoints(Points):
             source = bit_generator(self._seed, "parameter samples")
             source.advance(first * counters)
             raw = source.random_raw(count * counters * 4).reshape(count, counters * 4)[:, : self._columns]
-            # The middle of one of 2^52 cells: 0 and 1 never occur.
-            points[rows] = (((raw >> np.uint64(12)).astype(np.float64) + 0.5) * 2.0**-52)[offsets]
+            points[rows] = uniforms(raw)[offsets]
         return points
 
 

@@ -35,6 +35,29 @@ class FieldRecord:
 
 
 @dataclass(frozen=True)
+class HistoryRecord:
+    """A quantity of a noisy field, followed in time.
+
+    Attributes
+    ----------
+    followed : what is shown, as in "displacement since t = 0"; empty where it is the quantity itself
+    units : of what is shown
+    t : float array (K,), increasing, units of time
+    fan : float array (5, K), quantiles 0.05, 0.25, 0.5, 0.75 and 0.95 over the realizations; NaN at a time at
+        which the quantity occurs in none
+    paths : float array (P, K), P <= 6, single realizations; NaN where the quantity does not occur
+    realizations : how many realizations the fan is taken from
+    """
+
+    followed: str
+    units: str
+    t: FloatArray
+    fan: FloatArray
+    paths: FloatArray
+    realizations: int
+
+
+@dataclass(frozen=True)
 class ModelText:
     """The field in the words of its study, and how its integral and its time derivative were treated.
 
@@ -46,6 +69,9 @@ class ModelText:
     time_constant, duration : with units
     integrals : a clause, as in "integrals were taken by the trapezoid rule with 257 points"
     steps : number of steps of the run's schedule
+    noise : as in "gaussian (strength 0.02 mV, correlation length 0.5 mm), 65 modes of a ring of 40 mm"; None
+        without noise
+    bridged : quantities that see extremes or passages of the noisy path inside its steps
     """
 
     domain: str
@@ -57,6 +83,8 @@ class ModelText:
     duration: str
     integrals: str
     steps: int
+    noise: str | None = None
+    bridged: tuple[str, ...] = ()
 
 
 @dataclass(frozen=True)
@@ -91,6 +119,7 @@ class ReportData:
     values : by quantity, float array (S',) of the stored samples or the first of them; NaN where the quantity
         does not occur or the sample failed
     fields : FieldRecord, or None where mean or spread of the field is not finite
+    histories : HistoryRecord by quantity, for the quantities of a noisy field that are followed in time
     """
 
     title: str
@@ -103,3 +132,4 @@ class ReportData:
     measures: Mapping[str, str] = field(default_factory=dict)
     values: Mapping[str, FloatArray] = field(default_factory=dict)
     fields: FieldRecord | None = None
+    histories: Mapping[str, HistoryRecord] = field(default_factory=dict)

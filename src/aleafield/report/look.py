@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from aleafield.report.palette import css_variables
-from aleafield.report.parts import PARTS
+from aleafield.report.parts import CAUSES, PARTS
 from aleafield.report.svg import STYLE, part_style
 
 _PAGE = """
@@ -109,4 +109,5 @@ SCRIPT = """
 
 def style_sheet() -> str:
     """All rules of the page, those of its drawings included."""
-    return css_variables() + STYLE + part_style([part.style for part in PARTS]) + _PAGE
+    colours = part_style([*(part.style for part in PARTS), *(cause.key for cause in CAUSES)])
+    return css_variables() + STYLE + colours + _PAGE

@@ -5,6 +5,7 @@ from __future__ import annotations
 from aleafield.report.data import Summary
 from aleafield.report.markup import element
 from aleafield.report.tables import answers
+from aleafield.report.verdict import failed_text
 
 
 def html_table(summary: Summary) -> str:
@@ -15,6 +16,6 @@ def html_table(summary: Summary) -> str:
     summary : as in summary.json
     """
     failed = summary["failed"]["count"]
-    notes = [f"{failed} samples failed and are left out."] if failed else []
+    notes = [f"{failed_text(summary)}: left out of all statistics."] if failed else []
     notes.extend(summary["warnings"])
     return element("div", answers(summary), *(element("p", note) for note in notes))

@@ -7,18 +7,21 @@ from collections.abc import Sequence
 from aleafield.report.caution import CAUTION
 from aleafield.report.data import ReportData
 from aleafield.report.figures import Figure
-from aleafield.report.findings import QuantityFindings, quantity_findings
+from aleafield.report.findings import QuantityFindings, field_findings, quantity_findings
 from aleafield.report.look import SCRIPT, style_sheet
 from aleafield.report.markup import Content, Markup, element, joined
 from aleafield.report.methods import methods
+from aleafield.report.parting import consequence, parting
 from aleafield.report.rounding import DASH, percent, short, typographic
 from aleafield.report.tables import (
     chance_table,
     error_table,
     failure_table,
+    field_table,
     input_table,
     order_table,
     spread_table,
+    variance_table,
 )
 from aleafield.report.verdict import (
     METHODS,
@@ -26,9 +29,12 @@ from aleafield.report.verdict import (
     cause,
     confidence_text,
     exceedance,
+    failed_text,
     interval_text,
     occurrence,
+    realizations_text,
     remedies,
+    runs_name,
     spread,
 )
 
@@ -36,7 +42,9 @@ SECTIONS: tuple[tuple[str, str], ...] = (
     ("answers", "The answers"),
     ("spread", "How uncertain"),
     ("chances", "Chance of exceeding"),
+    ("noise", "Noise or ignorance"),
     ("error", "Where the error comes from"),
+    ("time", "Over time"),
     ("field", "The field"),
     ("distributions", "Distributions"),
     ("inputs", "Inputs"),
@@ -44,7 +52,7 @@ SECTIONS: tuple[tuple[str, str], ...] = (
     ("methods", "Methods"),
     ("study", "The study"),
 )
-"""Identifier and heading of every section, in order."""
+"""Identifier and heading of every section, in order; "noise" and "time" stand for noisy fields only."""
 
 
 def page(data: ReportData, figures: Sequence[Figure]) -> str:
@@ -61,15 +69,18 @@ def page(data: ReportData, figures: Sequence[Figure]) -> str:
         "spread": _spread(data, findings),
         "chances": _chances(data, findings),
         "error": _error(data, figures, findings),
-        "field": _field(figures),
+        "field": _field(data, figures),
         "distributions": _distributions(figures),
         "inputs": _inputs(data),
         "failures": _failures(data),
         "methods": _methods(data),
         "study": element("pre", element("code", data.study_text)),
     }
+    if data.model.noise is not None:
+        contents |= {"noise": _noise(data, figures, findings), "time": _over_time(figures)}
+    present = [(name, heading) for name, heading in SECTIONS if name in contents]
     sections = (
-        element("section", element("h2", heading), contents[name], id=name) for name, heading in SECTIONS
+        element("section", element("h2", heading), contents[name], id=name) for name, heading in present
     )
     caution = element("aside", element("p", element("b", "Caution")), element("p", CAUTION), class_="caution")
     head = element(
@@ -80,13 +91,13 @@ def page(data: ReportData, figures: Sequence[Figure]) -> str:
         element("style", Markup(style_sheet())),
     )
     body = element(
-        "body", _header(data), element("main", *sections, caution), element("script", Markup(SCRIPT))
+        "body", _header(data, present), element("main", *sections, caution), element("script", Markup(SCRIPT))
     )
     return f"<!doctype html>\n{element('html', head, body, lang='en')}\n"
 
 
-def _header(data: ReportData) -> Markup:
-    links = (element("a", heading, href=f"#{name}") for name, heading in SECTIONS)
+def _header(data: ReportData, sections: Sequence[tuple[str, str]]) -> Markup:
+    links = (element("a", heading, href=f"#{name}") for name, heading in sections)
     return element(
         "header",
         element("h1", data.title),
@@ -104,13 +115,14 @@ def _facts(data: ReportData) -> list[tuple[str, str | None]]:
     if sampling is None:
         facts.append(("one run, no uncertain inputs", None))
     else:
-        facts.append((f"{sampling['samples']} samples, {METHODS[sampling['method']]}", None))
-        facts.append((f"{len(summary['inputs'])} uncertain inputs", None))
+        count = realizations_text(summary, "\N{MULTIPLICATION SIGN}")
+        facts.append((f"{count}, {METHODS[sampling['method']]}", None))
+        facts.append((f"{len(summary['inputs']) or 'no'} uncertain inputs", None))
     facts.append((f"intervals at {confidence_text(summary)} confidence", None))
     facts.append((f"computed in {short(cost['measured_s'])} s", None))
     facts.append((f"{percent(cost['split_share'])} of the work for the error split", None))
     if summary["failed"]["count"]:
-        facts.append((f"{summary['failed']['count']} samples failed", "bad"))
+        facts.append((failed_text(summary), "bad"))
     if aim is not None:
         outcome, kind = ("met", "good") if aim["met"] else ("missed", "bad")
         facts.append((f"aim of {aim['tolerance']} on {aim['quantity']}: {outcome}", kind))
@@ -138,7 +150,11 @@ def _card(data: ReportData, found: QuantityFindings, confidence: str) -> Markup:
         element("p", big, class_="big"),
         _said(f"{confidence} interval: {interval_text(mean)}", "range"),
         _said(answer(found, confidence)),
-        *(_said(text) for text in (occurrence(found), exceedance(found), spread(found)) if text),
+        *(
+            _said(text)
+            for text in (occurrence(found), exceedance(found), spread(found), parting(found))
+            if text
+        ),
         class_="card",
     )
 
@@ -154,8 +170,8 @@ def _spread(data: ReportData, findings: Sequence[QuantityFindings]) -> Markup:
     confidence = confidence_text(data.summary)
     note = (
         "Values are written to the digits that their half-width leaves; ends of intervals are rounded "
-        "outwards. The spread (standard deviation, quantiles) is a property of the model and its inputs and "
-        "does not shrink with more samples; the intervals do."
+        "outwards. The spread (standard deviation, quantiles) is a property of the model, its inputs and its "
+        "noise and does not shrink with more samples; the intervals do."
     )
     return joined((element("p", note), *(spread_table(found, confidence) for found in findings)))
 
@@ -166,6 +182,26 @@ def _chances(data: ReportData, findings: Sequence[QuantityFindings]) -> Markup:
         return element("p", "The study asks for no level to exceed ([report] exceed).")
     note = "A quantity exceeds a level where it occurs and lies above it."
     return joined((element("p", note), found))
+
+
+def _noise(data: ReportData, figures: Sequence[Figure], findings: Sequence[QuantityFindings]) -> Markup:
+    note = (
+        "A quantity varies because the inputs are not known, and because the tissue is noisy. The first part would "
+        "go if the inputs were measured; the second is the mean variance between runs with the same inputs, and "
+        "stays."
+    )
+    said = (_said(f"{parting(found)} {consequence(found)}".strip(), "lead") for found in findings)
+    drawn = (_figure(figure) for figure in figures if figure.section == "noise")
+    return joined(
+        (element("p", note), *said, *drawn, variance_table(findings, confidence_text(data.summary)))
+    )
+
+
+def _over_time(figures: Sequence[Figure]) -> Markup:
+    drawn = [_figure(figure) for figure in figures if figure.section == "time"]
+    if not drawn:
+        return element("p", "No quantity of this study is one number of the field at a time.")
+    return element("div", *drawn, class_="pair")
 
 
 def _error(data: ReportData, figures: Sequence[Figure], findings: Sequence[QuantityFindings]) -> Markup:
@@ -198,11 +234,21 @@ def _figure(figure: Figure) -> Markup:
     return element("figure", figure.drawing.inline(), element("figcaption", caption))
 
 
-def _field(figures: Sequence[Figure]) -> Markup:
+def _field(data: ReportData, figures: Sequence[Figure]) -> Markup:
+    found = field_table(field_findings(data.summary, data.units), data.units, confidence_text(data.summary))
     drawn = [_figure(figure) for figure in figures if figure.section == "field"]
-    if not drawn:
-        return element("p", "The mean or the spread of the field is not finite: nothing can be drawn.")
-    return element("div", *drawn, class_="pair")
+    pictures = (
+        element("div", *drawn, class_="pair")
+        if drawn
+        else element("p", "The mean or the spread of the field is not finite: nothing can be drawn.")
+    )
+    if found is None:
+        return pictures
+    note = (
+        "The variance is that of u over all runs, averaged over the domain. The correlation length is the distance "
+        "at which the correlation of u at two points has fallen to 1/e."
+    )
+    return joined((pictures, element("p", note), found))
 
 
 def _distributions(figures: Sequence[Figure]) -> Markup:
@@ -220,11 +266,11 @@ def _failures(data: ReportData) -> Markup:
     failed, warnings = summary["failed"], summary["warnings"]
     reasons = ", ".join(f"{count} {reason.replace('_', ' ')}" for reason, count in failed["reasons"].items())
     sampling = summary["sampling"]
-    of = "" if sampling is None else f" of {sampling['samples']}"
+    of = "" if sampling is None else f" of {sampling['samples'] * sampling['noise_repeats']}"
     text = (
-        f"{failed['count']}{of} samples failed ({reasons or DASH}); statistics are over the others."
+        f"{failed['count']}{of} {runs_name(summary)} failed ({reasons or DASH}); statistics are over the others."
         if failed["count"]
-        else "No sample failed."
+        else f"No {runs_name(summary).removesuffix('s')} failed."
     )
     listed = (
         element("ul", *(element("li", warning) for warning in warnings), class_="warn")

@@ -33,6 +33,8 @@ LIGHT: Mapping[str, str] = {
     "part-surrogate": "#4a1f3d",
     "part-bias-noise": "#c9ccd1",
     "part-sampling": "#dd6b2f",
+    "part-parameters": "#1c5d99",
+    "part-noise": "#d9c48b",
     "on-part-space": "#ffffff",
     "on-part-quadrature": "#10202c",
     "on-part-time": "#ffffff",
@@ -40,6 +42,8 @@ LIGHT: Mapping[str, str] = {
     "on-part-surrogate": "#ffffff",
     "on-part-bias-noise": "#15191e",
     "on-part-sampling": "#1d0f07",
+    "on-part-parameters": "#ffffff",
+    "on-part-noise": "#211b0a",
 }
 """Colour variables on a light ground."""
 
@@ -59,6 +63,8 @@ DARK: Mapping[str, str] = {
     "part-quadrature": "#6fb6e0",
     "part-time": "#2fa58c",
     "part-surrogate": "#8c4a7c",
+    "part-parameters": "#3573b0",
+    "part-noise": "#cdb87e",
     "on-part-time": "#06201a",
 }
 """The same variables on a dark ground."""

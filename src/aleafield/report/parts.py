@@ -16,6 +16,7 @@ class Part:
     meaning : what it is
     remedy : what would shrink it
     random : whether it is a random half-width (these add in quadrature) or a bound on a bias (these add up)
+    known_factor : whether its factor follows from what is known beforehand, so that no order is observed
     """
 
     key: str
@@ -23,6 +24,7 @@ class Part:
     meaning: str
     remedy: str
     random: bool = False
+    known_factor: bool = False
 
     @property
     def style(self) -> str:
@@ -53,7 +55,9 @@ PARTS: tuple[Part, ...] = (
         "noise_modes",
         "noise modes",
         "bound on the bias of cutting off the modes of the noise",
-        "keep more modes of the noise",
+        "the modes that are kept follow from the correlation length and the mesh: where the mesh carries too "
+        "few, more nodes in [scheme] keep more; a longer correlation_length needs fewer, but is another model",
+        known_factor=True,
     ),
     Part(
         "surrogate",
@@ -78,3 +82,29 @@ PARTS: tuple[Part, ...] = (
     ),
 )
 """All parts, in the order of every picture: biases first, then what is random."""
+
+
+@dataclass(frozen=True)
+class Cause:
+    """What makes a quantity vary.
+
+    Attributes
+    ----------
+    key : name in the summary, and of its colour
+    name : name in running text
+    meaning : what it is
+    """
+
+    key: str
+    name: str
+    meaning: str
+
+
+PARAMETERS = Cause(
+    "parameters", "parameters", "variance that is due to not knowing the inputs: can be learnt"
+)
+NOISE = Cause(
+    "noise", "noise", "variance between runs with the same inputs: stays however well they are known"
+)
+CAUSES = (PARAMETERS, NOISE)
+"""The causes of variance, in the order of pictures."""

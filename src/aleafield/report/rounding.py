@@ -26,7 +26,8 @@ class Earned:
     """A value and the ends of its interval to the same decimal place, and the half-width to two digits.
 
     The ends are rounded outwards and the half-width upwards, so that what is printed holds wherever the exact
-    statement holds.  Ends that are missing (one-sided) are None; a value that is not determined is a dash.
+    statement holds.  An open end is None, and so is the half-width then; a value that is not determined is a
+    dash.
     """
 
     value: str
@@ -61,8 +62,8 @@ def earned(
     ----------
     value : the value; None where it is not determined
     interval : (low, high), None where open
-    total : half-width; None takes the longer side of the interval.  A half-width of 0 leaves six digits;
-        where nothing is known of the error the value has two and no half-width
+    total : half-width; None where there is none (an end is open): then the longer side that is known decides
+        the digits.  A half-width of 0 leaves six digits; where nothing is known of the error the value has two
 
     Examples
     --------
@@ -76,24 +77,23 @@ def earned(
     low, high = interval
     sides = [abs(value - end) for end in (low, high) if end is not None]
     known = total is not None or bool(sides)
-    if total is None:
-        total = max(sides, default=0.0)
-    largest = max(abs(v) for v in (value, low, high, total) if v is not None)
+    reach = max(sides, default=0.0) if total is None else total
+    largest = max(abs(v) for v in (value, low, high, reach) if v is not None)
     top = _exponent(largest)
-    if total > 0:
-        decimals = min(EARNED_DIGITS - 1 - _exponent(total), MOST_DIGITS - 1 - top)
+    if reach > 0:
+        decimals = min(EARNED_DIGITS - 1 - _exponent(reach), MOST_DIGITS - 1 - top)
     else:
         decimals = (SURE_DIGITS if known else EARNED_DIGITS) - 1 - top
     if largest == 0:
         decimals, top = 0, 0
     power = top if top >= _LARGE or top < _SMALL else 0
-    if power == 0 and total == 0:
+    if power == 0 and reach == 0:
         decimals = _without_trailing_zeros(value, decimals)
     return Earned(
         value=_written(value, decimals, ROUND_HALF_EVEN, power),
         low=None if low is None else _written(low, decimals, ROUND_FLOOR, power),
         high=None if high is None else _written(high, decimals, ROUND_CEILING, power),
-        half_width=_half_width(total) if known else None,
+        half_width=None if total is None else _half_width(total),
     )
 
 

@@ -19,11 +19,14 @@ STYLE = (
     ".plot .axis{stroke:var(--line);fill:none}.plot .grid{stroke:var(--grid);fill:none}"
     ".plot .curve{stroke:var(--accent);stroke-width:2;fill:none;stroke-linejoin:round}"
     ".plot .band{fill:var(--accent-soft);opacity:.6}.plot .band.inner{opacity:1}"
+    ".plot .single{stroke:var(--quiet);stroke-width:1;fill:none;stroke-linejoin:round;opacity:.8}"
+    ".plot .fan{fill:var(--accent);opacity:.17}.plot .fan.inner{opacity:.26}"
     ".plot .bar{fill:var(--accent-soft)}.plot .bar.beyond{fill:var(--mark);opacity:.55}"
     ".plot .limit{stroke:var(--mark);stroke-width:1.5;stroke-dasharray:4 3}"
     ".plot .limit-text{fill:var(--mark);font-weight:600}"
     ".plot .limit-text{paint-order:stroke;stroke:var(--panel);stroke-width:4px}"
     ".plot .whisker{stroke:var(--ink);stroke-width:2}.plot .dot{fill:var(--ink)}"
+    ".plot .open{stroke:var(--ink);stroke-width:2;stroke-dasharray:2 3}"
     ".plot .probe{fill:transparent}.plot .probe:hover{fill:var(--quiet);fill-opacity:.18}"
 )
 """Rules for the classes that drawings use; colours are the variables of `palette`."""
@@ -130,6 +133,12 @@ def path(points: Sequence[tuple[float, float]], kind: str, closed: bool = False)
     """A polyline through points in px."""
     steps = "L".join(f"{number_text(x)} {number_text(y)}" for x, y in points)
     return element("path", d=f"M{steps}{'Z' if closed else ''}", class_=kind)
+
+
+def arrow(x: float, y: float, direction: int) -> Markup:
+    """The head of an arrow whose tip is at (x, y); direction 1 points to the right, -1 to the left."""
+    back = x - 8 * direction
+    return path([(back, y - 5), (x, y), (back, y + 5)], "dot", closed=True)
 
 
 @dataclass(frozen=True)

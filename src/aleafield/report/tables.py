@@ -5,11 +5,26 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 from aleafield.report.data import Summary
-from aleafield.report.findings import Finding, QuantityFindings, quantity_findings
+from aleafield.report.findings import (
+    FieldFindings,
+    Finding,
+    ObservedOrder,
+    QuantityFindings,
+    quantity_findings,
+)
 from aleafield.report.markup import Content, Markup, element
-from aleafield.report.parts import PARTS
+from aleafield.report.parts import PARTS, Part
 from aleafield.report.rounding import DASH, short, typographic
-from aleafield.report.verdict import confidence_text, interval_text, main_parts, value_text
+from aleafield.report.svg import labelled
+from aleafield.report.verdict import (
+    confidence_text,
+    half_width_text,
+    interval_text,
+    main_parts,
+    runs_name,
+    value_text,
+)
+from aleafield.units import Units
 
 
 def table(caption: str, heads: Sequence[str], rows: Sequence[Sequence[Content]]) -> Markup:
@@ -80,17 +95,46 @@ def _row(found: Finding) -> tuple[Content, ...]:
     correction: str = DASH
     if corrected is not None and corrected.value is not None:
         correction = f"{value_text(corrected)} ({interval_text(corrected)})"
-    half_width = found.rounded.half_width
     value: Content = value_text(found)
-    if found.reason:
+    if found.value is None and found.reason:
         value = element("span", found.reason, class_="reason")
     return (
         found.name,
         value,
         interval_text(found),
-        DASH if half_width is None else typographic(half_width),
+        half_width_text(found),
         correction,
     )
+
+
+def variance_table(findings: Sequence[QuantityFindings], confidence: str) -> Markup | None:
+    """The variance of every quantity by its causes; None where nothing was parted."""
+    rows: list[tuple[Content, ...]] = []
+    for quantity in findings:
+        if quantity.variance is not None:
+            rows.extend((quantity.name, *_row(one)[:4]) for one in quantity.variance.all())
+    if not rows:
+        return None
+    heads = ("quantity", "variance", "value", f"{confidence} interval", "half-width")
+    return table("Variance by its causes", heads, rows)
+
+
+def field_table(findings: Sequence[FieldFindings], units: Units, confidence: str) -> Markup | None:
+    """Variance and correlation length of the field by time; None without any."""
+    if not findings:
+        return None
+    rows = [
+        (short(found.time, 6), *_row(found.variance)[1:3], *_row(found.correlation_length)[1:3])
+        for found in findings
+    ]
+    heads = (
+        labelled("t", units.time),
+        "variance",
+        f"{confidence} interval",
+        "correlation length",
+        f"{confidence} interval",
+    )
+    return table("Variance and correlation length of the field", heads, rows)
 
 
 def error_table(findings: QuantityFindings) -> Markup:
@@ -102,8 +146,7 @@ def error_table(findings: QuantityFindings) -> Markup:
             text = typographic(short(found.error.get(part.key), 2))
             small = text != DASH and not found.resolved(part)
             cells.append(element("span", text, class_="small") if small else text)
-        half_width = found.rounded.half_width
-        cells.append(element("b", typographic(half_width)) if half_width is not None else DASH)
+        cells.append(element("b", half_width_text(found)))
         rows.append(cells)
     heads = ("statistic", *(part.name for part in PARTS), "total")
     return table(
@@ -118,14 +161,21 @@ def order_table(findings: QuantityFindings, summary: Summary) -> Markup | None:
     for part in PARTS:
         order = orders.get(part.key)
         if order is not None:
-            unproven = "none proven" if not parts[part.key]["proven"] else "beyond any power"
-            expected = unproven if order.expected is None else short(order.expected)
             seen = typographic(short(order.observed))
+            expected = _expected(part, order, parts[part.key]["proven"])
             rows.append((part.name, seen, expected, short(order.factor), parts[part.key]["note"]))
     if not rows:
         return None
     heads = ("part", "observed order", "expected order", "factor", "why that order is expected")
     return table(f"Orders behind the parts of the mean of {findings.name}", heads, rows)
+
+
+def _expected(part: Part, order: ObservedOrder, proven: bool) -> str:
+    if part.known_factor:
+        return "none: the factor is known"
+    if order.expected is not None:
+        return short(order.expected)
+    return "beyond any power" if proven else "none proven"
 
 
 def input_table(summary: Summary) -> Markup | None:
@@ -150,14 +200,18 @@ def failure_table(summary: Summary) -> Markup | None:
     if not failures:
         return None
     paths = list(failures[0]["inputs"])
+    repeated = summary["sampling"] is not None and summary["sampling"]["noise_repeats"] > 1
     rows = [
         (
             str(failure["sample"]),
+            *((str(failure["repeat"]),) if repeated else ()),
             short(failure["time"], 4),
             *(typographic(short(failure["inputs"][path], 5)) for path in paths),
         )
         for failure in failures
     ]
     all_of_them = failed["listed"] == failed["count"]
-    caption = "Failed samples" if all_of_them else f"The first {failed['listed']} failed samples"
-    return table(caption, ("sample", "failed at t", *paths), rows)
+    name = runs_name(summary)
+    caption = f"Failed {name}" if all_of_them else f"The first {failed['listed']} failed {name}"
+    heads = ("sample", *(("repeat",) if repeated else ()), "failed at t", *paths)
+    return table(caption, heads, rows)

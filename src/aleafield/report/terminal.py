@@ -6,9 +6,10 @@ from collections.abc import Sequence
 
 from aleafield.report.data import Summary
 from aleafield.report.findings import Finding, QuantityFindings, quantity_findings, with_units
+from aleafield.report.parting import per_cent
 from aleafield.report.parts import PARTS, Part
 from aleafield.report.rounding import DASH, percent
-from aleafield.report.verdict import METHODS, confidence_text, main_parts
+from aleafield.report.verdict import METHODS, confidence_text, main_parts, realizations_text
 
 _BAR = 20
 _COLOURS = {
@@ -34,7 +35,7 @@ def result_lines(summary: Summary, files: Sequence[str] = (), colour: bool = Fal
     Returns
     -------
     lines : quantity, mean and interval, spread, where the error comes from; then quantiles, exceedance,
-        occurrence, failures, warnings, files
+        occurrence, the causes of variance, failures, warnings, files
     """
     findings = quantity_findings(summary)
     heads = ("quantity", f"mean and {confidence_text(summary)} interval", "spread (sd)", "error comes from")
@@ -47,6 +48,9 @@ def result_lines(summary: Summary, files: Sequence[str] = (), colour: bool = Fal
         details = _details(found)
         if details:
             lines += ["", found.name, *_aligned(details, None, indent="  ")]
+    causes = _causes(findings)
+    if causes:
+        lines += ["", *causes]
     lines.append("")
     lines += _closing(summary)
     if files:
@@ -55,12 +59,16 @@ def result_lines(summary: Summary, files: Sequence[str] = (), colour: bool = Fal
 
 
 def _estimate(found: Finding) -> str:
-    """Value, unit and interval on one line, or why there is none."""
+    """Value, unit and interval on one line, or why there is none; "at least" and "at most" for an open end."""
     if found.value is None:
         return found.reason or "-"
     rounded = found.rounded
     value = with_units(rounded.value, found.units)
-    return f"{value} [{rounded.low or '-inf'}, {rounded.high or 'inf'}]"
+    if rounded.low is not None and rounded.high is not None:
+        return f"{value} [{rounded.low}, {rounded.high}]"
+    if rounded.low is not None:
+        return f"{value}, at least {rounded.low}"
+    return value if rounded.high is None else f"{value}, at most {rounded.high}"
 
 
 def _spread(found: Finding) -> str:
@@ -78,13 +86,30 @@ def _details(found: QuantityFindings) -> list[tuple[str, ...]]:
     return [(one.name, _estimate(one), _cause(one)) for one in rest]
 
 
+def _causes(findings: Sequence[QuantityFindings]) -> list[str]:
+    """The block on the causes of variance; empty without noise."""
+    rows: list[tuple[str, ...]] = []
+    unknown: dict[str, list[str]] = {}
+    for found in findings:
+        variance = found.variance
+        if variance is None:
+            continue
+        if variance.share is not None and variance.share.value is None:
+            unknown.setdefault(variance.share.reason, []).append(found.name)
+            continue
+        share = "0 % (no uncertain inputs)" if variance.share is None else per_cent(variance.share)
+        rows.append((found.name, _estimate(variance.total), _estimate(variance.noise), share))
+    heads = ("noise or ignorance", "variance", "of which noise", "share of the parameters")
+    lines = _aligned([heads, *rows], None) if rows else []
+    return lines + [f"noise or ignorance of {', '.join(names)}: {why}" for why, names in unknown.items()]
+
+
 def _closing(summary: Summary) -> list[str]:
     lines = []
     failed, sampling, cost = summary["failed"], summary["sampling"], summary["cost"]
     if sampling is not None:
-        lines.append(
-            f"{sampling['samples']} samples ({METHODS[sampling['method']]}), {failed['count']} failed"
-        )
+        count = realizations_text(summary, "x")
+        lines.append(f"{count} ({METHODS[sampling['method']]}), {failed['count']} failed")
     elif failed["count"]:
         lines.append("the run failed: a value was not finite")
     share = percent(cost["split_share"])

@@ -5,7 +5,7 @@ from __future__ import annotations
 from aleafield.accounting.split import RESOLUTION
 from aleafield.report.data import Summary
 from aleafield.report.findings import Finding, QuantityFindings, with_units
-from aleafield.report.rounding import DASH, percent, typographic
+from aleafield.report.rounding import DASH, percent, short, typographic
 
 
 def interval_text(found: Finding) -> str:
@@ -18,6 +18,14 @@ def interval_text(found: Finding) -> str:
     if rounded.high is not None:
         return f"at most {with_units(typographic(rounded.high), found.units)}"
     return DASH
+
+
+def half_width_text(found: Finding) -> str:
+    """The half-width, "open above" or "open below" where an end is open, or a dash."""
+    if found.open_side is not None:
+        return f"open {found.open_side}"
+    half_width = found.rounded.half_width
+    return DASH if half_width is None else typographic(half_width)
 
 
 def value_text(found: Finding) -> str:
@@ -34,6 +42,31 @@ METHODS = {"monte carlo": "Monte Carlo", "quasi-monte carlo": "quasi-Monte Carlo
 def confidence_text(summary: Summary) -> str:
     """The confidence of all intervals, as in "95 %"."""
     return f"{100 * summary['confidence']:g} %"
+
+
+def runs_name(summary: Summary) -> str:
+    """What single runs are called: samples, or realizations where samples have several noise paths."""
+    sampling = summary["sampling"]
+    return "samples" if sampling is None or sampling["noise_repeats"] == 1 else "realizations"
+
+
+def failed_text(summary: Summary) -> str:
+    """How many runs failed, as in "2 samples failed"."""
+    count, name = summary["failed"]["count"], runs_name(summary)
+    return f"{count} {name.removesuffix('s') if count == 1 else name} failed"
+
+
+def realizations_text(summary: Summary, times: str) -> str:
+    """How many runs a sampled study has, as in "2048 samples x 4 noise paths".
+
+    Parameters
+    ----------
+    summary : as in summary.json, with a sampling
+    times : the sign between the numbers
+    """
+    sampling = summary["sampling"]
+    samples, repeats = sampling["samples"], sampling["noise_repeats"]
+    return f"{samples} samples" if repeats == 1 else f"{samples} samples {times} {repeats} noise paths"
 
 
 def answer(findings: QuantityFindings, confidence: str) -> str:
@@ -62,16 +95,16 @@ def spread(findings: QuantityFindings) -> str:
     """How far samples differ: standard deviation and the outermost quantiles; empty where there is nothing to say."""
     if findings.sd.value == 0.0:
         return ""
-    sentences = []
+    sentences, each = [], "sample" if findings.variance is None else "run"
     if findings.sd.value is not None:
         sentences.append(
-            f"From sample to sample it varies with a standard deviation of {value_text(findings.sd)}."
+            f"From {each} to {each} it varies with a standard deviation of {value_text(findings.sd)}."
         )
     known = [(float(key), found) for key, found in findings.quantiles.items() if found.value is not None]
     if len(known) > 1:
         (low, least), (high, most) = min(known, key=lambda k: k[0]), max(known, key=lambda k: k[0])
         sentences.append(
-            f"{percent(high - low)} of samples lie between {value_text(least)} and {value_text(most)}."
+            f"{percent(high - low)} of {each}s lie between {value_text(least)} and {value_text(most)}."
         )
     return " ".join(sentences)
 
@@ -100,6 +133,13 @@ def cause(quantity: str, found: Finding) -> str:
             return f"The {found.name} of {quantity} carries no error: no part of the split applies."
         return f"The error of the {found.name} of {quantity} is not determined: {found.reason or 'no total'}."
     part, share = main
+    if found.open_side is not None:
+        size = with_units(short(found.reach, 2), found.units)
+        return (
+            f"The {found.name} of {quantity} is bounded on one side only: nothing bounds how far "
+            f"{found.open_side} {value_text(found)} the truth lies. {percent(share)} of the other "
+            f"side ({typographic(size)}) comes from {part.name}."
+        )
     verb = "comes" if share > 0.5 else "comes, as the largest share,"
     half_width = found.rounded.half_width
     assert half_width is not None
@@ -108,17 +148,36 @@ def cause(quantity: str, found: Finding) -> str:
     return f"{percent(share)} of {whole} {verb} from {part.name}."
 
 
+OPEN_END = (
+    "what the path does between the ends of its steps is not seen, and no order bounds what is missed; a "
+    "smaller time_step misses less. Maxima, minima and first passages of a value, a mean or an integral follow "
+    "the exact law inside the steps and have both ends"
+)
+"""What can be done about an open end."""
+
+
 def remedies(found: Finding) -> list[str]:
-    """What would shrink the error of a finding, by part, largest share first; parts below a tenth are left "
-    "out."""
+    """What would shrink the error of a finding: an open end first, then by part, largest share first.
+
+    Parts below a tenth are left out.
+    """
     shares = sorted(found.shares().items(), key=lambda item: -item[1])
-    return [f"{part.name} ({percent(share)}): {part.remedy}" for part, share in shares if share >= RESOLUTION]
+    large = [
+        f"{part.name} ({percent(share)}): {part.remedy}" for part, share in shares if share >= RESOLUTION
+    ]
+    return large if found.open_side is None else [f"open {found.open_side}: {OPEN_END}", *large]
 
 
 def main_parts(found: Finding) -> str:
-    """The parts that make a tenth of the half-width or more, as in "sampling 54 %, space 34 %"."""
+    """The parts that make a tenth of the half-width or more, as in "sampling 54 %, space 34 %".
+
+    An open end comes first, as in "open above; below: sampling 54 %, space 34 %".
+    """
     shares = sorted(found.shares().items(), key=lambda item: -item[1])
     large = [f"{part.name} {percent(share)}" for part, share in shares if share >= RESOLUTION]
+    if found.open_side is not None:
+        other = "below" if found.open_side == "above" else "above"
+        return f"open {found.open_side}; {other}: {', '.join(large) or 'no error part applies'}"
     if large:
         return ", ".join(large)
     return "no error part applies" if found.total == 0 else DASH

@@ -12,12 +12,13 @@ import numpy as np
 from aleafield.errors import InputError
 from aleafield.field.equation import FieldEquation
 from aleafield.field.kernels import CosineKernel, FormulaKernel
+from aleafield.field.noise_modes import NoiseModes
 from aleafield.field.rates import FormulaRate, LinearRate
 from aleafield.forward.field_model import FieldModel
 from aleafield.projection.discretisation import Discretisation
 from aleafield.projection.pairing import Pairing
 from aleafield.projection.smoothness import drive_is_smooth, initial_is_smooth, kernel_is_smooth, typical
-from aleafield.runs.model import Choices, design_of, field_model
+from aleafield.runs.model import Choices, design_of, field_model, noise_modes
 from aleafield.runs.plan_file import count_probes
 from aleafield.runs.resolution import COARSE, MeshWidth, Stability, domain_notes, mesh_width, stability
 from aleafield.sampling.allocation import Allocation, allocate
@@ -68,6 +69,7 @@ class CheckResult:
     time : mapping: step, steps, times on the schedule, largest stable step
     resolution : mapping: gaps of nodes and points, smallest kernel width, their ratio
     sampling : mapping: method, samples, replicates, probes and what their extra levels cost
+    noise : mapping or None: correlation, modes, ring length, dropped share of the variance, error of the images
     notes : tuple of str
         What to know; nothing is wrong.
     warnings : tuple of str
@@ -82,6 +84,7 @@ class CheckResult:
     time: Mapping[str, Any]
     resolution: Mapping[str, Any]
     sampling: Mapping[str, Any]
+    noise: Mapping[str, Any] | None
     notes: tuple[str, ...]
     warnings: tuple[str, ...]
 
@@ -113,6 +116,8 @@ class CheckResult:
         lines.append(f"  operator: {scheme['operator']['name']}: {scheme['operator']['reason']}")
         lines += [f"  {line}" for line in self.resolution["words"]]
         lines += ["", "Time", *(f"  {line}" for line in time["words"])]
+        if self.noise is not None:
+            lines += ["", "Noise", *(f"  {line}" for line in self.noise["words"])]
         lines += ["", "Samples", *(f"  {line}" for line in sampling["words"])]
         for heading, entries in (("Notes", self.notes), ("Warnings", self.warnings)):
             if entries:
@@ -146,14 +151,15 @@ def check(study: Study) -> CheckResult:
 
 
 def _checked(study: Study) -> CheckResult:
-    allocation = allocate(study.sampling, len(study.inputs))
+    allocation = allocate(study.sampling, len(study.inputs), study.equation.noise is not None)
     design = design_of(study, allocation)
     refuse_impossible_samples(study, design, min(allocation.samples, MOST_DRAWN))
     first = np.arange(min(FIRST_SAMPLES, allocation.samples), dtype=np.int64)
     bound = study.equation.bind(study.equation.binding(design.values(first)))
     step = study.scheme.time_step
     trial = float(np.min(np.asarray(bound.dynamics.time_constant))) / 2
-    model = field_model(study, allocation, Choices(trial if step is None else step, {}))
+    noise = noise_modes(study, allocation)
+    model = field_model(study, allocation, Choices(trial if step is None else step, {}, noise))
     discretisation = model.discretisation(model.level)
     widths, stable = mesh_width(discretisation, bound), stability(discretisation, bound)
     unit = "" if study.units.length == "1" else f" {study.units.length}"
@@ -169,9 +175,11 @@ def _checked(study: Study) -> CheckResult:
         time=_time(study, model, stable),
         resolution=_resolution(widths, unit),
         sampling=_sampling(allocation, model),
+        noise=None if noise is None else _noise(study, noise, unit),
         notes=(*_lumping(model.pairing), *_dependence(study), *domain_notes(bound, unit)),
         warnings=(
             *study.warnings,
+            *_noise_warnings(study, noise),
             *_start(discretisation, bound, len(first)),
             *_warnings(study, model.pairing, widths, stable),
         ),
@@ -200,7 +208,7 @@ def hypotheses(equation: FieldEquation, model: FieldModel) -> list[Hypothesis]:
     else:
         slope = (False, "f has a kink or a jump")
     drive, initial = drive_is_smooth(sample), initial_is_smooth(sample)
-    return [
+    found = [
         Hypothesis(
             "bounded rate",
             bounded,
@@ -229,6 +237,17 @@ def hypotheses(equation: FieldEquation, model: FieldModel) -> list[Hypothesis]:
             else "the drive does not switch",
         ),
     ]
+    if model.noise is not None:
+        found.append(
+            Hypothesis(
+                "noise that is a function of x",
+                not model.noise.white,
+                "white in space: the field is no function, and only what is integrated over space has a limit"
+                if model.noise.white
+                else "its variance at a point is finite",
+            )
+        )
+    return found
 
 
 def _continuous_kernel(sample: FieldEquation) -> Hypothesis:
@@ -298,19 +317,63 @@ def _resolution(widths: MeshWidth, unit: str) -> dict[str, Any]:
     }
 
 
+def _noise(study: Study, noise: NoiseModes, unit: str) -> dict[str, Any]:
+    assert study.equation.noise is not None
+    correlation = study.equation.noise.correlation.name
+    ring = f"{noise.modes} modes of a ring of length {noise.length:.5g}{unit}"
+    if noise.dropped is None:
+        words = [f"{correlation}: {ring}"]
+    else:
+        words = [f"{correlation} correlation: {ring} leave out {noise.dropped:.2g} of the variance"]
+    if noise.image_error > 0:
+        words.append(f"the images on that ring change the correlation by less than {noise.image_error:.1g}")
+    words.append("Euler-Maruyama: strong order 1 for additive noise and a smooth rate")
+    return {
+        "correlation": correlation,
+        "modes": noise.modes,
+        "ring_length": noise.length,
+        "dropped_share": noise.dropped,
+        "image_error": noise.image_error,
+        "words": words,
+    }
+
+
+def _noise_warnings(study: Study, noise: NoiseModes | None) -> list[str]:
+    if noise is None:
+        return []
+    found = [noise.note] if noise.note else []
+    if noise.white:
+        found.append(
+            "noise.correlation: white in space: mean and spread of the field at a point, as stored and drawn, "
+            "belong to this mesh and grow like 1 / h"
+        )
+    for quantity in study.quantities:
+        if quantity.open_side is not None or quantity.open_occurrence is not None:
+            found.append(
+                f"{quantity.key('over')}: between the ends of steps a noisy path is not seen, and what it does there "
+                "shrinks like the root of the step only: one side of the intervals stays open"
+            )
+    return found
+
+
 def _sampling(allocation: Allocation, model: FieldModel) -> dict[str, Any]:
     probes, share = count_probes(model, model.level, model.path(model.level), allocation.samples)
     words = [f"{allocation.samples} samples, {allocation.method}"]
     if allocation.replicates > 1:
         words[0] += f": {allocation.replicates} scramblings of {allocation.points_per_replicate} points"
+    if allocation.repeats > 1:
+        words.append(f"{allocation.repeats} noise paths each: {allocation.realizations} solver runs")
     if allocation.note:
         words.append(allocation.note)
     cost = f"about {100 * share:.0f} % of the cost of the samples (counted)"
     words.append(f"error split on the first {probes} of them, {cost}")
+    if model.noise is not None:
+        words.append("more where pilots show that differences between levels are noisy")
     return {
         "method": allocation.method,
         "samples": allocation.samples,
         "replicates": allocation.replicates,
+        "noise_repeats": allocation.repeats,
         "probes": probes,
         "probe_share": share,
         "words": words,

@@ -40,10 +40,15 @@ class Cost:
 
 @dataclass(frozen=True)
 class Stored:
-    """How much of an ensemble is in place: samples and probes; both 0 where there is none."""
+    """How much of an ensemble is in place: realizations, and those that are probes; 0 where there is none."""
 
-    samples: int = 0
+    realizations: int = 0
     probes: int = 0
+
+    @staticmethod
+    def whole(plan: Plan) -> Stored:
+        """All that a plan asks for."""
+        return Stored(plan.realizations, plan.probe_realizations)
 
 
 @dataclass(frozen=True)
@@ -66,9 +71,10 @@ def tasks_of(plan: Plan, stored: Stored) -> dict[Level, list[Task]]:
     """What is to be solved at each level beyond what is in place, the extra levels first."""
     tasks = {}
     for level in plan.extra_levels:
-        width = min(plan.chunk_width, -(-plan.probes // LANE) * LANE)
-        tasks[level] = list(cut(level, stored.probes, plan.probes, width))
-    tasks[plan.level] = list(cut(plan.level, stored.samples, plan.samples, plan.chunk_width))
+        width = min(plan.chunk_width, -(-plan.probes // LANE) * LANE) * plan.repeats
+        tasks[level] = list(cut(level, stored.probes, plan.probe_realizations, width))
+    width = plan.chunk_width * plan.repeats
+    tasks[plan.level] = list(cut(plan.level, stored.realizations, plan.realizations, width))
     return tasks
 
 
@@ -121,12 +127,12 @@ def put_together(layout: Layout, plan: Plan, question: Question) -> Summary:
     cost = Cost()
     with ExitStack() as stack:
         sources: list[EarlierEnsemble | StoredChunks] = []
-        if stored.samples:
+        if stored.realizations:
             reader = stack.enter_context(reading(layout.ensemble))
-            state = read_state(layout, stored.samples, str(reader.attribute("field_state_sha256")))
+            state = read_state(layout, stored.realizations, str(reader.attribute("field_state_sha256")))
             sources.append(EarlierEnsemble(reader, plan.level, state))
             cost = Cost(float(reader.attribute("wall_time_s")), float(reader.attribute("processor_time_s")))
-        if stored != Stored(plan.samples, plan.probes):
+        if stored != Stored.whole(plan):
             store = ChunkStore(layout)
             sources.append(StoredChunks(store, tasks_of(plan, stored)))
             cost = Cost(cost.wall + store.wall_seconds, cost.processor + store.processor_seconds)
@@ -144,7 +150,7 @@ def put_together(layout: Layout, plan: Plan, question: Question) -> Summary:
 
 def is_complete(layout: Layout, plan: Plan) -> bool:
     """Whether everything that comes from solving is in place."""
-    return stored_ensemble(layout) == Stored(plan.samples, plan.probes)
+    return stored_ensemble(layout) == Stored.whole(plan)
 
 
 def clear_parts(layout: Layout) -> None:

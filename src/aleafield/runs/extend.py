@@ -30,7 +30,7 @@ def extend(
     progress: Progress | None = None,
     study: Study | None = None,
 ) -> RunResult:
-    """Add parameter samples to a finished run.
+    """Add parameter samples, each with as many noise paths as before, to a finished run.
 
     A run of S samples extended to S' equals a run of S' samples value for value.  An extension that was
     interrupted is finished by the same call, and nothing is added to it.
@@ -47,7 +47,7 @@ def extend(
     Raises
     ------
     InputError
-        When fewer than one sample is asked, or the study has no inputs.
+        When fewer than one sample is asked, or nothing is uncertain.
     ArchiveError
         When the folder holds no finished run.
     Interrupted
@@ -66,9 +66,9 @@ def extend(
             f"{layout.folder}: its study.toml is not the study that was run (quantities that are Python "
             "functions must be given again, from Python)"
         )
-    if not study.inputs:
+    if not study.inputs and plan.noise is None:
         raise InputError("samples", "the study has no uncertain inputs", "one run says everything")
-    if stored_ensemble(layout).samples == 0:
+    if stored_ensemble(layout).realizations == 0:
         raise ArchiveError(f"{layout.folder}: the run is unfinished; run it to its end before extending it")
     with locked(layout):
         remove_partials(layout.folder)

@@ -3,17 +3,21 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
+from aleafield.field.noise_modes import SAMPLES as NOISE_SAMPLES
+from aleafield.field.noise_modes import NoiseModes, choose_modes
 from aleafield.forward.field_model import FieldModel
-from aleafield.forward.pilots import Demand, choose_halvings, circular_mean, pilot_samples
+from aleafield.forward.pilots import Demand, choose_halvings, circular_mean, pilot_realizations
 from aleafield.geometry import Ring
+from aleafield.projection.pairing import resolve
 from aleafield.quantities import PeakPosition
 from aleafield.randomness.design import Design
+from aleafield.runs.probing import probe_demand
+from aleafield.runs.resolution import stable_step
 from aleafield.sampling.allocation import Allocation
-from aleafield.stepping.runge_kutta import stability_bound
 from aleafield.study.study import Study
 
 PILOT_TIMES = 21
@@ -34,12 +38,18 @@ class Choices:
         Largest step of the schedule, units of time.
     peak_references : mapping
         By quantity: the position about which peak positions on a ring are unwrapped.
+    noise : NoiseModes or None
+        The modes that are kept of the noise.
+    probe_demand : float
+        Share of the samples that the error split must see for its own noise to stay small; 0 without noise.
     notes : tuple of str
         What the user must know of these choices.
     """
 
     time_step: float
     peak_references: Mapping[str, float]
+    noise: NoiseModes | None = None
+    probe_demand: float = 0.0
     notes: tuple[str, ...] = ()
 
 
@@ -58,22 +68,45 @@ def field_model(study: Study, allocation: Allocation, choices: Choices) -> Field
         study.inputs,
         choices.time_step,
         choices.peak_references,
+        choices.noise,
+        allocation.repeats,
     )
 
 
+def noise_modes(study: Study, allocation: Allocation) -> NoiseModes | None:
+    """The modes of a study's noise; None without noise."""
+    equation = study.equation
+    if equation.noise is None:
+        return None
+    pairing = resolve(study.scheme, equation)
+    samples = np.arange(NOISE_SAMPLES if study.inputs else 1, dtype=np.int64)
+    first = equation.bind(equation.binding(design_of(study, allocation).values(samples)))
+    finest, _ = pairing.refined(pairing.nodes, pairing.quadrature_points)
+    return choose_modes(equation, first, pairing.nodes, finest)
+
+
 def make_choices(study: Study, allocation: Allocation) -> Choices:
-    """Settle the time step where the study leaves it to pilots, and the references of peak positions."""
-    pilots = pilot_samples(len(study.inputs))
-    step, notes = _time_step(study, allocation)
-    choices = Choices(step, {}, notes)
+    """Settle what a study leaves open: noise modes, time step, references of peak positions, demand for probes."""
+    noise = noise_modes(study, allocation)
+    step, notes = _time_step(study, allocation, noise)
+    if noise is not None and noise.note:
+        notes = (*notes, noise.note)
+    choices = Choices(step, {}, noise, notes=notes)
+    model = field_model(study, allocation, choices)
+    choices = replace(choices, peak_references=_peak_references(study, model))
+    if noise is not None:
+        choices = replace(choices, probe_demand=probe_demand(field_model(study, allocation, choices)))
+    return choices
+
+
+def _peak_references(study: Study, model: FieldModel) -> dict[str, float]:
+    """Circular means of the peaks that the pilots have, on a ring."""
     names = [q.name for q in study.quantities if isinstance(q, PeakPosition)]
     domain = study.equation.domain
     if not names or not isinstance(domain, Ring):
-        return choices
-    model = field_model(study, allocation, choices)
-    records = model.evaluate(model.level, pilots)
-    references = {name: circular_mean(records.values[name], domain.length) for name in names}
-    return Choices(step, references, notes)
+        return {}
+    records = model.evaluate(model.level, pilot_realizations(model))
+    return {name: circular_mean(records.values[name], domain.length) for name in names}
 
 
 def stable_steps(
@@ -90,19 +123,23 @@ def stable_steps(
         samples = np.arange(first, min(first + BLOCK, count), dtype=np.int64)
         bound = study.equation.bind(study.equation.binding(model.design.values(samples)))
         gain = discretisation.gain(bound)
-        step = stability_bound(bound.dynamics.time_constant, 0.0 if gain is None else gain)  # type: ignore[arg-type]
-        found.append(np.broadcast_to(step, samples.shape))
+        found.append(np.broadcast_to(stable_step(bound, gain), samples.shape))
     return np.concatenate(found)
 
 
-def _time_step(study: Study, allocation: Allocation) -> tuple[float, tuple[str, ...]]:
+def _time_step(
+    study: Study, allocation: Allocation, noise: NoiseModes | None
+) -> tuple[float, tuple[str, ...]]:
     """The step of the study, or the one that pilots choose below what is stable; and what to say of it.
 
-    Pilots start at an eighth of the duration, or half the smallest stable step where that is shorter.
+    Pilots start at an eighth of the duration, or half the smallest stable step where that is shorter.  Under
+    noise they follow their own paths, the same at every step, and do not judge quantities that look inside the
+    steps: bridges are shared by the levels of the error split alone, and extremes seen at the ends of steps
+    approach their limit too slowly to wait for.
     """
     duration = study.equation.dynamics.duration
     given = study.scheme.time_step
-    model = field_model(study, allocation, Choices(given or duration / 8, {}))
+    model = field_model(study, allocation, Choices(given or duration / 8, {}, noise))
     stable = stable_steps(study, allocation, model)
     if given is not None:
         share = float(np.mean(stable < model.schedule().longest))
@@ -113,10 +150,15 @@ def _time_step(study: Study, allocation: Allocation) -> tuple[float, tuple[str, 
             f"smallest is {stable.min():.3g}): their values may grow without meaning; take a smaller step",
         )
     base = min(float(stable.min()) / 2, duration / 8)  # half, since the doubled step is a level too
-    model = field_model(study, allocation, Choices(base, {}))
+    if noise is not None:
+        judged = tuple(q for q in study.quantities if not (q.bridged or q.open_side or q.open_occurrence))
+        study = replace(study, quantities=judged)
+    model = field_model(study, allocation, Choices(base, {}, noise))
     times = np.linspace(0.0, duration, PILOT_TIMES)
+    if noise is not None:  # ends of steps: between them a noisy path is known to the root of the step only
+        ends = model.schedule().times
+        times = ends[np.unique(np.linspace(0, len(ends) - 1, PILOT_TIMES).round().astype(np.int64))]
     aim = study.aim
     demand = None if aim is None or aim.relative else Demand(aim.quantity, aim.tolerance)
-    pilots = pilot_samples(len(study.inputs))
-    settled = choose_halvings(model, model.level, pilots, list(times), demand)
+    settled = choose_halvings(model, model.level, pilot_realizations(model), list(times), demand)
     return base / 2**settled.halvings, (settled.note,) if settled.note else ()

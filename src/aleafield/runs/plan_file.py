@@ -8,22 +8,24 @@ from dataclasses import asdict, dataclass, replace
 from typing import Any
 
 from aleafield.accounting import SHARE, number_of_probes, share_of_probes
+from aleafield.accounting.probes import least_number
 from aleafield.archive.chunks import LANE
 from aleafield.archive.durable import write_json
 from aleafield.archive.layout import Layout
 from aleafield.ensemble.forward_model import ForwardModel
 from aleafield.ensemble.level import Level, PathPart
 from aleafield.errors import ArchiveError
+from aleafield.field.noise_modes import NoiseModes
 from aleafield.sampling.allocation import Allocation
 
 SCHEMA = 1
 CHUNK_NUMBERS = 1 << 15
-"""A chunk's width times the number of nodes, about."""
+"""Realizations of a chunk times the number of nodes, about."""
 MATRIX_NUMBERS = 1 << 24
-"""Numbers in the kernel matrices of a chunk, where every sample has its own: 128 MiB, and about four times as
-much while they are made.  More only where the least width needs more."""
-WIDTHS = (8, 256)
-"""Least and largest default width of a chunk."""
+"""Numbers in the kernel matrices of a chunk, where every realization has its own: 128 MiB, and about four times
+as much while they are made.  More only where the least width needs more."""
+LARGEST = 256
+"""Realizations of a chunk at most; more only where the least width, 8 samples, needs more."""
 
 
 @dataclass(frozen=True)
@@ -45,12 +47,13 @@ class Plan:
         The parts of the discretisation error with the levels that measure them.
     allocation : Allocation
     probes : int
-        Number of the first samples that are also solved at the extra levels.
+        Number of the first samples that are also solved, with all their noise paths, at the extra levels.
     probe_share : float
         Operations of the extra levels over those of the main samples.
-    operations : mapping of level label to operations of one sample
+    operations : mapping of level label to operations of one realization
     chunk_width : int
         Samples of a chunk, a multiple of 8; the extra levels take narrower ones where there are fewer probes.
+        A chunk holds all noise paths of its samples.
     peak_references : mapping of quantity to position
     moment_times, kept_times : tuple of float
         Model times of the field's mean, standard deviation and bands, and of the stored fields.
@@ -60,6 +63,11 @@ class Plan:
         By part of the kernel: operator, its error and the reason for the choice.
     notes : tuple of str
         What the user must know of these choices.
+    noise : NoiseModes or None
+        The noise modes that are kept; None without noise.
+    probe_demand : float
+        Least number of probes over that of samples, so that the noise of the error split stays small; 0
+        without noise.
     """
 
     digest: str
@@ -79,11 +87,28 @@ class Plan:
     data_folder: str
     operators: tuple[Mapping[str, Any], ...] = ()
     notes: tuple[str, ...] = ()
+    noise: NoiseModes | None = None
+    probe_demand: float = 0.0
 
     @property
     def samples(self) -> int:
         """Parameter samples of the run."""
         return self.allocation.samples
+
+    @property
+    def repeats(self) -> int:
+        """Noise paths of each parameter sample."""
+        return self.allocation.repeats
+
+    @property
+    def realizations(self) -> int:
+        """All noise paths of all parameter samples."""
+        return self.allocation.realizations
+
+    @property
+    def probe_realizations(self) -> int:
+        """All noise paths of the probes."""
+        return self.probes * self.repeats
 
     @property
     def extra_levels(self) -> tuple[Level, ...]:
@@ -96,40 +121,47 @@ def extra_levels(path: tuple[PathPart, ...], level: Level) -> tuple[Level, ...]:
     return tuple(sorted({one for part in path for one in part.levels} - {level}))
 
 
-def default_width(nodes: int, samples: int, matrix_numbers: int = 0) -> int:
+def default_width(nodes: int, samples: int, matrix_numbers: int = 0, repeats: int = 1) -> int:
     """Samples of a chunk: about 2^15 numbers of state, a multiple of 8, all chunks about equally long.
 
     Parameters
     ----------
     nodes : of the run's level
     samples : of the run
-    matrix_numbers : numbers of the kernel matrix that a sample has of its own at the finest level
+    matrix_numbers : numbers of the kernel matrix that a realization has of its own at the finest level
+    repeats : noise paths of each sample
     """
-    least, largest = WIDTHS
-    affordable = MATRIX_NUMBERS // max(matrix_numbers, 1)
-    width = min(max(min(CHUNK_NUMBERS // nodes, affordable) // LANE * LANE, least), largest)
+    affordable = min(CHUNK_NUMBERS // nodes, MATRIX_NUMBERS // max(matrix_numbers, 1), LARGEST)
+    width = max(affordable // repeats // LANE * LANE, LANE)
     chunks = -(-samples // width)
     return -(-samples // (chunks * LANE)) * LANE
 
 
 def count_probes(
-    model: ForwardModel, level: Level, path: tuple[PathPart, ...], samples: int
+    model: ForwardModel, level: Level, path: tuple[PathPart, ...], samples: int, demand: float = 0.0
 ) -> tuple[int, float]:
-    """Number of probes and the share of the extra levels in the main cost, from counted operations."""
+    """Number of probes and the share of the extra levels in the main cost, from counted operations.
+
+    Parameters
+    ----------
+    model : ForwardModel
+    level : the run's
+    path : of the run's level
+    samples : parameter samples
+    demand : least number of probes over that of samples
+    """
     extra = sum(model.operations(one) for one in extra_levels(path, level))
     if extra == 0.0:
         return 0, 0.0
     main = model.operations(level)
-    probes = number_of_probes(samples, main, extra)
+    probes = number_of_probes(samples, main, extra, least_number(samples, demand))
     return probes, share_of_probes(probes, samples, main, extra)
 
 
-def plan_notes(
-    model: ForwardModel, allocation: Allocation, probes: int, probe_share: float
-) -> tuple[str, ...]:
+def plan_notes(allocation: Allocation, probes: int, probe_share: float) -> tuple[str, ...]:
     """What a user must know of the number of samples and probes."""
     notes = [allocation.note] if allocation.note else []
-    if probe_share > SHARE and model.inputs:
+    if probe_share > SHARE and allocation.realizations > 1:
         notes.append(
             f"the error split solves {probes} of the {allocation.samples} samples at finer and coarser levels "
             f"too, which costs {100 * probe_share:.0f} % of the samples themselves; more samples make it a "
@@ -140,13 +172,13 @@ def plan_notes(
 
 def with_more_samples(plan: Plan, model: ForwardModel, allocation: Allocation) -> Plan:
     """The plan of an extension: more samples, the probes anew for their number, nothing else anew."""
-    probes, share = count_probes(model, plan.level, plan.path, allocation.samples)
+    probes, share = count_probes(model, plan.level, plan.path, allocation.samples, plan.probe_demand)
     return replace(
         plan,
         allocation=allocation,
         probes=probes,
         probe_share=share,
-        notes=plan_notes(model, allocation, probes, share),
+        notes=plan_notes(allocation, probes, share),
     )
 
 
@@ -175,7 +207,7 @@ def read_plan(layout: Layout) -> Plan:
 
 
 def _part_as_json(part: PathPart) -> dict[str, Any]:
-    return {**asdict(part), "peaks": sorted(part.peaks)}
+    return {**asdict(part), "peaks": sorted(part.peaks), "passages": sorted(part.passages)}
 
 
 def _from_json(document: Mapping[str, Any]) -> Plan:
@@ -185,6 +217,7 @@ def _from_json(document: Mapping[str, Any]) -> Plan:
     content["level"] = Level(**content["level"])
     content["path"] = tuple(_part_from_json(part) for part in content["path"])
     content["allocation"] = Allocation(**content["allocation"])
+    content["noise"] = None if content["noise"] is None else NoiseModes(**content["noise"])
     for name in ("schedule_times", "moment_times", "kept_times", "operators", "notes"):
         content[name] = tuple(content[name])
     return Plan(**content)
@@ -193,7 +226,9 @@ def _from_json(document: Mapping[str, Any]) -> Plan:
 def _part_from_json(document: Mapping[str, Any]) -> PathPart:
     content = dict(document)
     for name in ("pair", "coarse_pair"):
-        first, second = content[name]
-        content[name] = (Level(**first), Level(**second))
-    content["peaks"] = frozenset(content["peaks"])
+        if content[name] is not None:
+            first, second = content[name]
+            content[name] = (Level(**first), Level(**second))
+    for name in ("peaks", "passages"):
+        content[name] = frozenset(content[name])
     return PathPart(**content)

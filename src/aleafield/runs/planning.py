@@ -42,12 +42,12 @@ def make_plan(study: Study, chunk_width: int | None = None) -> tuple[Plan, Field
     """
     if chunk_width is not None and (chunk_width < LANE or chunk_width % LANE):
         raise InputError("chunk_width", f"{chunk_width} given", f"a positive multiple of {LANE} is needed")
-    allocation = allocate(study.sampling, len(study.inputs))
+    allocation = allocate(study.sampling, len(study.inputs), study.equation.noise is not None)
     refuse_impossible_samples(study, design_of(study, allocation), allocation.samples)
     choices = make_choices(study, allocation)
     model = field_model(study, allocation, choices)
     level, path = model.level, model.path(model.level)
-    probes, share = count_probes(model, level, path, allocation.samples)
+    probes, share = count_probes(model, level, path, allocation.samples, choices.probe_demand)
     levels = {one for part in path for one in part.levels} | {level}
     duration = study.equation.dynamics.duration
     plan = Plan(
@@ -62,20 +62,28 @@ def make_plan(study: Study, chunk_width: int | None = None) -> tuple[Plan, Field
         probe_share=share,
         operations={one.label: model.operations(one) for one in sorted(levels)},
         chunk_width=chunk_width
-        or default_width(level.nodes, allocation.samples, max(matrix_numbers(model, one) for one in levels)),
+        or default_width(
+            level.nodes,
+            allocation.samples,
+            max(matrix_numbers(model, one) for one in levels),
+            allocation.repeats,
+        ),
         peak_references=choices.peak_references,
         moment_times=tuple(np.linspace(0.0, duration, MOMENT_TIMES).tolist()),
         kept_times=kept_times(study.keep, np.asarray(model.schedule().times).tolist()),
         data_folder=data_folder(study.source.data_files),
         operators=operators_of(model),
-        notes=(*choices.notes, *plan_notes(model, allocation, probes, share)),
+        notes=(*choices.notes, *plan_notes(allocation, probes, share)),
+        noise=choices.noise,
+        probe_demand=choices.probe_demand,
     )
     return plan, model
 
 
 def planned_model(study: Study, plan: Plan) -> FieldModel:
     """The model of a plan that was made before: nothing is decided anew."""
-    return field_model(study, plan.allocation, Choices(plan.time_step, plan.peak_references))
+    choices = Choices(plan.time_step, plan.peak_references, noise=plan.noise, probe_demand=plan.probe_demand)
+    return field_model(study, plan.allocation, choices)
 
 
 def kept_times(keep: Keep, steps: list[float]) -> tuple[float, ...]:
@@ -96,7 +104,7 @@ def kept_times(keep: Keep, steps: list[float]) -> tuple[float, ...]:
 
 
 def matrix_numbers(model: FieldModel, level: Level) -> int:
-    """Numbers of the kernel matrix that every sample has of its own at a level; 0 where it has none."""
+    """Numbers of the kernel matrix that every realization has of its own at a level; 0 where it has none."""
     discretisation = model.discretisation(level)
     own = discretisation.operator_choice.name == "dense per sample"
     return len(discretisation.test_rule.points) * len(discretisation.rule.points) if own else 0

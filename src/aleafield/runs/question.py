@@ -2,10 +2,12 @@
 
 from __future__ import annotations
 
+from dataclasses import asdict
 from datetime import UTC, datetime
 
 from aleafield.archive.description import Axes, Description, InputColumn, QuantityColumn
 from aleafield.arrays import FloatArray
+from aleafield.quantities.displacement import Wandering
 from aleafield.runs.execution import Cost, Question
 from aleafield.runs.plan_file import Plan
 from aleafield.runs.summary import summarise
@@ -32,10 +34,18 @@ def describe(study: Study, plan: Plan, cost: Cost, x: FloatArray) -> Description
     return Description(
         inputs=tuple(InputColumn(entry.path, entry.units, entry.law.text) for entry in study.inputs),
         quantities=tuple(
-            QuantityColumn(q.name, study.quantity_units(q), q.measure, q.may_not_occur)
+            QuantityColumn(
+                q.name,
+                study.quantity_units(q),
+                q.measure,
+                q.may_not_occur,
+                "displacement since the start" if isinstance(q, Wandering) else "",
+                study.units.derived(q.history_dimension),
+            )
             for q in study.quantities
         ),
         samples=plan.samples,
+        repeats=plan.repeats,
         replicates=plan.allocation.replicates,
         level=plan.level,
         probes=plan.probes,
@@ -60,7 +70,7 @@ def _provenance(study: Study, plan: Plan, cost: Cost) -> dict[str, object]:
         "title": study.title,
         "comment": study.about or None,
         "source": source,
-        "history": f"{now}: {source}, {plan.samples} samples at level {plan.level.label}",
+        "history": f"{now}: {source}, {_how_many(plan)} at level {plan.level.label}",
         "institution": "not stated",
         "references": "see report.html beside this file",
         "date_created": now,
@@ -77,8 +87,14 @@ def _provenance(study: Study, plan: Plan, cost: Cost) -> dict[str, object]:
             "quadrature_points": plan.level.quadrature_points,
             "time_step": plan.time_step,
         },
+        "noise": None if plan.noise is None else asdict(plan.noise),
         "scheme_level": plan.level.label,
         "sampling_method": plan.allocation.method,
         "wall_time_s": cost.wall,
         "processor_time_s": cost.processor,
     }
+
+
+def _how_many(plan: Plan) -> str:
+    paths = f" with {plan.repeats} noise paths each" if plan.repeats > 1 else ""
+    return f"{plan.samples} samples{paths}"

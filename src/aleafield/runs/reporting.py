@@ -9,9 +9,10 @@ import numpy as np
 
 from aleafield.archive.durable import make_folder, remove, write_bytes
 from aleafield.archive.ensemble_reader import EnsembleReader, reading
-from aleafield.archive.field_state import BAND_SAMPLES
+from aleafield.archive.field_state import BAND_SAMPLES, FAN_REALIZATIONS
 from aleafield.archive.layout import Layout
-from aleafield.report.data import FieldRecord, Provenance, ReportData
+from aleafield.quantities.displacement import Wandering
+from aleafield.report.data import FieldRecord, HistoryRecord, Provenance, ReportData
 from aleafield.report.figures import figure_files, report_figures
 from aleafield.report.findings import quantity_findings
 from aleafield.report.page import page
@@ -44,6 +45,7 @@ def report_data(study: Study, plan: Plan, summary: Mapping[str, Any], reader: En
         provenance=Provenance(study.seed, study.digest, plan.versions),
         values={name: reader.values(name)[:MOST_VALUES].copy() for name in reader.quantities},
         fields=_fields(reader),
+        histories=_histories(study, reader),
     )
 
 
@@ -66,6 +68,24 @@ def write_report(layout: Layout, study: Study, plan: Plan, summary: Mapping[str,
         if path.name not in files:
             remove(path)
     write_bytes(layout.report, page(data, figures).encode())
+
+
+def _histories(study: Study, reader: EnsembleReader) -> dict[str, HistoryRecord]:
+    """The quantities that were followed in time."""
+    found = {}
+    for quantity in study.quantities:
+        history = reader.histories(quantity.name)
+        if history is not None:
+            fan, paths = history
+            found[quantity.name] = HistoryRecord(
+                followed="displacement since t = 0" if isinstance(quantity, Wandering) else "",
+                units=study.units.derived(quantity.history_dimension),
+                t=reader.axis("t_moments"),
+                fan=fan,
+                paths=paths,
+                realizations=min(len(reader), FAN_REALIZATIONS),
+            )
+    return found
 
 
 def _fields(reader: EnsembleReader) -> FieldRecord | None:

@@ -11,7 +11,7 @@ from aleafield.arrays import FloatArray
 from aleafield.field.equation import FieldEquation
 from aleafield.field.kernels import CosineKernel, ExponentialKernel, FormulaKernel, GaussianKernel
 from aleafield.projection.discretisation import Discretisation
-from aleafield.stepping.runge_kutta import stability_bound
+from aleafield.stepping import euler_maruyama, runge_kutta
 
 LOST = 1e-6
 """Share of a kernel beyond the end of an interval that counts as nothing."""
@@ -21,7 +21,7 @@ COARSE = 0.5
 
 @dataclass(frozen=True)
 class Stability:
-    """Bound of the time step of the Runge-Kutta method, over some samples.
+    """Bound of the time step of the run's method, over some samples.
 
     Attributes
     ----------
@@ -47,10 +47,25 @@ def stability(discretisation: Discretisation, bound: FieldEquation) -> Stability
     time_constant = np.asarray(bound.dynamics.time_constant, dtype=np.float64)
     gain = discretisation.gain(bound)
     return Stability(
-        largest_step=float(np.min(stability_bound(time_constant, 0.0 if gain is None else gain))),
+        largest_step=float(np.min(stable_step(bound, gain))),
         gain=None if gain is None else float(np.max(gain)),
         time_constant=float(np.min(time_constant)),
     )
+
+
+def stable_step(bound: FieldEquation, gain: FloatArray | None) -> FloatArray:
+    """Largest stable step for each sample of a bound equation, () or (S,), units of time.
+
+    Of Euler-Maruyama where there is noise, else of Runge-Kutta.
+
+    Parameters
+    ----------
+    bound : FieldEquation
+    gain : size of the linearised integral term, () or (S,); None where it is not known: then the bound of the decay
+    """
+    limit = runge_kutta.stability_bound if bound.noise is None else euler_maruyama.stability_bound
+    time_constant = np.asarray(bound.dynamics.time_constant, dtype=np.float64)
+    return limit(time_constant, np.zeros(()) if gain is None else gain)
 
 
 @dataclass(frozen=True)

@@ -59,13 +59,15 @@ class Result:
 
         return "\n".join(result_lines(self.summary))
 
-    def sample(self, index: int) -> xarray.Dataset:
-        """Solve one sample again and keep its field at every step (at most 200 equal times).
+    def sample(self, index: int, repeat: int = 0) -> xarray.Dataset:
+        """Solve one realization again and keep its field at every step (at most 200 equal times).
 
         Parameters
         ----------
         index : int
-            Sample index, from 0; equal to the bit to the sample of the run.
+            Index of the parameter sample, from 0; equal to the bit to the sample of the run.
+        repeat : int
+            Which of its noise paths, from 0.
 
         Returns
         -------
@@ -74,7 +76,7 @@ class Result:
         Raises
         ------
         InputError
-            When the run has no such sample.
+            When the run has no such sample or noise path.
         """
         import xarray
 
@@ -82,12 +84,16 @@ class Result:
             raise InputError(
                 "index", f"{index} given", f"a sample from 0 to {self._plan.samples - 1} is needed"
             )
+        if not 0 <= repeat < self._plan.repeats:
+            needed = f"a noise path from 0 to {self._plan.repeats - 1} is needed"
+            raise InputError("repeat", f"{repeat} given", needed)
         model = planned_model(self.study, self._plan)
         times = model.schedule().times
         if len(times) > MOST_STEPS_KEPT + 1:
             times = np.linspace(0.0, times[-1], MOST_STEPS_KEPT + 1)
         level = self._plan.level
-        records = model.evaluate(level, np.full(8, index, dtype=np.int64), tuple(times)).first(1)
+        realization = np.full(8, index * self._plan.repeats + repeat, dtype=np.int64)
+        records = model.evaluate(level, realization, tuple(times)).first(1)
         assert records.fields is not None
         units = self.study.units
         coordinates: dict[str, Any] = {
@@ -104,7 +110,8 @@ class Result:
             value = records.values[quantity.name][0]
             attributes = {"units": self.study.quantity_units(quantity), "long_name": quantity.measure}
             variables[quantity.name] = ((), value, attributes)
-        return xarray.Dataset(variables, coordinates, {"title": self.study.title, "sample": index})
+        about = {"title": self.study.title, "sample": index, "repeat": repeat}
+        return xarray.Dataset(variables, coordinates, about)
 
     def __repr__(self) -> str:
         return self.table

@@ -78,7 +78,8 @@ def run(
         Worker processes; default the cores at hand.  No value depends on it.
     progress : Progress, optional
     chunk_width : int, optional
-        Samples of a chunk, a multiple of 8; a choice of the plan, so it counts at the first call only.
+        Samples of a chunk, with all their noise paths, a multiple of 8; a choice of the plan, so it counts at
+        the first call only.
 
     Raises
     ------

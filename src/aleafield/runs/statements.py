@@ -3,11 +3,14 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, replace
+from typing import NamedTuple
 
 import numpy as np
+from numpy.typing import NDArray
 
 from aleafield.accounting import (
     MESH,
+    Clusters,
     LevelValues,
     Pair,
     PartDifferences,
@@ -36,8 +39,31 @@ class Asked:
     confidence: float
 
 
+class Blocks(NamedTuple):
+    """The independent blocks that realizations come in, as a `Sample` takes them."""
+
+    replicate: NDArray[np.int32] | None = None
+    replicates: int = 1
+    clustered: bool = False
+
+
+def blocks_of(reader: EnsembleReader, realizations: int | None = None) -> Blocks:
+    """The blocks of the first realizations, default all.
+
+    Scramblings; without them parameter samples with all their noise paths; none where all realizations are
+    independent: without repeats, and where nothing but the noise is uncertain.
+    """
+    replicate = reader.numbers("replicate", 0, realizations)
+    if replicate.any():
+        return Blocks(replicate, int(replicate.max()) + 1)
+    if reader.inputs and reader.repeats > 1:
+        sample = reader.numbers("sample", 0, realizations)
+        return Blocks(sample, int(sample[-1]) + 1, clustered=True)
+    return Blocks()
+
+
 def statements_of(
-    reader: EnsembleReader, plan: Plan, quantity: str, asked: Asked, *, certain: bool, round_off: float = 0.0
+    reader: EnsembleReader, plan: Plan, quantity: str, asked: Asked, *, round_off: float = 0.0
 ) -> QuantityStatements:
     """The statements of one quantity; memory holds its columns and no others.
 
@@ -48,26 +74,27 @@ def statements_of(
     quantity : str
         Its name.
     asked : Asked
-    certain : bool
-        Whether there is neither input nor noise.
     round_off : float
         As in `PartDifferences`.
     """
-    replicates = plan.allocation.replicates
+    noisy = plan.noise is not None
     sample = Sample.of(
         reader.values(quantity),
         margin=reader.margins(quantity),
         valid=reader.valid(),
-        replicate=reader.replicate() if replicates > 1 else None,
-        replicates=replicates,
-        certain=certain,
+        certain=not reader.inputs and not noisy,
+        **blocks_of(reader)._asdict(),
     )
     levels = _LevelColumns(reader, plan, quantity, sample)
     parts = [
-        _differences(part, levels, plan.probes, quantity, round_off)
-        for part in (*plan.path, *_mesh(plan.path))
+        _differences(part, levels, plan, quantity, round_off) for part in (*plan.path, *_mesh(plan.path))
     ]
-    return quantity_statements(sample, parts, asked.quantiles, asked.exceed, asked.confidence)
+    clusters = (
+        Clusters(reader.numbers("sample").astype(np.int64), plan.repeats, bool(reader.inputs))
+        if noisy
+        else None
+    )
+    return quantity_statements(sample, parts, asked.quantiles, asked.exceed, asked.confidence, clusters)
 
 
 class _LevelColumns:
@@ -85,7 +112,7 @@ class _LevelColumns:
 
     def _read(self, level: Level) -> LevelValues:
         if level == self._plan.level:
-            cut = slice(0, self._plan.probes)
+            cut = slice(0, self._plan.probe_realizations)
             margin = None if self._sample.margin is None else self._sample.margin[cut]
             return LevelValues.of(self._sample.values[cut], margin, self._sample.valid[cut])
         label = level.label
@@ -108,6 +135,8 @@ def _mesh(path: tuple[PathPart, ...]) -> tuple[PathPart, ...]:
     alike = quadrature.expected_order == space.expected_order
     if not alike or quadrature.observed_only != space.observed_only:
         return ()
+    if quadrature.coarse_pair is None or space.coarse_pair is None:
+        return ()
     return (
         replace(
             space,
@@ -119,13 +148,14 @@ def _mesh(path: tuple[PathPart, ...]) -> tuple[PathPart, ...]:
 
 
 def _differences(
-    part: PathPart, levels: _LevelColumns, probes: int, name: str, round_off: float
+    part: PathPart, levels: _LevelColumns, plan: Plan, name: str, round_off: float
 ) -> PartDifferences:
+    coarse = None if part.coarse_pair is None else Pair(*(levels.at(level) for level in part.coarse_pair))
     return PartDifferences(
         name=part.name,
-        probes=np.arange(probes, dtype=np.int64),
+        probes=np.arange(plan.probe_realizations, dtype=np.int64),
         fine=Pair(*(levels.at(level) for level in part.pair)),
-        coarse=Pair(*(levels.at(level) for level in part.coarse_pair)),
+        coarse=coarse,
         ratio_fine=part.ratio,
         ratio_coarse=part.coarse_ratio,
         expected_order=part.expected_order,
@@ -133,5 +163,10 @@ def _differences(
         least_factor=part.least_factor.get(name, 1.0),
         peak=name in part.peaks,
         erratic=part.erratic,
+        known_factor=part.known_factor,
+        open_side=part.open_side.get(name),
+        open_occurrence=part.open_occurrence.get(name),
+        passage=name in part.passages,
+        noisy=plan.noise is not None,
         round_off=round_off,
     )

@@ -16,19 +16,20 @@ from aleafield.geometry import Domain
 from aleafield.quantities import Quantity
 from aleafield.report.rounding import percent
 from aleafield.runs.execution import Cost
+from aleafield.runs.field_statements import field_entries
 from aleafield.runs.plan_file import Plan
-from aleafield.runs.remarks import remarks
+from aleafield.runs.remarks import remarks, runs_word
 from aleafield.runs.statements import Asked, statements_of
 from aleafield.study.study import Study
 from aleafield.units import LENGTH
 
 SCHEMA = 1
 MOST_LISTED = 100
-"""Failed samples that are listed one by one; all are flagged in ensemble.nc and ensemble.csv."""
+"""Failed realizations that are listed one by one; all are flagged in ensemble.nc and ensemble.csv."""
 MOST_NAMED = 3
-"""Failed samples that the message of a run names."""
+"""Failed realizations that the message of a run names."""
 FAILED_SHARE = 0.05
-"""Above this share of failed samples the run does not meet what every study demands."""
+"""Above this share of failed realizations the run does not meet what every study demands."""
 
 
 def summarise(reader: EnsembleReader, study: Study, plan: Plan, cost: Cost) -> Summary:
@@ -37,11 +38,12 @@ def summarise(reader: EnsembleReader, study: Study, plan: Plan, cost: Cost) -> S
     Quantities are read one at a time, so that memory holds the columns of one.
     """
     quantities = {quantity.name: _quantity(reader, study, plan, quantity) for quantity in study.quantities}
-    failed = _failed(reader)
+    failed = _failed(reader, plan.repeats)
     return {
         "schema": SCHEMA,
         "title": study.title,
         "quantities": quantities,
+        "field": field_entries(reader, study, plan),
         "inputs": {
             entry.path: {
                 "law": entry.law.text,
@@ -60,6 +62,7 @@ def summarise(reader: EnsembleReader, study: Study, plan: Plan, cost: Cost) -> S
             "measured_s": cost.wall,
             "processor_s": cost.processor,
             "samples": plan.samples,
+            "realizations": plan.realizations,
             "split_share": plan.probe_share / (1.0 + plan.probe_share),
         },
         "failed": failed,
@@ -74,11 +77,12 @@ def unmet(study: Study, summary: Mapping[str, Any]) -> tuple[str, ...]:
     aim = summary["aim"]
     if aim is not None and not aim["met"]:
         found.append(f"the aim is missed: {aim['reason']}")
-    failed, samples = summary["failed"]["count"], summary["cost"]["samples"]
-    if failed > FAILED_SHARE * samples:
+    failed, cost = summary["failed"]["count"], summary["cost"]
+    realizations, repeats = cost["realizations"], cost["realizations"] // cost["samples"]
+    if failed > FAILED_SHARE * realizations:
         found.append(
-            f"{failed} of {samples} samples failed, more than {100 * FAILED_SHARE:.0f} %: "
-            f"{_first_failures(summary['failed']['list'])}; summary.json lists "
+            f"{failed} of {realizations} {runs_word(repeats)} failed, more than {100 * FAILED_SHARE:.0f} %: "
+            f"{_first_failures(summary['failed']['list'], repeats)}; summary.json lists "
             f"{summary['failed']['listed']} of them with their inputs"
         )
     for name, entry in summary["quantities"].items():
@@ -92,14 +96,17 @@ def unmet(study: Study, summary: Mapping[str, Any]) -> tuple[str, ...]:
 
 
 def _undetermined(statement: Mapping[str, Any]) -> bool:
-    """Whether a statement lacks its value, its interval or its total."""
-    return None in (statement["value"], statement["interval"], statement["error"]["total"])
+    """Whether a statement lacks its value or its interval; an interval with one open end is a bound."""
+    interval = statement["interval"]
+    return statement["value"] is None or interval is None or list(interval) == [None, None]
 
 
-def _first_failures(entries: Sequence[Mapping[str, Any]]) -> str:
-    """The first failed samples in words."""
+def _first_failures(entries: Sequence[Mapping[str, Any]], repeats: int) -> str:
+    """The first failed realizations in words."""
     named = [
-        f"sample {entry['sample']} ({entry['reason'].replace('_', ' ')}"
+        f"sample {entry['sample']}"
+        + (f", repeat {entry['repeat']}" if repeats > 1 else "")
+        + f" ({entry['reason'].replace('_', ' ')}"
         + ("" if entry["time"] is None else f" at t = {entry['time']:.4g}")
         + ")"
         for entry in entries[:MOST_NAMED]
@@ -114,7 +121,6 @@ def _quantity(reader: EnsembleReader, study: Study, plan: Plan, quantity: Quanti
         plan,
         quantity.name,
         asked,
-        certain=not study.inputs,
         round_off=_round_off(study.equation.domain, quantity),
     )
     return statements.as_json(study.quantity_units(quantity))
@@ -142,7 +148,11 @@ def _scheme(study: Study, plan: Plan) -> dict[str, object]:
         "operators": [dict(operator) for operator in plan.operators],
         "parts": {
             part.name: {
-                "levels": [[level.label for level in pair] for pair in (part.coarse_pair, part.pair)],
+                "levels": [
+                    [level.label for level in pair]
+                    for pair in (part.coarse_pair, part.pair)
+                    if pair is not None
+                ],
                 "expected_order": part.expected_order,
                 "proven": not part.observed_only,
                 "note": part.note,
@@ -150,18 +160,34 @@ def _scheme(study: Study, plan: Plan) -> dict[str, object]:
             for part in plan.path
         },
         "probes": plan.probes,
+        "noise": _noise(study, plan),
+    }
+
+
+def _noise(study: Study, plan: Plan) -> dict[str, object] | None:
+    """The form of the correlation and the modes that are kept; None without noise."""
+    if study.equation.noise is None or plan.noise is None:
+        return None
+    return {
+        "correlation": study.equation.noise.correlation.name,
+        "modes": plan.noise.modes,
+        "ring_length": plan.noise.length,
+        "dropped_share": plan.noise.dropped,
+        "dropped_share_finer": plan.noise.dropped_finer,
+        "image_error": plan.noise.image_error,
+        "note": plan.noise.note,
     }
 
 
 def _sampling(study: Study, plan: Plan) -> dict[str, object] | None:
-    if not study.inputs:
+    if not study.inputs and plan.noise is None:
         return None
     return {
         "method": plan.allocation.method,
         "samples": plan.samples,
         "replicates": plan.allocation.replicates,
         "points_per_replicate": plan.allocation.points_per_replicate,
-        "noise_repeats": 1,
+        "noise_repeats": plan.repeats,
     }
 
 
@@ -177,7 +203,9 @@ def _aim(study: Study, quantities: Mapping[str, Mapping[str, Any]]) -> dict[str,
     elif mean["value"] is not None:
         allowed = aim.tolerance * abs(mean["value"])
     met = total is not None and allowed is not None and total <= allowed
-    if total is None:
+    if total is None and mean["interval"] is not None:
+        reason = f"the error of the mean of {aim.quantity} is bounded on one side only"
+    elif total is None:
         reason = f"the error of the mean of {aim.quantity} is not determined"
     else:
         reason = f"the mean of {aim.quantity} is known to {total:.3g}, {aim.text} demands {allowed:.3g}"
@@ -191,7 +219,7 @@ def _aim(study: Study, quantities: Mapping[str, Mapping[str, Any]]) -> dict[str,
     }
 
 
-def _failed(reader: EnsembleReader) -> dict[str, object]:
+def _failed(reader: EnsembleReader, repeats: int) -> dict[str, object]:
     which = np.flatnonzero(~reader.valid())
     codes = reader.failed()[which]
     reasons = {
@@ -203,12 +231,13 @@ def _failed(reader: EnsembleReader) -> dict[str, object]:
     columns = {path: reader.input(path)[listed] for path in reader.inputs}
     entries = [
         {
-            "sample": int(sample),
+            "sample": int(realization) // repeats,
+            "repeat": int(realization) % repeats,
             "reason": FAILURE_MEANINGS[int(codes[row])],
             "time": float(times[row]) if np.isfinite(times[row]) else None,
             "inputs": {path: float(column[row]) for path, column in columns.items()},
         }
-        for row, sample in enumerate(listed)
+        for row, realization in enumerate(listed)
     ]
     return {"count": len(which), "reasons": reasons, "listed": len(listed), "list": entries}
 
@@ -217,12 +246,13 @@ def _failure_warnings(failed: Mapping[str, Any], plan: Plan) -> list[str]:
     count = failed["count"]
     if count == 0:
         return []
-    share = percent(count / plan.samples)
+    word = runs_word(plan.repeats)
+    share = percent(count / plan.realizations)
     reasons = ", ".join(f"{meaning.replace('_', ' ')}: {n}" for meaning, n in failed["reasons"].items())
-    warnings = [f"{count} of {plan.samples} samples failed ({share}: {reasons}); no statistic holds them"]
+    warnings = [f"{count} of {plan.realizations} {word} failed ({share}: {reasons}); no statistic holds them"]
     if failed["listed"] < count:
         warnings.append(
-            f"summary.json lists the first {failed['listed']} of the {count} failed samples; ensemble.nc and "
+            f"summary.json lists the first {failed['listed']} of the {count} failed {word}; ensemble.nc and "
             "ensemble.csv flag all of them, with their inputs"
         )
     return warnings

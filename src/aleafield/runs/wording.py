@@ -9,6 +9,7 @@ from typing import Any
 
 from aleafield.field.formula_term import FormulaTerm
 from aleafield.field.kernels import FormulaKernel, Kernel
+from aleafield.field.noise import Noise
 from aleafield.field.rates import FormulaRate, Rate
 from aleafield.formula import Formula
 from aleafield.geometry import Domain
@@ -18,7 +19,7 @@ from aleafield.report.data import ModelText
 from aleafield.runs.plan_file import Plan
 from aleafield.stepping.schedule import Schedule
 from aleafield.study.study import Study
-from aleafield.units import LENGTH, TIME, Dimension, Units
+from aleafield.units import ACTIVITY, LENGTH, TIME, Dimension, Units
 
 
 def model_text(study: Study, plan: Plan) -> ModelText:
@@ -39,6 +40,10 @@ def model_text(study: Study, plan: Plan) -> ModelText:
         duration=_number(duration, TIME, units),
         integrals=_integrals(resolve(study.scheme, equation)),
         steps=sum(steps),
+        noise=None if equation.noise is None else _noise(equation.noise, plan, equation.domain, units),
+        bridged=()
+        if equation.noise is None
+        else tuple(quantity.name for quantity in study.quantities if quantity.bridged),
     )
 
 
@@ -55,6 +60,15 @@ def _domain(domain: Domain, units: Units) -> str:
     return f"the interval from {domain.low:.10g} to {_number(domain.high, LENGTH, units)}"
 
 
+def _noise(noise: Noise, plan: Plan, domain: Domain, units: Units) -> str:
+    """Correlation, numbers and modes of the noise."""
+    assert plan.noise is not None
+    numbers = [f"strength {_number(noise.strength, ACTIVITY, units)}", _numbers(noise.correlation, units)]
+    form = f"{noise.correlation.name} ({', '.join(text for text in numbers if text)})"
+    ring = "the ring" if domain.periodic else f"a ring of {_number(plan.noise.length, LENGTH, units)}"
+    return f"{form}, {plan.noise.modes} modes of {ring}"
+
+
 def _name(item: object, ending: str) -> str:
     """Name of a form from its class, as in "normal-ogive" from NormalOgiveRate."""
     words = re.findall("[A-Z][a-z]+", type(item).__name__.removesuffix(ending))
@@ -62,7 +76,7 @@ def _name(item: object, ending: str) -> str:
 
 
 def _numbers(item: object, units: Units) -> str:
-    """The numbers of a kernel or a rate by name, as in "strength 1.4 mV, width 1 mm"."""
+    """The numbers of a kernel, a rate or a correlation by name, as in "strength 1.4 mV, width 1 mm"."""
     written = []
     for spec in dataclasses.fields(item):  # type: ignore[arg-type]
         value = getattr(item, spec.name)

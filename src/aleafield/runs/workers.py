@@ -19,7 +19,7 @@ import numpy as np
 
 from aleafield.archive.chunks import Chunk, Task
 from aleafield.archive.description import MOST_KEPT
-from aleafield.archive.field_state import BAND_SAMPLES, FieldState
+from aleafield.archive.field_state import BAND_SAMPLES, FAN_REALIZATIONS, FieldState
 from aleafield.ensemble.forward_model import ForwardModel
 from aleafield.ensemble.level import Level
 from aleafield.ensemble.moments import FieldMoments
@@ -48,7 +48,7 @@ class Solver:
     kept_times: tuple[float, ...]
 
     def __call__(self, task: Task) -> Chunk:
-        """Evaluate a task's samples and sum up their fields."""
+        """Evaluate a task's realizations and sum up their fields."""
         start = time.process_time()
         n_kept = min(max(MOST_KEPT - task.first, 0), task.count) if self.kept_times else 0
         times: list[float] = []
@@ -59,12 +59,16 @@ class Solver:
         if records.fields is not None:
             at_moments = np.searchsorted(times, self.moment_times)
             fields = records.fields[:, at_moments]
-            n_band = max(BAND_SAMPLES - task.first, 0)
-            state = FieldState(FieldMoments.of(fields, records.valid), fields[:n_band].copy())
+            n_band, n_fan = (max(most - task.first, 0) for most in (BAND_SAMPLES, FAN_REALIZATIONS))
+            state = FieldState(
+                FieldMoments.of(fields, records.valid),
+                fields[:n_band].copy(),
+                {name: values[:n_fan, at_moments] for name, values in records.histories.items() if n_fan},
+            )
             if n_kept:
                 kept = records.fields[:n_kept, np.searchsorted(times, self.kept_times)]
         seconds = time.process_time() - start
-        return Chunk(task.first, replace(records, fields=None), state, kept, seconds)
+        return Chunk(task.first, replace(records, fields=None, histories={}), state, kept, seconds)
 
 
 def solved(solver: Solver, tasks: Sequence[Task], workers: int) -> Generator[tuple[Task, Chunk]]:

@@ -17,7 +17,10 @@ class SamplingRequest:
     method : "auto", "monte carlo" or "quasi-monte carlo"
     samples : int
         Parameter samples asked for; `allocation` rounds them where the method needs it.
+    noise_repeats : int
+        Noise paths of each parameter sample.
     """
 
     method: Literal["auto", "monte carlo", "quasi-monte carlo"] = "auto"
     samples: int = 1024
+    noise_repeats: int = 1

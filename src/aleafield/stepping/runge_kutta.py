@@ -8,6 +8,7 @@ from itertools import pairwise
 import numpy as np
 
 from aleafield.arrays import FloatArray
+from aleafield.stepping.failure import freeze
 from aleafield.stepping.schedule import Schedule
 from aleafield.stepping.system import SemiDiscreteSystem, StepObserver
 from aleafield.stepping.view import StepView
@@ -30,7 +31,7 @@ def stability_bound(time_constant: float | FloatArray, gain: float | FloatArray)
 
 
 def integrate(
-    system: SemiDiscreteSystem, schedule: Schedule, observers: Sequence[StepObserver]
+    system: SemiDiscreteSystem, schedule: Schedule, observers: Sequence[StepObserver[StepView]]
 ) -> FloatArray:
     """Follow a batch through the schedule.
 
@@ -60,7 +61,7 @@ def integrate(
     with np.errstate(all="ignore"):
         u = system.initial()
         failed_at = np.full(len(u), np.nan)
-        _freeze(failed_at, times[0], u)
+        freeze(failed_at, times[0], u)
         for observer in observers:
             observer.start(times[0], u)
         stage = np.empty_like(u)
@@ -71,7 +72,7 @@ def integrate(
                 slope = system.rate_of_change(start, u, inside)
             u_next = _step(system, (start, inside, end), u, slope, stage)
             slope_next = system.rate_of_change(end, u_next, inside)
-            _freeze(failed_at, end, u_next, slope_next)
+            freeze(failed_at, end, u_next, slope_next)
             view = StepView(start, u, slope, end, u_next, slope_next)
             for observer in observers:
                 observer.step(view)
@@ -107,13 +108,3 @@ def _step(
     third *= length / 6.0
     third += u
     return third
-
-
-def _freeze(failed_at: FloatArray, time: float, *arrays: FloatArray) -> None:
-    """Make rows in which any array is not finite NaN, and note the time where it is the first such event."""
-    finite = np.logical_and.reduce([np.isfinite(array).all(axis=-1) for array in arrays])
-    if finite.all():
-        return
-    failed_at[~finite & np.isnan(failed_at)] = time
-    for array in arrays:
-        array[~finite] = np.nan

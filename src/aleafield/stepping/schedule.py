@@ -96,6 +96,13 @@ class Schedule:
         return np.concatenate([*spans, [self.fixed[-1]]])
 
     @property
+    def base_lengths(self) -> FloatArray:
+        """Lengths of the doubled steps of this schedule of level 0, in time order: noise paths are built on them."""
+        doubled = self.refined(-1)
+        spans = np.diff(np.asarray(doubled.fixed))
+        return np.repeat(spans / doubled.counts, doubled.counts)
+
+    @property
     def longest(self) -> float:
         """Length of the longest step."""
         spans = zip(self.fixed, self.fixed[1:], self.counts, strict=False)

@@ -1,11 +1,13 @@
-"""What a time stepper may know of a semi-discrete field."""
+"""What a time stepper may know of a semi-discrete field, of its noise and of those who watch."""
 
 from __future__ import annotations
 
-from typing import Protocol
+from typing import Protocol, TypeVar
 
 from aleafield.arrays import FloatArray
-from aleafield.stepping.view import StepView
+from aleafield.stepping.view import NoisyStep, StepView
+
+SomeStep = TypeVar("SomeStep", StepView, NoisyStep, contravariant=True)
 
 
 class SemiDiscreteSystem(Protocol):
@@ -29,13 +31,29 @@ class SemiDiscreteSystem(Protocol):
         ...
 
 
-class StepObserver(Protocol):
+class NoisySystem(SemiDiscreteSystem, Protocol):
+    """A system du = F(t, u) dt + G dW with m independent Wiener processes; G may differ from row to row."""
+
+    def noise(self, increments: FloatArray) -> FloatArray:
+        """G times increments (S, m) of the Wiener processes, as a fresh array (S, n); row by row, to the bit."""
+        ...
+
+
+class IncrementSource(Protocol):
+    """Wiener increments over the base steps of a study, each cut into equal sub-steps."""
+
+    def base_step(self, k: int) -> FloatArray:
+        """Those over the sub-steps of base step k, in time order, as a fresh array (sub-steps, S, m)."""
+        ...
+
+
+class StepObserver(Protocol[SomeStep]):
     """Follows the trajectory: the initial state, then every step.  Its arrays are never written again."""
 
     def start(self, t: float, u: FloatArray) -> None:
         """The initial state (S, n) at time t."""
         ...
 
-    def step(self, view: StepView) -> None:
-        """One step, with states and derivatives at both ends."""
+    def step(self, view: SomeStep) -> None:
+        """One step, with states at both ends and what is known between them."""
         ...

@@ -17,6 +17,7 @@ from typing import Any
 from aleafield.errors import InputError
 from aleafield.field.formula_term import FormulaTerm
 from aleafield.field.kernels import CosineKernel, ExponentialKernel, FormulaKernel, GaussianKernel, Kernel
+from aleafield.field.noise import Noise
 from aleafield.field.rates import (
     FormulaRate,
     LinearRate,
@@ -73,6 +74,7 @@ def build_study(
     parameters: Mapping[str, Number] | None = None,
     drive: FormulaTerm | Number = 0.0,
     initial: FormulaTerm | Number = 0.0,
+    noise: Noise | None = None,
     scheme: Mapping[str, Any] | None = None,
     sampling: Mapping[str, Any] | None = None,
     aim: Mapping[str, Any] | None = None,
@@ -96,6 +98,7 @@ def build_study(
     quantities : at least one; a `FunctionQuantity` may hold any Python function of the field
     parameters : named numbers that others use as strings
     drive, initial : a number, the text of a formula, or `term(text, name=value, ..)`
+    noise : noise in the tissue, as `Noise(0.02, GaussianCorrelation(0.5))`
     scheme, sampling, aim, dependence, report, keep, units : as in the study file
     seed : int
     folder : where relative paths of data files start
@@ -121,6 +124,8 @@ def build_study(
     lines += ["", "[rate]", f'form = "{_form(rate, _RATE_FORMS)}"', *_numbers(rate)]
     lines += ["", "[drive]", *_term(drive), "", "[initial]", *_term(initial)]
     lines += ["", "[dynamics]", f"time_constant = {_value(time_constant)}", f"duration = {_value(duration)}"]
+    if noise is not None:
+        lines += ["", "[noise]", *_noise(noise)]
     sections = {
         "scheme": scheme,
         "sampling": sampling,
@@ -209,6 +214,15 @@ def _form(item: Any, forms: Mapping[Any, str]) -> str:
 
 def _kernel(kernel: Kernel) -> list[str]:
     return [f'form = "{_form(kernel, _KERNEL_FORMS)}"', *_numbers(kernel)]
+
+
+def _noise(noise: Noise) -> list[str]:
+    name = noise.correlation.name
+    return [
+        f"strength = {_value(noise.strength)}",
+        f"correlation = {_quoted(name)}",
+        *_numbers(noise.correlation),
+    ]
 
 
 def _domain(domain: Interval | Ring) -> list[str]:

@@ -51,7 +51,7 @@ def refuse_impossible_laws(study: Study) -> None:
 def refuse_impossible_samples(study: Study, design: Design, count: int, block: int = 4096) -> None:
     """Draw the samples 0 .. count - 1 and refuse them where a number of the model comes out impossible.
 
-    What is not finite, and what is not positive where it must be, is impossible.  Memory holds one block.
+    What is not finite, and what has not the sign that it must have, is impossible.  Memory holds one block.
 
     Parameters
     ----------
@@ -73,17 +73,14 @@ def refuse_impossible_samples(study: Study, design: Design, count: int, block: i
         binding = study.equation.binding(inputs)
         for path, bindable in _bindables(study):
             worst = min(
-                bindable.bind(path, binding).impossible_samples(path), key=lambda w: w[1], default=None
+                bindable.bind(path, binding).impossible_samples(path), key=lambda w: w.position, default=None
             )
             if worst is None:
                 continue
-            key, position, value = worst
-            drawn = ", ".join(f"{name} = {float(values[position])!r}" for name, values in inputs.items())
+            drawn = ", ".join(f"{name} = {float(v[worst.position])!r}" for name, v in inputs.items())
             error = InputError(
-                key,
-                f"sample {int(indices[position])} gives {value!r} (inputs: {drawn or 'none'})",
-                "this number must be finite"
-                + (" and positive" if np.isfinite(value) else "")
-                + ": change the expression, or use truncated_normal for its inputs",
+                worst.path,
+                f"sample {int(indices[worst.position])} gives {worst.found} (inputs: {drawn or 'none'})",
+                f"{worst.needed}: change the expression, or use truncated_normal for its inputs",
             )
             raise located(error, study.source.path, study.source.lines)

@@ -96,7 +96,7 @@ class Study:
 
     @property
     def inputs(self) -> tuple[Input, ...]:
-        """All uncertain inputs: parameters, kernel, rate, drive, initial, dynamics, then levels of quantities."""
+        """All uncertain inputs: those of the equation, noise last, then levels of quantities."""
         found = list(self.equation.uncertain())
         for quantity in self.quantities:
             found.extend(quantity.uncertain(f"quantity.{quantity.name}"))

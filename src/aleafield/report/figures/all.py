@@ -11,17 +11,19 @@ import numpy as np
 from aleafield.report.data import ReportData
 from aleafield.report.figures.distribution import distribution
 from aleafield.report.figures.error_split import error_split
+from aleafield.report.figures.fan import fan
 from aleafield.report.figures.field_curves import course, profile
 from aleafield.report.figures.field_maps import mean_map, spread_map
+from aleafield.report.figures.variance_parts import variance_parts
 from aleafield.report.findings import QuantityFindings
 from aleafield.report.svg import Drawing
 
-Section = Literal["error", "field", "distribution"]
+Section = Literal["noise", "error", "time", "field", "distribution"]
 
 
 @dataclass(frozen=True)
 class Figure:
-    """A drawing with its caption; `quantity` is empty for pictures of the field."""
+    """A drawing with its caption; `quantity` is empty for pictures of the field or of all quantities."""
 
     section: Section
     quantity: str
@@ -30,13 +32,19 @@ class Figure:
 
 
 def report_figures(data: ReportData, findings: list[QuantityFindings]) -> list[Figure]:
-    """The error split of every quantity, the field as far as it is stored, every distribution."""
+    """The causes of variance, the error split of every quantity, what is followed in time, the field as far
+    as it is stored, every distribution."""
     names = drawing_names([found.name for found in findings])
     figures = []
+    causes = variance_parts(findings, "variance-causes")
+    if causes is not None:
+        figures.append(Figure("noise", "", causes, _CAUSES_CAPTION))
     for found in findings:
         split = error_split(found, f"error-{names[found.name]}")
         if split is not None:
             figures.append(Figure("error", found.name, split, _split_caption(found)))
+    for found in findings:
+        figures.extend(_fan_figures(data, found, f"fan-{names[found.name]}"))
     figures.extend(_field_figures(data))
     for found in findings:
         values = data.values.get(found.name)
@@ -69,11 +77,36 @@ def drawing_names(quantities: list[str]) -> dict[str, str]:
     return found
 
 
+_CAUSES_CAPTION = (
+    "Each bar is the whole variance of a quantity, cut at the share of the parameters; the mark below the cut is "
+    "its interval."
+)
+
+
+def _fan_figures(data: ReportData, found: QuantityFindings, name: str) -> list[Figure]:
+    record = data.histories.get(found.name)
+    if record is None:
+        return []
+    drawing = fan(name, found.name, record, data.units)
+    if drawing is None:
+        return []
+    caption = (
+        f"Line: median over {record.realizations} realizations; the bands hold the middle 50 % and 90 % of them, "
+        f"time by time. Thin: {len(record.paths)} single realizations."
+    )
+    return [Figure("time", found.name, drawing, caption)]
+
+
 def _split_caption(found: QuantityFindings) -> str:
     return (
         f"Error of each statistic of {found.name}: the whole bar is the total half-width, written at its "
         "end. Bounds on biases add up; the random parts (sampling, noise of the biases) add in quadrature "
         "and share their length by their squares."
+        + (
+            " An arrow marks an open end; the bar before it is the side that is bounded."
+            if any(one.open_side is not None for one in found.all())
+            else ""
+        )
     )
 
 
@@ -90,13 +123,14 @@ def _field_figures(data: ReportData) -> list[Figure]:
     record, units = data.fields, data.units
     if record is None:
         return []
+    runs = "samples" if data.model.noise is None else "realizations"
     bands = (
-        "Mean of u over all samples; the bands hold the middle 50 % and 90 % of "
-        f"{record.band_samples} samples, point by point."
+        f"Mean of u over all {runs}; the bands hold the middle 50 % and 90 % of {record.band_samples} {runs}, "
+        "point by point."
     )
     drawings = (
-        (mean_map(record, units), "Mean of u over space and time, over all samples."),
-        (spread_map(record, units), "Standard deviation of u from sample to sample."),
+        (mean_map(record, units), f"Mean of u over space and time, over all {runs}."),
+        (spread_map(record, units), f"Standard deviation of u over all {runs}."),
         (profile(record, units), bands),
         (course(record, units), bands),
     )

@@ -10,7 +10,8 @@ from aleafield.arrays import FloatArray, IntArray
 from aleafield.report.findings import Finding, QuantityFindings, with_units
 from aleafield.report.markup import element
 from aleafield.report.rounding import typographic
-from aleafield.report.svg import Drawing, Frame, label, labelled, segment, text_width
+from aleafield.report.svg import Drawing, Frame, arrow, label, labelled, segment, text_width
+from aleafield.report.verdict import interval_text
 
 _LEFT, _WIDTH, _HEIGHT = 120.0, 780.0, 220.0
 _ROW = 19.0
@@ -85,14 +86,14 @@ def distribution(findings: QuantityFindings, values: FloatArray, name: str) -> D
     drawing = Drawing(
         name,
         f"Distribution of {findings.name}",
-        f"Histogram of {bars.size} samples between {bars.edges[0]:.4g} and {bars.edges[-1]:.4g}, with "
+        f"Histogram of {bars.size} values between {bars.edges[0]:.4g} and {bars.edges[-1]:.4g}, with "
         f"{len(rows)} estimates and their intervals below it and {len(shown)} levels marked.",
         width=_LEFT + _WIDTH + 28,
         height=strip + 48,
     )
-    drawing.add(*frame.left_axis("share of samples"))
+    drawing.add(*frame.left_axis("share of values"))
     says = [
-        f"{bars.edges[i]:.4g} to {bars.edges[i + 1]:.4g}: {int(count)} of {bars.size} samples"
+        f"{bars.edges[i]:.4g} to {bars.edges[i + 1]:.4g}: {int(count)} of {bars.size} values"
         for i, count in enumerate(bars.counts)
     ]
     lowest = min(shown, default=np.inf)
@@ -130,19 +131,22 @@ def _draw_level(drawing: Drawing, frame: Frame, level: float, found: Finding, y:
 
 
 def _draw_finding(drawing: Drawing, frame: Frame, found: Finding, y: float) -> None:
-    """A dot at the value and a bar over its interval, cut at the frame."""
+    """A dot at the value and a bar over its interval, cut at the frame; an arrow where it is open."""
     assert found.value is not None
     drawing.add(label(frame.left - 10, y + 4, found.name, "quiet", "end"))
     drawing.add(segment(frame.left, y, frame.right, y, "grid"))
+    side = found.open_side
     low, high = (end if end is not None else found.value for end in found.interval)
     low, high = max(low, frame.x_range[0]), min(high, frame.x_range[1])
     if high > low:
         drawing.add(segment(frame.x(low), y, frame.x(high), y, "whisker"))
+    if side is not None:
+        end, direction = (frame.right, 1) if side == "above" else (frame.left, -1)
+        drawing.add(
+            segment(frame.x(found.value), y, end - 6 * direction, y, "open"), arrow(end, y, direction)
+        )
     if frame.holds(found.value):
-        rounded = found.rounded
-        says = f"{found.name}: {typographic(rounded.value)}"
-        if rounded.low is not None and rounded.high is not None:
-            says += f", from {typographic(rounded.low)} to {typographic(rounded.high)}"
+        says = f"{found.name}: {typographic(found.rounded.value)}, {interval_text(found)}"
         drawing.add(
             element("circle", element("title", says), cx=frame.x(found.value), cy=y, r=4, class_="dot")
         )

@@ -6,12 +6,11 @@ import numpy as np
 
 from aleafield.arrays import FloatArray
 from aleafield.report.data import FieldRecord
+from aleafield.report.figures.readings import add_readings
 from aleafield.report.findings import with_units
-from aleafield.report.svg import Drawing, Frame, box, labelled
+from aleafield.report.svg import Drawing, Frame, labelled
 from aleafield.units import Units
 
-_READINGS = 48
-"""Places along a curve that tell their values to the reader who points at them."""
 _POINTS = 400
 """A curve has no more vertices than a screen shows."""
 
@@ -64,16 +63,5 @@ def _curve(
     drawing.add(frame.band(along, bands[1], bands[2], "band inner"))
     drawing.add(frame.curve(along, mean))
     drawing.add(*frame.bottom_axis(labelled(symbol, unit)))
-    _add_readings(drawing, frame, symbol, along, np.stack([mean, bands[0], bands[3]]))
+    add_readings(drawing, frame, symbol, along, np.stack([mean, bands[0], bands[3]]), "mean", "samples")
     return drawing
-
-
-def _add_readings(drawing: Drawing, frame: Frame, symbol: str, along: FloatArray, curves: FloatArray) -> None:
-    """Strips that tell mean and outer band, shape (3, P), to the reader who points at them."""
-    width = frame.width / _READINGS
-    low, high = frame.x_range
-    for number in range(_READINGS):
-        place = low + (high - low) * (number + 0.5) / _READINGS
-        mean, least, most = (float(np.interp(place, along, curve)) for curve in curves)
-        says = f"{symbol} = {place:.3g}: mean {mean:.3g}; 90 % of samples between {least:.3g} and {most:.3g}"
-        drawing.add(box(frame.left + number * width, frame.top, width, frame.height, "probe", says))

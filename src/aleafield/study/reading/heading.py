@@ -11,7 +11,6 @@ SECTIONS = (
     "initial", "dynamics", "noise", "scheme", "quantity", "sampling", "sensitivity", "aim", "report", "keep",
 )  # fmt: skip
 UNBUILT_SECTIONS = {
-    "noise": "take the section out: the field is followed without noise for now",
     "sensitivity": "take the section out; the ensemble file holds all inputs and quantities",
 }
 

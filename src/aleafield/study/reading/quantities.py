@@ -11,6 +11,8 @@ from aleafield.geometry import Domain
 from aleafield.quantities import (
     ActiveWidth,
     At,
+    Displacement,
+    EffectiveDiffusion,
     FormulaQuantity,
     FrontPosition,
     FrontSpeed,
@@ -32,10 +34,6 @@ from aleafield.study.reading.numbers import OUTPUT_NAMES, Numbers
 from aleafield.study.reading.table import Table, shown
 from aleafield.study.reading.terms import read_term
 
-UNBUILT_MEASURES = dict.fromkeys(
-    ("displacement", "effective diffusion"),
-    "it needs a [noise], which is not built yet either; ask for the peak position at two times",
-)
 REDUCTIONS = ("maximum", "minimum", "mean")
 SPACE_REDUCTIONS = ("mean", "maximum", "integral", "value")
 _COMMON = ("name", "measure")
@@ -65,6 +63,8 @@ class QuantityReader:
             "front speed": self._front_speed,
             "time to level": self._time_to_level,
             "spectral power": self._spectral_power,
+            "displacement": self._wandering(Displacement),
+            "effective diffusion": self._wandering(EffectiveDiffusion),
             "formula": self._formula,
         }
 
@@ -86,7 +86,7 @@ class QuantityReader:
             name = _name_of(table, names)
             names.append(name)
             table.path = f"quantity.{name}"
-            measure = table.choice("measure", tuple(self.measures), unbuilt=UNBUILT_MEASURES)
+            measure = table.choice("measure", tuple(self.measures))
             quantity = self.measures[measure](table, name)
             quantity.refuse_domain(self.domain)
             quantity.times(self.duration)
@@ -144,6 +144,15 @@ class QuantityReader:
 
     def _whole(self, measure: Callable[..., Quantity]) -> Callable[[Table, str], Quantity]:
         return lambda table, name: measure(name, when=self.when(table))
+
+    def _wandering(
+        self, measure: type[Displacement | EffectiveDiffusion]
+    ) -> Callable[[Table, str], Quantity]:
+        def read(table: Table, name: str) -> Quantity:
+            table.only((*_COMMON, "between"), f"the measure {measure.measure!r}")
+            return measure(name, self._span(table, "between"))
+
+        return read
 
     def _active_width(self, table: Table, name: str) -> Quantity:
         when = self.when(table, "level")

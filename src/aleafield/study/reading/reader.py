@@ -20,6 +20,7 @@ from aleafield.study.reading.document import Document, load, parse
 from aleafield.study.reading.domain import read_domain
 from aleafield.study.reading.heading import SECTIONS, UNBUILT_SECTIONS, read_about, read_title, read_units
 from aleafield.study.reading.kernel import read_kernel
+from aleafield.study.reading.noise import read_noise, refuse_pointwise
 from aleafield.study.reading.numbers import Numbers
 from aleafield.study.reading.quantities import QuantityReader, refuse_equal_names
 from aleafield.study.reading.rate import read_rate
@@ -82,10 +83,12 @@ def _study(document: Document, extra: tuple[FunctionQuantity, ...]) -> Study:
     parameters = root.table("parameters")
     numbers = Numbers(parameters, folder)
     domain = read_domain(root.table("domain", needed="[domain] says where the field lives"))
+    kernel = read_kernel(root.table("kernel", needed="[kernel] is the connectivity"), numbers)
+    rate = read_rate(root.table("rate", needed="[rate] is the firing rate"), numbers)
     equation = FieldEquation(
         domain=domain,
-        kernel=read_kernel(root.table("kernel", needed="[kernel] is the connectivity"), numbers),
-        rate=read_rate(root.table("rate", needed="[rate] is the firing rate"), numbers),
+        kernel=kernel,
+        rate=rate,
         drive=read_term(root.table("drive"), numbers, ("x", "t")) if "drive" in root else constant_term(0.0),
         initial=read_term(root.table("initial"), numbers, ("x",))
         if "initial" in root
@@ -94,12 +97,14 @@ def _study(document: Document, extra: tuple[FunctionQuantity, ...]) -> Study:
             root.table("dynamics", needed="[dynamics] holds time constant and duration"), numbers
         ),
         parameters=numbers.parameters,
+        noise=read_noise(root.table("noise"), numbers, domain, rate) if "noise" in root else None,
     )
     duration = equation.dynamics.duration
     scheme, pairing = settled(read_scheme(root.table("scheme"), domain, duration), equation)
     reader = QuantityReader(numbers, domain, duration, scheme.nodes)
     quantities = _quantities(root, reader, extra)
     _refuse_overshoot(pairing, quantities)
+    refuse_pointwise(equation.noise, quantities)
     numbers.refuse_unused(parameters)
     names = [quantity.name for quantity in quantities]
     aim, confidence = read_aim(root.table("aim"), names)
@@ -111,7 +116,7 @@ def _study(document: Document, extra: tuple[FunctionQuantity, ...]) -> Study:
         equation=equation,
         scheme=scheme,
         quantities=quantities,
-        sampling=read_sampling(root.table("sampling")),
+        sampling=read_sampling(root.table("sampling"), noisy=equation.noise is not None),
         aim=aim,
         confidence=confidence,
         report=read_report(root.table("report"), names),
@@ -140,7 +145,7 @@ def _quantities(
 def _refuse_overshoot(pairing: Pairing, quantities: tuple[Quantity, ...]) -> None:
     """Refuse the largest and smallest values of an interpolant that overshoots alike on every mesh."""
     for quantity in quantities:
-        if pairing.overshoots and quantity.takes_extremum:
+        if pairing.overshoots and quantity.takes_extremum(pairing.domain):
             raise InputError(
                 quantity.key("measure"),
                 f"{quantity.measure} of a field whose drive or initial state jumps in x, under the "

@@ -19,13 +19,17 @@ UNBUILT_METHODS = {"polynomial chaos": _LATER, "multilevel": _LATER}
 _PER_CENT = re.compile(r"\s*(.+?)\s*%\s*")
 
 
-def read_sampling(table: Table) -> SamplingRequest:
-    """Method and count of samples; auto and 1024 where they are left out.
+def read_sampling(table: Table, noisy: bool) -> SamplingRequest:
+    """Method, count of samples and noise paths of each; auto, 1024 and 1 where they are left out.
+
+    Parameters
+    ----------
+    noisy : whether the study has noise
 
     Raises
     ------
     InputError
-        For methods that are unknown or not built yet, and counts that are no whole numbers.
+        For methods that are unknown or not built yet, counts that are no whole numbers, and repeats of no noise.
     """
     table.only(("method", "samples", "noise_repeats"), "[sampling]")
     method = table.choice("method", METHODS, "auto", UNBUILT_METHODS)
@@ -33,10 +37,11 @@ def read_sampling(table: Table) -> SamplingRequest:
         raise not_built_yet(table.key("samples"), "'auto'", "give a number of samples for now, as 1024")
     samples = table.integer("samples", 1024, least=1)
     repeats = table.integer("noise_repeats", 1, least=1)
-    if repeats > 1:
-        instead = "leave it out: without noise every repeat would be the same"
-        raise not_built_yet(table.key("noise_repeats"), f"noise (here {repeats} repeats of it)", instead)
-    return SamplingRequest(method, samples)  # type: ignore[arg-type]
+    if repeats > 1 and not noisy:
+        found = f"{repeats} noise paths for each sample, and no [noise]"
+        needed = "nothing reads it, every repeat would be the same: take it out, or add a section [noise]"
+        raise InputError(table.key("noise_repeats"), found, needed)
+    return SamplingRequest(method, samples, repeats)  # type: ignore[arg-type]
 
 
 def read_dependence(table: Table) -> Dependence:
