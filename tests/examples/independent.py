@@ -4,7 +4,8 @@ Each takes the inputs of S samples (path -> array (S,)) and gives the quantities
 where they do not occur).  The numbers that the studies hold as certain are written here again.  Integrals are
 Gauss-Legendre or periodic trapezoid sums of smooth functions at more points than the studies have, time is
 left to scipy's adaptive method of order 8, positions are found by bisection in the interpolant; the front is
-followed by its interface equation.
+followed by its interface equation.  The study with noise has a module of its own; its inputs hold the numbers
+"sample" and "repeat" of each realization besides.
 """
 
 from __future__ import annotations
@@ -17,6 +18,8 @@ from numpy.polynomial.legendre import leggauss, legval, legvander
 from numpy.typing import NDArray
 from scipy.integrate import solve_ivp
 from scipy.optimize import brentq
+
+from tests.examples.wandering import wandering_memory
 
 Array = NDArray[np.float64]
 Oracle = Callable[[Mapping[str, Array]], dict[str, Array]]
@@ -155,4 +158,5 @@ ORACLES: dict[str, Oracle] = {
     "evoked_response": evoked_response,
     "bump_on_a_ring": bump_on_a_ring,
     "travelling_front": travelling_front,
+    "wandering_memory": wandering_memory,
 }

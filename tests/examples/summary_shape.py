@@ -17,8 +17,8 @@ BIASES = ("space", "quadrature", "time", "noise_modes", "surrogate")
 ERROR = {*BIASES, "bias_noise", "sampling", "total"}
 QUANTITY = {"units", "mean", "sd", "quantiles", "exceed", "occurs", "sensitivity", "variance"}
 DOCUMENT = {
-    *("schema", "title", "quantities", "inputs", "scheme", "sampling", "aim", "plan", "cost", "failed"),
-    *("confidence", "warnings"),
+    *("schema", "title", "quantities", "field", "inputs", "scheme", "sampling", "aim", "plan", "cost"),
+    *("failed", "confidence", "warnings"),
 }
 
 
@@ -42,17 +42,20 @@ def assert_is_summary(document: Mapping[str, Any]) -> None:
     assert document["schema"] == 1
     assert 0 < number(document["confidence"], "confidence") < 1
     assert document["quantities"], "no quantity"
+    noise = document["scheme"]["noise"]
     for name, entry in document["quantities"].items():
         assert_is_quantity(entry, name)
+        assert_is_variance(entry["variance"], name, noise is not None, bool(document["inputs"]))
+    assert_is_field(document["field"], noise is not None)
     for path, entry in document["inputs"].items():
         assert set(entry) == {"law", "units", "mean", "sd"}, path
         assert entry["sd"] is None or number(entry["sd"], path) >= 0
         assert entry["mean"] is None or math.isfinite(number(entry["mean"], path))
         assert all(text(entry[key]) for key in ("law", "units")), path
     assert_is_scheme(document["scheme"])
-    assert_is_sampling(document["sampling"], document["inputs"])
+    assert_is_sampling(document["sampling"], noise is not None or bool(document["inputs"]))
     assert_is_cost(document["cost"], document["sampling"])
-    assert_are_failures(document["failed"], document["cost"]["samples"], set(document["inputs"]))
+    assert_are_failures(document["failed"], document["cost"], set(document["inputs"]))
     assert_is_aim(document["aim"], document["quantities"])
     assert all(text(warning) for warning in document["warnings"])
 
@@ -83,7 +86,6 @@ def assert_is_quantity(entry: Mapping[str, Any], name: str) -> None:
     assert set(entry) == QUANTITY, name
     assert text(entry["units"]), name
     assert entry["sensitivity"] == {}, name
-    assert entry["variance"] is None, name
     assert_is_statistic(entry["mean"], f"{name}.mean")
     assert_is_statistic(entry["sd"], f"{name}.sd", low=0.0)
     if entry["occurs"] is not None:
@@ -98,6 +100,34 @@ def assert_is_quantity(entry: Mapping[str, Any], name: str) -> None:
     assert all(0 < float(p) < 1 for p in entry["quantiles"]), name
     assert_goes(entry["quantiles"], 1.0, f"{name}.quantiles")
     assert_goes(entry["exceed"], -1.0, f"{name}.exceed")
+
+
+def assert_is_variance(variance: Mapping[str, Any] | None, name: str, noisy: bool, parameters: bool) -> None:
+    """Null without noise; else four statistics, two of them null where nothing but the noise is uncertain."""
+    assert (variance is None) == (not noisy), name
+    if variance is None:
+        return
+    assert set(variance) == {"parameters", "noise", "share", "total"}, name
+    for key, entry in variance.items():
+        if key in ("parameters", "share") and not parameters:
+            assert entry is None, f"{name}.variance.{key}"
+        else:
+            bounds = (0.0, 1.0) if key == "share" else (0.0,)
+            assert_is_statistic(entry, f"{name}.variance.{key}", *bounds)
+
+
+def assert_is_field(field: Sequence[Mapping[str, Any]] | None, noisy: bool) -> None:
+    """Null without noise; else variance and correlation length at 1 to 16 times, increasing."""
+    assert (field is None) == (not noisy)
+    if field is None:
+        return
+    assert 1 <= len(field) <= 16
+    times = [number(entry["time"], "field.time") for entry in field]
+    assert times == sorted(set(times))
+    for entry in field:
+        assert set(entry) == {"time", "variance", "correlation_length"}
+        for key in ("variance", "correlation_length"):
+            assert_is_statistic(entry[key], f"field.{key}", 0.0)
 
 
 def assert_goes(group: Mapping[str, Any], direction: float, place: str) -> None:
@@ -135,7 +165,6 @@ def assert_is_statistic(
 def assert_is_error(error: Mapping[str, Any], place: str) -> None:
     """All parts are there; each is null or a number that is not negative."""
     assert set(error) == ERROR, place
-    assert error["noise_modes"] is None, f"{place}: there is no noise"
     assert error["surrogate"] is None, f"{place}: there is no surrogate"
     for key, value in error.items():
         assert value is None or number(value, f"{place}.{key}") >= 0, f"{place}.{key}"
@@ -156,6 +185,9 @@ def assert_is_interval(entry: Mapping[str, Any], place: str, low: float, high: f
     assert max(ends[0], low) <= value <= min(ends[1], high), place
     assert left is None or left >= low, place
     assert right is None or right <= high, place
+    if left is None or right is None:
+        assert entry["error"]["total"] is None, f"{place}: a total, but no bound on one side"
+        return
     error = {key: part or 0.0 for key, part in entry["error"].items()}
     bias = math.fsum(error[part] for part in BIASES)
     total = bias + math.hypot(error["sampling"], error["bias_noise"])
@@ -172,7 +204,8 @@ def assert_is_interval(entry: Mapping[str, Any], place: str, low: float, high: f
 def assert_is_scheme(scheme: Mapping[str, Any]) -> None:
     """Scheme, counts, operators with their reasons, parts of the split."""
     words = {"projector", "method", "quadrature"}
-    assert words | {"nodes", "quadrature_points", "time_step", "operators", "parts", "probes"} == set(scheme)
+    numbers = {"nodes", "quadrature_points", "time_step", "probes"}
+    assert words | numbers | {"operators", "parts", "noise"} == set(scheme)
     assert all(text(scheme[key]) for key in words)
     assert all(count(scheme[key], key) > 0 for key in ("nodes", "quadrature_points"))
     assert number(scheme["time_step"], "time_step") > 0
@@ -183,11 +216,26 @@ def assert_is_scheme(scheme: Mapping[str, Any]) -> None:
         assert all(text(operator[key]) for key in ("part", "operator", "reason"))
         assert number(operator["error"], "operator") >= 0
     assert set(scheme["parts"]) <= set(BIASES)
+    assert ("noise_modes" in scheme["parts"]) <= (scheme["noise"] is not None)
+    if scheme["noise"] is not None:
+        assert_is_noise(scheme["noise"])
 
 
-def assert_is_sampling(sampling: Mapping[str, Any] | None, inputs: Mapping[str, Any]) -> None:
-    """Null without inputs, else counts that agree."""
-    assert (sampling is None) == (not inputs)
+def assert_is_noise(noise: Mapping[str, Any]) -> None:
+    """Form of the correlation, modes that are kept, and what they lack."""
+    shares = {"dropped_share", "dropped_share_finer", "image_error"}
+    assert set(noise) == {"correlation", "modes", "ring_length", "note"} | shares
+    assert noise["correlation"] in ("gaussian", "exponential", "cosine", "white")
+    assert count(noise["modes"], "modes") % 2 == 1, "pairs and the constant"
+    assert number(noise["ring_length"], "ring_length") > 0
+    for key in shares:
+        assert noise[key] is None or 0 <= number(noise[key], key) <= 1, key
+    assert isinstance(noise["note"], str)
+
+
+def assert_is_sampling(sampling: Mapping[str, Any] | None, uncertain: bool) -> None:
+    """Null where nothing is uncertain, else counts that agree."""
+    assert (sampling is None) == (not uncertain)
     if sampling is None:
         return
     assert set(sampling) == {"method", "samples", "replicates", "points_per_replicate", "noise_repeats"}
@@ -204,23 +252,26 @@ def assert_is_sampling(sampling: Mapping[str, Any] | None, inputs: Mapping[str, 
 
 def assert_is_cost(cost: Mapping[str, Any], sampling: Mapping[str, Any] | None) -> None:
     """Seconds, and the number of samples."""
-    assert set(cost) == {"predicted_s", "measured_s", "processor_s", "samples", "split_share"}
+    seconds = {"predicted_s", "measured_s", "processor_s"}
+    assert set(cost) == seconds | {"samples", "realizations", "split_share"}
     assert cost["predicted_s"] is None or number(cost["predicted_s"], "cost") > 0
     assert number(cost["measured_s"], "cost") > 0
     assert number(cost["processor_s"], "cost") > 0
     assert 0 <= number(cost["split_share"], "cost") < 1
     assert cost["samples"] == (1 if sampling is None else sampling["samples"])
+    assert cost["realizations"] == cost["samples"] * (1 if sampling is None else sampling["noise_repeats"])
 
 
-def assert_are_failures(failed: Mapping[str, Any], samples: int, inputs: set[str]) -> None:
+def assert_are_failures(failed: Mapping[str, Any], cost: Mapping[str, Any], inputs: set[str]) -> None:
     """As many reasons as failures, and the failures with their inputs."""
     assert set(failed) == {"count", "reasons", "listed", "list"}
-    assert count(failed["count"], "failed") <= samples
+    assert count(failed["count"], "failed") <= cost["realizations"]
     assert sum(failed["reasons"].values()) == failed["count"]
     assert len(failed["list"]) == failed["listed"] == min(failed["count"], 100)
     for entry in failed["list"]:
-        assert set(entry) == {"sample", "reason", "time", "inputs"}
-        assert count(entry["sample"], "failed") < samples
+        assert set(entry) == {"sample", "repeat", "reason", "time", "inputs"}
+        assert count(entry["sample"], "failed") < cost["samples"]
+        assert count(entry["repeat"], "failed") < cost["realizations"] // cost["samples"]
         assert entry["reason"] in failed["reasons"]
         assert set(entry["inputs"]) == inputs
 

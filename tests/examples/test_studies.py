@@ -1,7 +1,7 @@
 """Every shipped study reads, is checked and runs with few samples; its numbers are those of another solver.
 
-The samples of run and oracle are the same, so that the means differ by the discretisation alone: at most by
-the sum of the parts that the run states for its mean, and the noise of these.
+The samples of run and oracle are the same, and so are their noise paths, so that the means differ by the
+discretisation alone: at most by the sum of the parts that the run states for its mean, and the noise of these.
 """
 
 from __future__ import annotations
@@ -101,7 +101,7 @@ def test_its_questions_are_answered(ran: Ran) -> None:
 
 
 def test_its_means_are_those_of_another_solver(ran: Ran) -> None:
-    inputs = {path: ran.column(path) for path in ran.summary["inputs"]}
+    inputs = {name: ran.column(name) for name in ("sample", "repeat", *ran.summary["inputs"])}
     for name, expected in ORACLES[ran.name](inputs).items():
         found, mean = ran.column(name), ran.summary["quantities"][name]["mean"]
         occurs = ~np.isnan(found)

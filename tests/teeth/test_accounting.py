@@ -10,13 +10,23 @@ from typing import Any
 
 import numpy as np
 
-from aleafield.accounting import split
+from aleafield.accounting import MEAN, split
 from aleafield.accounting.bias import Bias, bias_of, joint_change
 from aleafield.accounting.measured import MeasuredPart
 from aleafield.accounting.order import Order, judge_order, observed_order, safety_factor
 from aleafield.accounting.records import PartDifferences
 from aleafield.accounting.split import combine
-from tests.accounting import test_jumps, test_mesh, test_order, test_split, test_split_coverage
+from aleafield.estimates import Sample
+from aleafield.estimates.blocks import plain_mean
+from tests.accounting import (
+    test_clusters,
+    test_jumps,
+    test_mesh,
+    test_noise_parts,
+    test_order,
+    test_split,
+    test_split_coverage,
+)
 from tests.statistical.coverage import least_hits
 from tests.teeth.biting import Tooth, assert_bites, everywhere, member, teeth
 
@@ -63,6 +73,11 @@ def trusting(part: Any, fine: Any, coarse: Any, round_off: float) -> Order:
     if part.expected_order is None:
         return found
     return replace(found, factor=safety_factor(part.expected_order, part.ratio_fine), message=None)
+
+
+def forgetful(part: Any, fine: Any, coarse: Any, round_off: float) -> Order:
+    """The order is observed although the factor is known."""
+    return judge_order(replace(part, known_factor=None), fine, coarse, round_off)
 
 
 class SumsInQuadrature:
@@ -132,6 +147,21 @@ BY_HAND, COVERAGE = test_split.test_mean_by_hand, means_are_covered
         "an erratic error that is small on one mesh believed",
         member(PartDifferences, "order_of_chance", property(lambda self: None)),
         a_jump_is_covered,
+    ),
+    Tooth(
+        "probes that count as independent whatever their parameter sample",
+        member(Sample, "mean_over", lambda self, values, block: plain_mean(values)),
+        test_clusters.test_noise_of_a_bias_rests_on_clusters_of_probes,
+    ),
+    Tooth(
+        "an open side closed",
+        member(MeasuredPart, "open_sides", lambda self, statistic: frozenset()),
+        lambda: test_noise_parts.test_an_open_side_has_no_bound("above", MEAN),
+    ),
+    Tooth(
+        "a factor that is known, observed all the same",
+        everywhere(judge_order, forgetful),
+        test_noise_parts.test_a_known_factor_needs_no_coarser_level,
     ),
     Tooth(
         "parts in a tail that are not taken together",

@@ -13,6 +13,7 @@ import numpy as np
 
 from aleafield.archive.chunk_store import ChunkStore
 from aleafield.archive.durable import append_line
+from aleafield.archive.field_state import FieldState
 from aleafield.archive.lock import locked
 from aleafield.archive.manifest import Manifest
 from aleafield.ensemble.moments import FieldMoments
@@ -21,7 +22,7 @@ from aleafield.runs.execution import tasks_of
 from aleafield.runs.folder import claimed_plan
 from aleafield.runs.plan_file import read_plan
 from aleafield.runs.run import run
-from tests.archive import test_chunks, test_run
+from tests.archive import test_chunks, test_repeats, test_run
 from tests.archive.small_runs import assert_same_values, extend, small_run
 from tests.archive.studies import linear_ring
 from tests.teeth.biting import Check, Tooth, assert_bites, everywhere, member, teeth
@@ -52,6 +53,12 @@ def extension_agrees(folder: Path) -> None:
     assert_same_values(folder / "short", folder / "long")
 
 
+def fans_agree(folder: Path) -> None:
+    """The suite's test of fans on a run of its own."""
+    small_run(folder, 128, 16, repeats=test_repeats.REPEATS)
+    test_repeats.test_fans_and_single_paths(folder)
+
+
 def refused_where_changed(folder: Path) -> None:
     """The suite's test on a finished run of its own."""
     run(linear_ring(64), folder / "out", workers=1)
@@ -74,7 +81,7 @@ def first_tasks_again(plan: Any, stored: Any) -> Any:
     """What an extension needs is solved from the first sample on: old and new are counted twice."""
     found = tasks_of(plan, stored)
     return {
-        level: [replace(task, first=task.first - stored.samples) for task in tasks]
+        level: [replace(task, first=task.first - stored.realizations) for task in tasks]
         if level == plan.level
         else tasks
         for level, tasks in found.items()
@@ -124,6 +131,15 @@ def first_tasks_again(plan: Any, stored: Any) -> Any:
         "moments of the last chunk alone",
         member(FieldMoments, "__add__", lambda self, other: other),
         in_a_folder(widths_agree),
+    ),
+    Tooth(
+        "fans of the first chunk alone",
+        member(
+            FieldState,
+            "__add__",
+            lambda self, other, real=FieldState.__add__: replace(real(self, other), histories=self.histories),
+        ),
+        in_a_folder(fans_agree),
     ),
     Tooth(
         "an extension that begins again",

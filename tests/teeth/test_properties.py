@@ -14,7 +14,7 @@ from aleafield.formula import Formula, parser
 from aleafield.formula.language import BINARY, FUNCTION_TABLE
 from aleafield.formula.parser import Push, _Compiler
 from aleafield.projection.semidiscrete import SemiDiscreteField
-from aleafield.stepping import runge_kutta
+from aleafield.stepping import failure
 from tests.exactness import test_formula
 from tests.properties import test_batches, test_formula_properties
 from tests.teeth.biting import Check, Tooth, assert_bites, everywhere, member, teeth
@@ -116,12 +116,10 @@ BLOW_UP: Check = lambda: test_batches.test_a_sample_that_blows_up_disturbs_no_ot
     ),
     Tooth(
         "a failure that is not noted",
-        everywhere(runge_kutta._freeze, lambda failed_at, time, *arrays: None),
+        everywhere(failure.freeze, lambda failed_at, time, *arrays: None),
         BLOW_UP,
     ),
-    Tooth(
-        "a failure that spoils its batch", everywhere(runge_kutta._freeze, first_failure_stops_all), BLOW_UP
-    ),
+    Tooth("a failure that spoils its batch", everywhere(failure.freeze, first_failure_stops_all), BLOW_UP),
 )
 def test_batches_of_samples(tooth: Tooth) -> None:
     assert_bites(tooth)

@@ -9,18 +9,20 @@ from typing import Any
 import numpy as np
 
 from aleafield.arrays import FloatArray, IntArray
-from aleafield.estimates import Estimate, Sample, estimate_mean, probability, quantile, sd
-from aleafield.estimates.blocks import BlockMean, mean_of, normal, student
+from aleafield.estimates import Estimate, Sample, estimate_mean, probability, quantile, sd, variance_parts
+from aleafield.estimates.blocks import BlockMean, normal, number_in_clusters, plain_mean, student
 from aleafield.randomness.copula import Copula
 from aleafield.randomness.points import PlainPoints, SobolPoints
 from aleafield.randomness.streams import bit_generator, generator
 from tests.statistical import (
     test_design,
+    test_estimates_clusters,
     test_estimates_coverage,
     test_estimates_mean,
     test_estimates_probability,
     test_estimates_quantile,
     test_estimates_sd,
+    test_variance_parts,
 )
 from tests.statistical.coverage import least_hits
 from tests.teeth.biting import Check, Tooth, assert_bites, everywhere, member, teeth
@@ -159,8 +161,18 @@ WILSON: Check = lambda: test_estimates_probability.test_plain_interval_is_wilson
     ),
     Tooth(
         "repeats that count as independent",
-        everywhere(mean_of, lambda values, block, n_blocks: mean_of(values, block, 1)),
+        member(Sample, "mean_over", lambda self, values, block: plain_mean(values)),
         test_estimates_mean.test_repeats_of_a_parameter_sample_do_not_count_as_independent,
+    ),
+    Tooth(
+        "repeats that count as independent, in a quantile",
+        everywhere(number_in_clusters, lambda share, n, hits: float(n)),
+        lambda: test_estimates_clusters.test_intervals_cover_where_parameters_rule(8, "q05"),
+    ),
+    Tooth(
+        "variance of cluster means taken for the parameter part",
+        member(variance_parts._Table, "noise", lambda self, confidence: Estimate(1e-9, 1e-9, 1e-9)),
+        lambda: test_variance_parts.test_intervals_cover(test_variance_parts.DESIGNS[0]),
     ),
     Tooth(
         "the divisor n - 1 under scrambled points",

@@ -8,8 +8,10 @@ from dataclasses import replace
 
 import numpy as np
 import pytest
+from scipy.stats import chi2
 
 from aleafield.verification import problems
+from aleafield.verification.given_noise import CosinePaths, Impulses
 from aleafield.verification.problem import KnownProblem, Series
 from aleafield.verification.problems import PROBLEMS
 from aleafield.verification.solving import solve
@@ -66,7 +68,29 @@ def test_every_kind_of_projector_and_order_is_there(said: Said) -> None:
         *("chebyshev, collocation, trapezoid", "legendre, galerkin, trapezoid"),
     ):
         assert scheme in schemes
-    assert {row[3] for row in rows_of(said.out)[1:]} == {"2", "4", "spectral"}
+    assert {row[3] for row in rows_of(said.out)[1:]} == {"1", "2", "4", "spectral"}
+
+
+@pytest.mark.parametrize("steps", [4, 64])
+def test_impulses_have_the_covariance_of_independent_increments(steps: int) -> None:
+    """The sum of all increments of three modes over a run of 2: sums of 1 to each realization, variance 2."""
+    increments = Impulses().increments(steps, 3, 2.0)
+    assert increments.shape == (steps, 3 * steps, 3)
+    flat = increments.transpose(0, 2, 1).reshape(3 * steps, 3 * steps)
+    np.testing.assert_array_equal(flat @ flat.T, np.eye(3 * steps))
+    ends = increments.sum(axis=0)
+    fields = np.stack([ends[:, 0], ends[:, 0] + 2 * ends[:, 1], ends[:, 2]], axis=1)
+    np.testing.assert_allclose(Impulses().observed(fields, 2.0 / steps), [[2.0, 2.0, 0.0]], rtol=1e-14)
+
+
+def test_given_paths_are_one_path_for_every_number_of_steps() -> None:
+    """Chi-square bounds of the variance of the ends, 1e-4 in each tail; no other mode moves."""
+    paths = CosinePaths(realizations=400, depth=5, seed=1)
+    coarse, fine = (paths.increments(steps, 3, 2.0) for steps in (4, 32))
+    np.testing.assert_array_equal(coarse, fine)
+    assert fine.shape == (32, 400, 3)
+    assert not fine[:, :, [0, 2]].any()
+    assert chi2.ppf(1e-4, 400) < (fine.sum(axis=0)[:, 1] ** 2).sum() / 2.0 < chi2.isf(1e-4, 400)
 
 
 @pytest.mark.parametrize("problem", PROBLEMS, ids=NAMES)

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass
-from typing import Literal
+from typing import Literal, Protocol
 
 from aleafield.arrays import FloatArray
 
@@ -44,9 +44,24 @@ class Series:
     order_tolerance: float = 0.15
 
 
+class GivenNoise(Protocol):
+    """Noise of S realizations that is given in full, and what is looked at under it."""
+
+    def increments(self, steps: int, modes: int, duration: float) -> FloatArray:
+        """Of the modes' Wiener processes over equal parts of the whole run, in time order, (P, S, modes).
+
+        P is the number of steps times a power of two.
+        """
+        ...
+
+    def observed(self, fields: FloatArray, step: float) -> FloatArray:
+        """What is compared with the known answer, (R, points), from the fields (S, points) at the end."""
+        ...
+
+
 @dataclass(frozen=True)
 class KnownProblem:
-    """A field without uncertain inputs whose solution is known.
+    """A field without uncertain inputs whose solution, or its law, is known.
 
     Attributes
     ----------
@@ -54,12 +69,15 @@ class KnownProblem:
     source : str
         Where the known answer comes from.
     study : str
-        Sections domain, kernel, rate, drive, initial and dynamics of a study file.
+        Sections domain, kernel, rate, drive, initial, dynamics and noise of a study file.
     exact : callable
-        Points (P,) to the exact field (P,) at the end of the run.
+        Points (P,) to the exact field (P,) at the end of the run, or to what is observed under noise: (P,) or,
+        realization by realization, (R, P).
     points : float array (P,)
-        Where the error is taken; the largest counts.
+        Where the error is taken, its root mean square over the realizations; the largest counts.
     series : tuple of Series
+    noise : GivenNoise or None
+        None: a field without noise.
     """
 
     name: str
@@ -68,3 +86,4 @@ class KnownProblem:
     exact: Callable[[FloatArray], FloatArray]
     points: FloatArray
     series: tuple[Series, ...]
+    noise: GivenNoise | None = None

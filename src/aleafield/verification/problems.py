@@ -9,6 +9,7 @@ from __future__ import annotations
 import numpy as np
 
 from aleafield.arrays import FloatArray
+from aleafield.verification.noisy_problems import NOISY_PROBLEMS
 from aleafield.verification.problem import KnownProblem, Series
 
 _LINE = np.linspace(-1.0, 1.0, 801)
@@ -304,5 +305,5 @@ duration = 1.7
     ),
 )
 
-PROBLEMS = (_SMOOTH, _KINKED, _DIAGONAL, _LEGENDRE, _POISSON, _ROTATING, _BUMP, _FRONT)
+PROBLEMS = (_SMOOTH, _KINKED, _DIAGONAL, _LEGENDRE, _POISSON, _ROTATING, _BUMP, _FRONT, *NOISY_PROBLEMS)
 """All problems, in the order in which they are printed."""

@@ -10,11 +10,10 @@ from typing import Any
 import numpy as np
 
 from aleafield.arrays import FloatArray
-from aleafield.ensemble.level import Level
-from aleafield.runs.model import Choices, field_model
+from aleafield.runs.model import Choices, field_model, noise_modes
 from aleafield.sampling.allocation import Allocation
-from aleafield.stepping.runge_kutta import integrate
-from aleafield.stepping.view import StepView
+from aleafield.stepping import euler_maruyama, runge_kutta
+from aleafield.stepping.view import AnyStep
 from aleafield.study.reading import read_text
 from aleafield.verification.problem import KnownProblem, Series
 
@@ -31,7 +30,7 @@ class Verdict:
     problem : KnownProblem
     series : Series
     errors : tuple of float
-        Largest error at each count.
+        Largest error at each count, under noise of the root mean squares.
     observed_order : float or None
         Between the last two levels; faster than any power: the highest between two neighbours, since the
         error of the time step is soon what is left.  None where errors are rounding.
@@ -66,15 +65,25 @@ class _LastState:
     def start(self, t: float, u: FloatArray) -> None:
         self.state = u.copy()
 
-    def step(self, view: StepView) -> None:
+    def step(self, view: AnyStep) -> None:
         self.state = view.u1.copy()
 
     def result(self) -> tuple[FloatArray, FloatArray | None]:
         return np.zeros(0), None
 
 
+@dataclass(frozen=True)
+class _WholeRun:
+    """A source of increments whose one base step is the whole run."""
+
+    increments: FloatArray
+
+    def base_step(self, k: int) -> FloatArray:
+        return self.increments.copy()
+
+
 def solve(problem: KnownProblem, series: Series, count: int) -> float:
-    """Largest error of the field at the end of the run, with `count` nodes, points or steps."""
+    """Largest error at the end of the run, with `count` nodes, points or steps."""
     nodes = count if series.refined == "nodes" else series.nodes
     steps = count if series.refined == "steps" else series.steps
     text = (
@@ -87,14 +96,22 @@ def solve(problem: KnownProblem, series: Series, count: int) -> float:
     study = read_text(text)
     duration = study.equation.dynamics.duration
     allocation = Allocation("monte carlo", 1, 1)
-    model = field_model(study, allocation, Choices(duration / steps, {}))
-    level = Level(model.level.nodes, model.level.quadrature_points)
-    discretisation = model.discretisation(level)
+    choices = Choices(duration / steps, {}, noise_modes(study, allocation))
+    model = field_model(study, allocation, choices)
+    discretisation, schedule = model.discretisation(model.level), model.schedule()
     equation = study.equation.bind(study.equation.binding({}))
     last = _LastState()
-    integrate(discretisation.system(equation, 1), model.schedule(), [last])
-    field = discretisation.space.evaluate(last.state, problem.points)[0]
-    return float(np.abs(field - problem.exact(problem.points)).max())
+    if problem.noise is None:
+        runge_kutta.integrate(discretisation.system(equation, 1), schedule, [last])
+        observed = discretisation.space.evaluate(last.state, problem.points)
+    else:
+        paths = _WholeRun(problem.noise.increments(len(schedule), model.level.modes, duration))
+        system = discretisation.system(equation, paths.increments.shape[1])
+        euler_maruyama.integrate(system, schedule, paths, [last], steps_per_base=len(schedule))
+        fields = discretisation.space.evaluate(last.state, problem.points)
+        observed = problem.noise.observed(fields, schedule.longest)
+    difference = observed - problem.exact(problem.points)
+    return float(np.sqrt(np.mean(difference**2, axis=0)).max())
 
 
 def _orders(series: Series, errors: tuple[float, ...]) -> list[float]:
