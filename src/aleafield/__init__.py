@@ -68,7 +68,7 @@ if TYPE_CHECKING:
     from aleafield.runs.check import check
     from aleafield.runs.compare import compare
     from aleafield.runs.results import Result, extend, open_run, run
-    from aleafield.study.building import build_study, term
+    from aleafield.study.building import Sensitivity, build_study, term
     from aleafield.study.reading import read_study
 
 _HOMES: dict[str, tuple[str, ...]] = {
@@ -123,7 +123,7 @@ _HOMES: dict[str, tuple[str, ...]] = {
         "TruncatedNormal",
         "Uniform",
     ),
-    "aleafield.study.building": ("build_study", "term"),
+    "aleafield.study.building": ("Sensitivity", "build_study", "term"),
     "aleafield.runs.check": ("check",),
     "aleafield.runs.compare": ("compare",),
     "aleafield.study.reading": ("read_study",),
@@ -175,6 +175,7 @@ __all__ = [
     "Result",
     "Ring",
     "Sampled",
+    "Sensitivity",
     "SpectralPower",
     "StepRate",
     "TimeToLevel",

@@ -18,7 +18,7 @@ LOWER = [
     "quantities",
     "forward",
 ]
-UPPER = ["sampling", "estimates", "accounting", "archive", "report"]
+UPPER = ["sampling", "estimates", "chaos", "sensitivity", "accounting", "archive", "report"]
 TOP = ["study", "runs", "verification", "cli", "__init__", "__main__"]
 """These see both halves, and of one another only those before them."""
 
@@ -33,6 +33,9 @@ HOMES = {
     "xarray": {"archive", "runs"},
     "threadpoolctl": {"runs"},
     "tomllib": {"study"},
+    "chaospy": {"chaos"},
+    "numpoly": set(),
+    "SALib": {"sensitivity"},
     "compliance_checker": set(),
 }
 

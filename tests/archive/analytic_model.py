@@ -12,6 +12,7 @@ from aleafield.arrays import FloatArray, IntArray
 from aleafield.ensemble.level import Level, PathPart
 from aleafield.ensemble.records import FIELD_NOT_FINITE, Records
 from aleafield.randomness.design import Design
+from aleafield.randomness.families import Family
 from aleafield.randomness.inputs import Dependence, Input
 from aleafield.randomness.laws import Normal, Uniform
 from aleafield.randomness.points import PlainPoints
@@ -104,10 +105,12 @@ class AnalyticModel:
             path += (PathPart("noise_modes", (a, finer), None, 2.0, 2.0, None, known_factor=1.5),)
         return path[-self.parts :]
 
-    def evaluate(self, level: Level, realizations: IntArray, times: Sequence[float] = ()) -> Records:
+    def evaluate(
+        self, level: Level, realizations: IntArray, times: Sequence[float] = (), family: Family = "main"
+    ) -> Records:
         """Closed forms, realization by realization."""
         time.sleep(self.delay * len(realizations))
-        inputs = self.design.values(realizations // self._repeats)
+        inputs = self.design.values_at(self.design.points(family, realizations // self._repeats))
         gain = inputs.get("rate.gain", np.ones(len(realizations)))
         h = inputs.get("h", np.full(len(realizations), 0.3))
         bias = 0.3 / (level.nodes - 1) ** 2 + 0.1 / (level.quadrature_points - 1) ** 2

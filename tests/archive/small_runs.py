@@ -1,16 +1,18 @@
 """A whole run of the analytic model, in this process or (as a program) in one of its own.
 
-python -m tests.archive.small_runs FOLDER SAMPLES WIDTH WORKERS DELAY METHOD REPEATS
+python -m tests.archive.small_runs FOLDER SAMPLES WIDTH WORKERS DELAY METHOD REPEATS FAMILIES
 """
 
 from __future__ import annotations
 
+import json
 import os
 import resource
 import subprocess
 import sys
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from pathlib import Path
+from types import MappingProxyType
 
 import numpy as np
 
@@ -20,7 +22,10 @@ from aleafield.archive.ensemble_file import Summary
 from aleafield.archive.ensemble_reader import EnsembleReader
 from aleafield.archive.layout import Layout
 from aleafield.archive.lock import locked
+from aleafield.ensemble.forward_model import ForwardModel
 from aleafield.field.noise_modes import NoiseModes
+from aleafield.forward.function_model import FunctionModel
+from aleafield.randomness.families import Family
 from aleafield.randomness.inputs import Input
 from aleafield.runs.execution import (
     Cost,
@@ -31,7 +36,7 @@ from aleafield.runs.execution import (
     put_together,
     stored_ensemble,
 )
-from aleafield.runs.plan_file import Plan, count_probes, read_plan, with_more_samples, write_plan
+from aleafield.runs.plan_file import Plan, count_probes, read_plan, with_more_samples, with_rows, write_plan
 from aleafield.runs.progress import NoProgress
 from aleafield.runs.statements import Asked, statements_of
 from aleafield.sampling.allocation import Allocation
@@ -43,6 +48,12 @@ MOMENT_TIMES = tuple(np.linspace(0.0, DURATION, 5).tolist())
 
 
 NOISE_MODES = NoiseModes(MODES, 2.0, 1e-3, 1e-4)
+QUANTITIES = (
+    QuantityColumn("peak", "mV", "maximum", False),
+    QuantityColumn("time of return", "ms", "time to level", True),
+)
+"""Of the analytic model."""
+NO_FAMILIES: Mapping[Family, int] = MappingProxyType({})
 
 
 def allocation_of(method: SamplingMethod, samples: int, repeats: int = 1) -> Allocation:
@@ -50,11 +61,12 @@ def allocation_of(method: SamplingMethod, samples: int, repeats: int = 1) -> All
     return Allocation(method, samples, 16 if method == "quasi-monte carlo" else 1, "", repeats)
 
 
-def plan_of(model: AnalyticModel, method: SamplingMethod, samples: int, width: int) -> Plan:
-    """The plan of a run of the analytic model."""
+def plan_of(model: AnalyticModel | FunctionModel, method: SamplingMethod, samples: int, width: int) -> Plan:
+    """The plan of a run of the analytic model, or of a function."""
+    has_field = isinstance(model, AnalyticModel)
     path = model.path(model.level)
     probes, share = count_probes(model, model.level, path, samples)
-    levels = {one for part in path for one in part.levels}
+    levels = {one for part in path for one in part.levels} | {model.level}
     return Plan(
         digest="d" * 64,
         versions={"aleafield": "0"},
@@ -68,21 +80,27 @@ def plan_of(model: AnalyticModel, method: SamplingMethod, samples: int, width: i
         operations={one.label: model.operations(one) for one in levels},
         chunk_width=width,
         peak_references={},
-        moment_times=MOMENT_TIMES,
-        kept_times=(0.25, DURATION),
+        moment_times=MOMENT_TIMES if has_field else (),
+        kept_times=(0.25, DURATION) if has_field else (),
         data_folder="inputs",
-        noise=NOISE_MODES if model.noisy else None,
+        noise=NOISE_MODES if isinstance(model, AnalyticModel) and model.noisy else None,
     )
 
 
-def describe(model: AnalyticModel, plan: Plan, cost: Cost) -> Description:
-    """The ensemble file of the analytic model."""
+def with_families(plan: Plan, families: Mapping[Family, int]) -> Plan:
+    """The plan with so many runs of each family, decided one after the other."""
+    for family, count in families.items():
+        plan = with_rows(plan, family, count)
+    return plan
+
+
+def describe(
+    model: ForwardModel, plan: Plan, cost: Cost, quantities: tuple[QuantityColumn, ...]
+) -> Description:
+    """The ensemble file of a model."""
     return Description(
         inputs=tuple(InputColumn(entry.path, entry.units, entry.law.text) for entry in model.inputs),
-        quantities=(
-            QuantityColumn("peak", "mV", "maximum", False),
-            QuantityColumn("time of return", "ms", "time to level", True),
-        ),
+        quantities=quantities,
         samples=plan.samples,
         repeats=plan.repeats,
         replicates=plan.allocation.replicates,
@@ -103,11 +121,12 @@ def describe(model: AnalyticModel, plan: Plan, cost: Cost) -> Description:
             "wall_time_s": cost.wall,
             "processor_time_s": cost.processor,
         },
+        families=plan.families,
     )
 
 
 def summarise(reader: EnsembleReader, plan: Plan, cost: Cost) -> Summary:
-    """The statements of both quantities."""
+    """The statements of all quantities."""
     asked = Asked((0.05, 0.5), (1.0,), 0.95)
     quantities = {
         name: statements_of(reader, plan, name, asked).as_json(reader.unit(name))
@@ -116,12 +135,18 @@ def summarise(reader: EnsembleReader, plan: Plan, cost: Cost) -> Summary:
     return {"quantities": quantities, "cost": {"measured_s": cost.wall}}
 
 
-def finish(layout: Layout, model: AnalyticModel, plan: Plan, workers: int) -> int:
+def finish(
+    layout: Layout,
+    model: ForwardModel,
+    plan: Plan,
+    workers: int,
+    quantities: tuple[QuantityColumn, ...] = QUANTITIES,
+) -> int:
     """Solve what is missing and put the ensemble together; how many chunks were solved."""
     solved = 0
     if not is_complete(layout, plan):
         solved = execute(layout, model, plan, stored_ensemble(layout), workers, NoProgress())
-    question = Question(lambda p, cost: describe(model, p, cost), summarise)
+    question = Question(lambda p, cost: describe(model, p, cost, quantities), summarise)
     put_together(layout, plan, question)
     clear_parts(layout)
     return solved
@@ -137,6 +162,7 @@ def small_run(
     parts: int = 4,
     repeats: int = 0,
     inputs: Sequence[Input] = INPUTS,
+    families: Mapping[Family, int] = NO_FAMILIES,
 ) -> int:
     """Run, or go on with, the analytic model in a folder; how many chunks were solved."""
     layout = Layout(folder)
@@ -144,7 +170,7 @@ def small_run(
     make_folder(folder)
     with locked(layout):
         if not layout.plan.exists():
-            write_plan(layout, plan_of(model, method, samples, width))
+            write_plan(layout, with_families(plan_of(model, method, samples, width), families))
         return finish(layout, model, read_plan(layout), workers)
 
 
@@ -168,10 +194,12 @@ def as_program(
     delay: float = 0.0,
     method: SamplingMethod = "quasi-monte carlo",
     repeats: int = 0,
+    families: Mapping[Family, int] = NO_FAMILIES,
 ) -> subprocess.Popen[str]:
     """Start a small run in a process of its own."""
     command = [sys.executable, "-m", "tests.archive.small_runs", str(folder)]
     command += [str(samples), str(width), str(workers), str(delay), method, str(repeats)]
+    command += [json.dumps(dict(families))]
     environment = {
         **os.environ,
         "PYTHONPATH": f"{ROOT / 'src'}{os.pathsep}{ROOT}",
@@ -202,6 +230,10 @@ def assert_same_values(folder: Path, reference: Path) -> None:
 
 
 if __name__ == "__main__":
-    where, n, w, k, seconds, how, paths = sys.argv[1:]
-    small_run(Path(where), int(n), int(w), int(k), float(seconds), how, repeats=int(paths))  # type: ignore[arg-type]
+    where, n, w, k, seconds, how, paths, further = sys.argv[1:]
+    small_run(
+        *(Path(where), int(n), int(w), int(k), float(seconds), how),  # type: ignore[arg-type]
+        repeats=int(paths),
+        families=json.loads(further),
+    )
     print(resource.getrusage(resource.RUSAGE_SELF).ru_maxrss)

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from typing import Final
 
 import pytest
@@ -12,6 +13,7 @@ from aleafield.sampling.request import SamplingRequest
 
 QUASI: Final = "quasi-monte carlo"
 PLAIN: Final = "monte carlo"
+CHAOS: Final = "polynomial chaos"
 
 
 @pytest.mark.parametrize(
@@ -33,11 +35,22 @@ def test_counts(
     assert counts == expected
 
 
+def test_chaos_is_fitted_to_the_points_of_quasi_monte_carlo() -> None:
+    found = allocate(SamplingRequest(CHAOS, 1000), 3, noisy=False)
+    points = allocate(SamplingRequest(QUASI, 1000), 3, noisy=False)
+    assert found.surrogate
+    assert not points.surrogate
+    assert replace(found, surrogate=False, note="") == replace(points, note="")
+    longer = extended(found, 1)
+    assert (longer.surrogate, longer.method, longer.samples) == (True, QUASI, 2048)
+
+
 def test_what_was_changed_is_said() -> None:
     assert "Monte Carlo" in allocate(SamplingRequest(QUASI, 500), 0, noisy=True).note
     assert allocate(SamplingRequest("auto", 500), 0, noisy=True).note == ""
     assert "one run" in allocate(SamplingRequest("auto", 500), 0, noisy=False).note
     assert "1000 samples asked, 1024 used" in allocate(SamplingRequest("auto", 1000, 2), 1, noisy=True).note
+    assert "used: polynomial chaos takes" in allocate(SamplingRequest(CHAOS, 1000), 1, noisy=False).note
 
 
 def test_extension_keeps_the_paths() -> None:

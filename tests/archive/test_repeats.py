@@ -134,15 +134,12 @@ def test_the_file_conforms(undisturbed: Path) -> None:
 
 def test_chunks_hold_whole_samples() -> None:
     plan = plan_of(AnalyticModel(repeats=REPEATS), "quasi-monte carlo", 128, 24)
-    for tasks in tasks_of(plan, Stored()).values():
+    for level in (plan.level, *plan.extra_levels):
+        tasks = [task for task in tasks_of(plan, Stored()) if task.level == level]
         assert all(task.first % REPEATS == task.count % REPEATS == 0 for task in tasks)
         assert {task.count for task in tasks[:-1]} <= {24 * REPEATS}
-    assert sum(task.count for task in tasks_of(plan, Stored())[plan.level]) == 128 * REPEATS
-    assert all(
-        sum(task.count for task in tasks) == 32 * REPEATS
-        for level, tasks in tasks_of(plan, Stored()).items()
-        if level != plan.level
-    )
+        samples = 128 if level == plan.level else 32
+        assert sum(task.count for task in tasks) == samples * REPEATS
 
 
 def test_a_plan_reads_back_as_it_was_written(undisturbed: Path) -> None:

@@ -140,6 +140,21 @@ def test_occurrence_over_a_window_is_open_on_its_own_side(when: Over) -> None:
     assert FrontPosition("q", 0.1).open_occurrence is None
 
 
+def test_quantities_of_one_functional_share_its_bridges() -> None:
+    assert (
+        Value("a", 0.5).functional_name == Value("b", 0.5).functional_name != Value("a", 0.4).functional_name
+    )
+    assert Mean("a").functional_name == Integral("b").functional_name
+
+
+def test_bridges_of_huge_values_stay_finite() -> None:
+    """1e200 apart: the squares of the distances overflow, maximum and passage do not."""
+    ends = np.array([[0.0, 0.0], [1e200, 8e199]])
+    bridges = Bridges(ends, np.array(1e300), np.full((1, 2), 0.5), np.full((2, 2), 0.5))
+    assert np.isfinite(bridges.maximum()).all()
+    np.testing.assert_allclose(bridges.first_reach(np.array([5e199, 4e199])), 0.5, rtol=1e-12)
+
+
 def decay(u: FloatArray) -> FloatArray:
     return -1.5 * u
 

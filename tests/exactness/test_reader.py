@@ -24,11 +24,12 @@ from aleafield.formula import Formula
 from aleafield.geometry import Interval, Ring
 from aleafield.quantities import At, FormulaQuantity, FunctionQuantity, Over, Value
 from aleafield.randomness.design import Design
-from aleafield.randomness.laws import Uniform
+from aleafield.randomness.laws import Normal, Uniform
+from aleafield.sampling.request import SamplingRequest
 from aleafield.study.impossible import refuse_impossible_samples
 from aleafield.study.minimal import MINIMAL_STUDY
 from aleafield.study.reading import read_study, read_text
-from aleafield.study.study import Aim, Keep, ReportRequest, Study
+from aleafield.study.study import Aim, Keep, ReportRequest, SensitivityRequest, Study
 from aleafield.units import Units
 
 ROOT = Path(__file__).resolve().parents[2]
@@ -126,6 +127,7 @@ def test_the_minimal_study_has_the_defaults() -> None:
     assert (scheme.quadrature, scheme.quadrature_points, scheme.time_step) == ("matched", None, None)
     assert (study.sampling.method, study.sampling.samples) == ("auto", 1024)
     assert (study.aim, study.confidence) == (None, 0.95)
+    assert study.sensitivity is None
     assert study.report == ReportRequest((0.05, 0.5, 0.95), {})
     assert study.keep == Keep("final", ())
     assert [entry.path for entry in study.inputs] == ["kernel.width"]
@@ -350,6 +352,69 @@ def test_noise_from_python_is_the_noise_of_the_text() -> None:
         assert built.digest == written.digest
 
 
+SENSITIVITY = """
+[sensitivity]
+indices = ["second", "total", "first"]
+wanted_sd = { width = 1, "mean square" = 0.1 }
+"""
+
+
+def test_what_is_asked_about_the_inputs() -> None:
+    """Indices in one order, spreads in that of the quantities, however a study writes them."""
+    study = read_text(FULL + SENSITIVITY.replace("{ width = 1, ", "{ ").replace("0.1 }", "0.1, width = 1 }"))
+    asked = SensitivityRequest(("first", "total", "second"), {"width": 1.0, "mean square": 0.1})
+    assert study.sensitivity == asked
+    assert list(study.sensitivity.wanted_sd) == ["width", "mean square"]
+    assert study.digest == read_text(FULL + SENSITIVITY).digest
+    alone = read_text(MINIMAL_STUDY + "\n[sensitivity]\nfix_below = 0.02\nscreening = true\n")
+    assert alone.sensitivity == SensitivityRequest((), {}, 0.02, True)
+
+
+JOINED = """
+[dependence]
+rank_correlation = [["h", "rate.gain", {correlation}]]
+[sensitivity]
+indices = ["{index}"]
+"""
+
+
+def test_dependent_inputs_have_shapley_effects() -> None:
+    read = read_text(FULL + JOINED.format(correlation=0.4, index="shapley"))
+    assert read.sensitivity == SensitivityRequest(("shapley",))
+    with pytest.raises(InputError, match="between independent inputs"):
+        read_text(FULL + JOINED.format(correlation=0.4, index="first"))
+
+
+def test_a_correlation_of_nothing_joins_nothing() -> None:
+    assert read_text(FULL + JOINED.format(correlation=0, index="first")).sensitivity is not None
+
+
+def test_sensitivity_from_python_is_that_of_the_text() -> None:
+    text = MINIMAL_STUDY.replace("threshold = 0.3", 'threshold = "normal(0.3, 0.02)"')
+    chaos = '\n[sampling]\nmethod = "polynomial chaos"\nsamples = 64\n'
+    for asked, entries in (
+        (aleafield.Sensitivity(), "fix_below = 0.01"),
+        (aleafield.Sensitivity(["total", "first"], {"width": 0.1}, fix_below=0.02, screening=True),
+         'indices = ["first", "total"]\nwanted_sd = { width = 0.1 }\nfix_below = 0.02\nscreening = true'),
+    ):  # fmt: skip
+        written = read_text(f"{text}{chaos}\n[sensitivity]\n{entries}\n")
+        built = aleafield.build_study(
+            "Another title",
+            domain=Interval(-10.0, 10.0),
+            kernel=GaussianKernel(0.25, Uniform(0.8, 1.2)),
+            rate=LogisticRate(10.0, Normal(0.3, 0.02)),
+            time_constant=10.0,
+            duration=60.0,
+            quantities=[aleafield.ActiveWidth("width", 0.3)],
+            drive="0.8 * exp(-x**2 / 2)",
+            sampling={"method": "polynomial chaos", "samples": 64},
+            sensitivity=asked,
+        )
+        assert built.sensitivity == written.sensitivity
+        assert built.digest == written.digest
+        assert built.sampling == SamplingRequest("polynomial chaos", 64, 1)
+
+
 SAME_DIGEST = [
     ("title = ", "# a comment\ntitle = "),
     ('"How wide does an evoked bump grow?"', '"Another title"'),
@@ -369,6 +434,8 @@ OTHER_DIGEST = [
     ("level = 0.3", "level = 0.31"),
     ("level = 0.3", "level = 0.3\ntime = 30.0"),
     ("level = 0.3", "level = 0.3\n" + NOISE),
+    ("[dynamics]", '[sampling]\nmethod = "polynomial chaos"\n\n[dynamics]'),
+    ("[dynamics]", '[sensitivity]\nindices = ["first"]\n\n[dynamics]'),
 ]
 
 

@@ -127,7 +127,24 @@ def assert_is_field(field: Sequence[Mapping[str, Any]] | None, noisy: bool) -> N
     for entry in field:
         assert set(entry) == {"time", "variance", "correlation_length"}
         for key in ("variance", "correlation_length"):
-            assert_is_statistic(entry[key], f"field.{key}", 0.0)
+            assert_is_of_sampling(entry[key], f"field.{key}")
+
+
+def assert_is_of_sampling(entry: Mapping[str, Any], place: str) -> None:
+    """A statistic of which the sampling error alone is known: an interval, no total, and a note that says so."""
+    error = entry["error"]
+    assert set(error) == ERROR, place
+    assert [key for key, part in error.items() if part is not None] == (
+        ["sampling"] if entry["interval"] else []
+    ), place
+    if entry["interval"] is None:
+        assert entry["value"] is None, place
+        assert text(entry["reason"]), place
+        return
+    low, high = entry["interval"]
+    assert 0.0 <= low <= entry["value"] <= high, place
+    assert error["sampling"] == pytest.approx(max(entry["value"] - low, high - entry["value"])), place
+    assert any("sampling error alone" in note for note in entry["notes"]), place
 
 
 def assert_goes(group: Mapping[str, Any], direction: float, place: str) -> None:

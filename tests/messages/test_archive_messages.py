@@ -17,6 +17,7 @@ from aleafield.arrays import IntArray
 from aleafield.ensemble.level import Level
 from aleafield.ensemble.records import Records
 from aleafield.errors import AleafieldError, ArchiveError, InputError, Interrupted
+from aleafield.randomness.families import Family
 from aleafield.runs.compare import compare
 from aleafield.runs.extend import extend
 from aleafield.runs.progress import ProgressLine
@@ -164,7 +165,9 @@ def test_a_netcdf_file_of_somebody_else(tmp_path: Path) -> None:
 class DyingModel(AnalyticModel):
     """Takes its process with it."""
 
-    def evaluate(self, level: Level, samples: IntArray, times: Sequence[float] = ()) -> Records:
+    def evaluate(
+        self, level: Level, samples: IntArray, times: Sequence[float] = (), family: Family = "main"
+    ) -> Records:
         """The end."""
         os.kill(os.getpid(), signal.SIGKILL)
         raise AssertionError("nobody survives SIGKILL")

@@ -7,14 +7,16 @@ import signal
 import time
 from pathlib import Path
 
+import numpy as np
 import pytest
 
+from aleafield.forward import field_model
 from aleafield.runs.run import run
 from aleafield.study.reading import read_text
 from tests.archive.killing import kill, stored, wait_until
 from tests.archive.small_runs import assert_same_values
 from tests.command.saying import command_line, start
-from tests.noise.known_fields import quantity
+from tests.noise.known_fields import linear_ring, model_of, quantity
 
 SAMPLES = 64
 STUDY = f"""
@@ -87,3 +89,17 @@ def test_killed_twice_and_resumed(undisturbed: Path, tmp_path: Path, workers: in
     assert not (tmp_path / "out" / "summary.json").exists()
     run(read_text(STUDY), tmp_path / "out", workers=workers)
     assert_same_values(tmp_path / "out", undisturbed)
+
+
+def test_batches_that_are_cut_for_memory_give_the_same_bits(monkeypatch: pytest.MonkeyPatch) -> None:
+    """Noise of 8 realizations at a time in place of all 40: every value, margin, field and history is the same."""
+    hit = quantity("hit", "time to level", "at = 0.0\nlevel = 0.1")
+    model = model_of(linear_ring(hit, scheme="", duration=1.0, samples=64))
+    times, every = [0.0, 0.5, 1.0], np.arange(40)
+    whole = model.evaluate(model.level, every, times)
+    monkeypatch.setattr(field_model, "NOISE_BYTES", 1)
+    cut = model.evaluate(model.level, every, times)
+    assert np.array_equal(whole.values["hit"], cut.values["hit"], equal_nan=True)
+    assert np.array_equal(whole.margins["hit"], cut.margins["hit"])
+    assert whole.fields is not None
+    assert np.array_equal(whole.fields, cut.fields)

@@ -79,13 +79,10 @@ def glued(path: Path, line: str) -> None:
 
 def first_tasks_again(plan: Any, stored: Any) -> Any:
     """What an extension needs is solved from the first sample on: old and new are counted twice."""
-    found = tasks_of(plan, stored)
-    return {
-        level: [replace(task, first=task.first - stored.realizations) for task in tasks]
-        if level == plan.level
-        else tasks
-        for level, tasks in found.items()
-    }
+    return [
+        replace(task, first=task.first - stored.realizations) if task.level == plan.level else task
+        for task in tasks_of(plan, stored)
+    ]
 
 
 @teeth(

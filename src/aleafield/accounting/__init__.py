@@ -7,6 +7,7 @@ neighbouring levels.  Output are statements: a value, the parts of its error, an
 
 from aleafield.accounting.order import RELATIVE_ROUND_OFF, anticipated_factor
 from aleafield.accounting.probes import (
+    LARGEST_SHARE,
     SHARE,
     PilotDifferences,
     demand,
@@ -22,6 +23,7 @@ from aleafield.accounting.statistic import MEAN, OCCURS, SD, Statistic, exceed, 
 from aleafield.accounting.variance import Clusters, VarianceStatements
 
 __all__ = [
+    "LARGEST_SHARE",
     "MEAN",
     "MESH",
     "OCCURS",

@@ -22,6 +22,8 @@ RESOLUTION = 0.1
 """A part below this share of the total is honest only inside the total."""
 MESH_PARTS = ("quadrature", "space")
 """The parts that `MESH` refines together."""
+ROUNDING = 1e-9
+"""Parts below this share of the value are not worth a note."""
 CANCELLATION = 0.5
 """Below this share of the sum of its parts a bound of both together is worth a note."""
 MODEL_TERM = 0.25
@@ -107,7 +109,7 @@ def state(
     for mesh in measured:
         if mesh.part.name == MESH and _converges(subject.order(mesh)):
             rest = [m for m in parts if m.part.name not in MESH_PARTS]
-            found = _together(found, subject.biases([mesh, *rest], estimate.value))
+            found = _together(found, subject.biases([mesh, *rest], estimate.value), estimate.value)
     orders = {m.part.name: subject.order(m) for m in parts if m.usable.any()}
     sampled = Sampled(estimate.value, estimate.value - estimate.low, estimate.high - estimate.value)
     sampling = None if sample.certain else max(sampled.left, sampled.right)
@@ -206,7 +208,7 @@ def _opened(
     return Statement(closed.value, error, interval, notes=(*said, *notes), orders=known)
 
 
-def _together(apart: Biases, joined: Biases) -> Biases:
+def _together(apart: Biases, joined: Biases, value: float) -> Biases:
     """The biases with space and quadrature bounded together, where that is the tighter bound.
 
     Along the path the two may be of opposite sign: nodal values of a collocation scheme, for one, feel the
@@ -230,7 +232,8 @@ def _together(apart: Biases, joined: Biases) -> Biases:
         f"space and quadrature cancel in part: {total:.2g} one by one, {mesh.size:.2g} together; each is "
         "shown with its share of the latter"
     )
-    return Biases(known, (), (note,) if mesh.size < CANCELLATION * total else ())
+    matters = mesh.size < CANCELLATION * total and total > ROUNDING * abs(value)
+    return Biases(known, (), (note,) if matters else ())
 
 
 def _converges(order: Order) -> bool:

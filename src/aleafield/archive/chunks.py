@@ -10,9 +10,11 @@ from typing import Any
 import numpy as np
 
 from aleafield.archive.field_state import FieldState, get_state, put_state
+from aleafield.archive.names import netcdf_name
 from aleafield.arrays import FloatArray, IntArray
 from aleafield.ensemble.level import Level
 from aleafield.ensemble.records import Records
+from aleafield.randomness.families import Family
 
 LANE = 8
 """Batches are padded to a multiple of this, so that a realization's values do not depend on the cut."""
@@ -20,16 +22,18 @@ LANE = 8
 
 @dataclass(frozen=True, order=True)
 class Task:
-    """Realizations first .. first + count - 1 at one level: whole samples, with all their noise paths."""
+    """Realizations first .. first + count - 1 of a family at one level: whole samples, with all their noise paths."""
 
     level: Level
     first: int
     count: int
+    family: Family = "main"
 
     @property
     def name(self) -> str:
         """File name of the chunk that the task gives."""
-        return f"{self.level.label}_{self.first:09d}_{self.count}.nc"
+        family = "" if self.family == "main" else f"_{netcdf_name(self.family)}"
+        return f"{self.level.label}{family}_{self.first:09d}_{self.count}.nc"
 
     @property
     def last(self) -> int:
@@ -43,12 +47,12 @@ class Task:
         return np.minimum(np.arange(self.first, self.first + padded, dtype=np.int64), self.last - 1)
 
 
-def cut(level: Level, first: int, last: int, width: int) -> Iterator[Task]:
-    """Tasks for realizations first .. last - 1, cut at the multiples of `width`."""
+def cut(level: Level, first: int, last: int, width: int, family: Family = "main") -> Iterator[Task]:
+    """Tasks for realizations first .. last - 1 of a family, cut at the multiples of `width`."""
     start = first
     while start < last:
         stop = min(last, (start // width + 1) * width)
-        yield Task(level, start, stop - start)
+        yield Task(level, start, stop - start, family)
         start = stop
 
 
@@ -63,7 +67,8 @@ class Chunk:
     records : Records
         Of the realizations of the task, without fields and histories.
     state : FieldState or None
-        What fields and histories at the moment times add to the ensemble; None at the extra levels.
+        What fields and histories at the moment times add to the ensemble; None at the extra levels, in other
+        families and without fields.
     kept : float array (k, K, n) or None
         Fields at the kept times of the first k realizations of the chunk.
     seconds : float

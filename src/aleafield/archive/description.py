@@ -8,6 +8,7 @@ from typing import Any
 
 from aleafield.arrays import FloatArray
 from aleafield.ensemble.level import Level
+from aleafield.randomness.families import Family
 
 MOST_KEPT = 1024
 """Fields are stored for at most so many realizations, the first ones."""
@@ -54,7 +55,7 @@ class Axes:
     x : float array (n,)
         Increasing positions.
     kept_times, moment_times : tuple of float
-        Model times of the stored fields, and of their mean and standard deviation.
+        Model times of the stored fields, and of their mean and standard deviation; none where there is no field.
     length_units, time_units, field_units : str
     """
 
@@ -87,6 +88,8 @@ class Description:
     axes : Axes
     attributes : mapping
         Provenance, as global attributes.
+    families : mapping of family to count
+        Further runs at the run's level, by family, none of them the main one.
     """
 
     inputs: tuple[InputColumn, ...]
@@ -99,6 +102,7 @@ class Description:
     extra_levels: tuple[Level, ...]
     axes: Axes
     attributes: Mapping[str, Any] = field(default_factory=dict)
+    families: Mapping[Family, int] = field(default_factory=dict)
 
     @property
     def realizations(self) -> int:

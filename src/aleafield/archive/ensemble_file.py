@@ -16,8 +16,10 @@ from aleafield.archive.ensemble_reader import EnsembleReader
 from aleafield.archive.ensemble_variables import EnsembleVariables
 from aleafield.archive.field_state import PATHS, FieldState, encode_state
 from aleafield.archive.layout import Layout
+from aleafield.archive.names import netcdf_name
 from aleafield.archive.statistic_variables import add_statistics
 from aleafield.ensemble.level import Level
+from aleafield.randomness.families import Family
 
 Summary = dict[str, Any]
 """The document summary.json."""
@@ -26,8 +28,8 @@ Summary = dict[str, Any]
 class ChunkSource(Protocol):
     """Where an ensemble's chunks come from, in the order of their realizations."""
 
-    def chunks(self, level: Level) -> Iterator[Chunk]:
-        """The chunks of a level, without gaps, from realization 0 on."""
+    def chunks(self, level: Level, family: Family = "main") -> Iterator[Chunk]:
+        """The chunks of a family at a level, without gaps, from realization 0 on."""
         ...
 
 
@@ -36,6 +38,7 @@ def build(
     description: Description,
     source: ChunkSource,
     summarise: Callable[[EnsembleReader], Summary],
+    held_state: str | None = None,
 ) -> Summary:
     """Write ensemble.nc, atomically, with the statistics of its summary; give the summary back.
 
@@ -45,6 +48,8 @@ def build(
     description : Description
     source : ChunkSource
     summarise : from the columns of the ensemble to the summary
+    held_state : hash of the field state that is in place, where the main sample does not grow and it stays: until
+        the new ensemble is in place, the old one needs it to the byte
 
     Raises
     ------
@@ -56,15 +61,20 @@ def build(
     path = layout.ensemble
     with storing(path), netcdf_failures(path), netCDF4.Dataset(partial(path), "w") as dataset:
         variables = EnsembleVariables(dataset, description)
-        state = encode_state(_stream_main(variables, description, source))
+        state = _stream_main(variables, description, source)
         for level in description.extra_levels:
-            _stream_extra(variables, level, source)
-        attributes = {**description.attributes, "field_state_sha256": hashlib.sha256(state).hexdigest()}
+            _put_all(variables, source.chunks(level), level.label)
+        for family in description.families:
+            _put_all(variables, source.chunks(description.level, family), netcdf_name(family))
+        new_state = None if state is None or held_state is not None else encode_state(state)
+        digest = held_state if new_state is None else hashlib.sha256(new_state).hexdigest()
+        attributes = {**description.attributes, "field_state_sha256": digest}
         set_attributes(dataset, {"Conventions": "CF-1.11", **attributes})
         summary = summarise(EnsembleReader(dataset))
         add_statistics(dataset, variables.names, summary["quantities"])
     state_path = layout.field_state(description.realizations)
-    write_bytes(state_path, state)
+    if new_state is not None:
+        write_bytes(state_path, new_state)
     commit(path)
     for old in layout.field_states():
         if old != state_path:
@@ -72,7 +82,10 @@ def build(
     return summary
 
 
-def _stream_main(variables: EnsembleVariables, description: Description, source: ChunkSource) -> FieldState:
+def _stream_main(
+    variables: EnsembleVariables, description: Description, source: ChunkSource
+) -> FieldState | None:
+    """Put the main sample in place; what it leaves of its fields, None without fields."""
     state: FieldState | None = None
     for chunk in source.chunks(description.level):
         records = chunk.records
@@ -84,7 +97,8 @@ def _stream_main(variables: EnsembleVariables, description: Description, source:
             state = chunk.state if state is None else state + chunk.state
         if chunk.kept is not None and description.kept:
             variables.found["field", "", ""][chunk.first : chunk.first + len(chunk.kept)] = chunk.kept
-    assert state is not None
+    if state is None:
+        return None
     variables.found["field_mean", "", ""][:] = state.moments.mean
     variables.found["field_sd", "", ""][:] = state.moments.sd
     variables.found["field_band", "", ""][:] = state.quantiles()
@@ -95,9 +109,9 @@ def _stream_main(variables: EnsembleVariables, description: Description, source:
     return state
 
 
-def _stream_extra(variables: EnsembleVariables, level: Level, source: ChunkSource) -> None:
-    for chunk in source.chunks(level):
-        _put_values(variables, chunk, level.label)
+def _put_all(variables: EnsembleVariables, chunks: Iterator[Chunk], label: str) -> None:
+    for chunk in chunks:
+        _put_values(variables, chunk, label)
 
 
 def _put_values(variables: EnsembleVariables, chunk: Chunk, label: str) -> None:

@@ -12,9 +12,11 @@ from numpy.typing import NDArray
 
 from aleafield.archive.description import MOST_KEPT
 from aleafield.archive.ensemble_variables import Key
+from aleafield.archive.names import netcdf_name
 from aleafield.arrays import BoolArray, FloatArray, IntArray
 from aleafield.ensemble.records import FINITE, Records
 from aleafield.errors import ArchiveError
+from aleafield.randomness.families import Family
 
 if TYPE_CHECKING:
     import xarray
@@ -23,8 +25,9 @@ if TYPE_CHECKING:
 class EnsembleReader:
     """The columns of an open ensemble.
 
-    A level is named by its label; the empty label means the run's own level, along all S realizations, any
-    other one an extra level of the split, along the probes: the first n_p realizations.
+    A level is named by its label; the empty label means the run's own level, along all S realizations, "held_out",
+    "exchange" and "screening" the runs of these families at it, along each family's n_f runs, any other one an
+    extra level of the split, along the probes: the first n_p realizations.
 
     Attributes
     ----------
@@ -32,6 +35,8 @@ class EnsembleReader:
         Names and paths in the order of the study.
     levels : tuple of str
         Labels of the extra levels.
+    families : mapping of family to count
+        Families besides the main sample, with their numbers of runs.
     """
 
     def __init__(self, dataset: Any) -> None:
@@ -41,11 +46,15 @@ class EnsembleReader:
         for variable in dataset.variables.values():
             attributes = variable.__dict__
             if "role" in attributes:
-                owner, level = attributes.get("belongs_to", ""), attributes.get("scheme_level", "")
-                self._found[attributes["role"], owner, level] = variable
-        self.quantities = tuple(owner for role, owner, level in self._found if role == "value" and not level)
+                label = attributes.get("scheme_level", "") or netcdf_name(attributes.get("family", ""))
+                self._found[attributes["role"], attributes.get("belongs_to", ""), label] = variable
+        self.quantities = tuple(owner for role, owner, label in self._found if role == "value" and not label)
         self.inputs = tuple(owner for role, owner, _ in self._found if role == "input")
-        self.levels = tuple(level for role, _, level in self._found if role == "failed" and level)
+        flags = {label: v for (role, _, label), v in self._found.items() if role == "failed" and label}
+        self.families: dict[Family, int] = {
+            v.family: len(v) for v in flags.values() if "family" in v.ncattrs()
+        }
+        self.levels = tuple(label for label, v in flags.items() if "family" not in v.ncattrs())
 
     def __len__(self) -> int:
         return len(self._dataset.dimensions["realization"])
@@ -64,20 +73,20 @@ class EnsembleReader:
         return str(self._found["value", quantity, ""].units)
 
     def values(self, quantity: str, level: str = "") -> FloatArray:
-        """Values of a quantity, NaN where it does not occur or the realization failed, (S,) or (n_p,)."""
+        """Values of a quantity, NaN where it does not occur or the realization failed, (S,), (n_f,) or (n_p,)."""
         return self._column(("value", quantity, level))
 
     def margins(self, quantity: str, level: str = "") -> FloatArray | None:
-        """Margins of a quantity, None where it always occurs, (S,) or (n_p,)."""
+        """Margins of a quantity, None where it always occurs, (S,), (n_f,) or (n_p,)."""
         key = ("margin", quantity, level)
         return self._column(key) if key in self._found else None
 
     def failed(self, level: str = "") -> IntArray:
-        """Failure codes, (S,) or (n_p,)."""
+        """Failure codes, (S,), (n_f,) or (n_p,)."""
         return np.asarray(self._found["failed", "", level][:], dtype=np.int64)
 
     def valid(self, level: str = "") -> BoolArray:
-        """Which realizations did not fail, (S,) or (n_p,)."""
+        """Which realizations did not fail, (S,), (n_f,) or (n_p,)."""
         return np.asarray(self._found["failed", "", level][:] == FINITE)
 
     def failed_at(self) -> FloatArray:
@@ -134,7 +143,10 @@ class EnsembleReader:
         return self._column(("fan", quantity, "")), self._column(("paths", quantity, ""))
 
     def rows(self, first: int, last: int, level: str = "") -> Records:
-        """Realizations first .. last - 1 (probes, at an extra level) as records without fields."""
+        """Realizations first .. last - 1 (probes, at an extra level) as records without fields.
+
+        Those of a family have no inputs: they follow from seed and index.
+        """
         cut = slice(first, last)
 
         def columns(role: str, at: str) -> dict[str, FloatArray]:
@@ -147,7 +159,7 @@ class EnsembleReader:
         )
         return Records(
             realizations=np.arange(first, first + len(failed), dtype=np.int64),
-            inputs=columns("input", ""),
+            inputs={} if level in map(netcdf_name, self.families) else columns("input", ""),
             values=columns("value", level),
             margins=columns("margin", level),
             failed=failed,

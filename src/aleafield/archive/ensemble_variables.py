@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
@@ -10,15 +11,36 @@ import numpy as np
 from aleafield.archive.attributes import set_attributes
 from aleafield.archive.description import Description, QuantityColumn
 from aleafield.archive.field_state import BAND, BAND_SAMPLES, FAN, FAN_REALIZATIONS, PATHS
-from aleafield.archive.names import Names
-from aleafield.ensemble.level import Level
+from aleafield.archive.names import Names, netcdf_name
 from aleafield.ensemble.records import FAILURE_MEANINGS
+from aleafield.randomness.families import Family
 
 Key = tuple[str, str, str]
-"""Role of a variable, input or quantity that it belongs to, label of its level; the last two may be empty."""
+"""Role of a variable, input or quantity that it belongs to, label of its level or family; the last two may be
+empty."""
 FIELD_BLOCK = 1 << 17
 """Numbers in one block of the stored fields: 1 MiB."""
 ALONG = ("realization",)
+FAMILY_COMMENTS: Mapping[Family, str] = {
+    "held out": "runs at independent points that are no part of the sample",
+    "exchange": "runs with groups of inputs exchanged between the points of the sample and those of a second one",
+    "screening": "runs along trajectories on which one input changes at a time",
+}
+"""What the runs of a family are, for readers of the file."""
+
+
+@dataclass(frozen=True)
+class _Further:
+    """Runs besides those of the main sample at the run's level: an extra level, or another family.
+
+    `words` follow the name of what was computed, `who_failed` the words "whether, and why, a".
+    """
+
+    label: str
+    dimension: str
+    words: str
+    who_failed: str
+    attributes: Mapping[str, Any]
 
 
 class EnsembleVariables:
@@ -50,18 +72,22 @@ class EnsembleVariables:
             self._make_quantity(quantity, name)
         if description.extra_levels:
             self._make_probes()
-        self._make_moments()
+        self._make_families()
+        if description.axes.moment_times:
+            self._make_moments()
         if description.kept:
             self._make_fields()
 
     def _make_dimensions(self) -> None:
         description, axes = self._description, self._description.axes
-        lengths = {"realization": description.realizations, "t_moments": len(axes.moment_times)}
-        lengths |= {"x": len(axes.x), "band": len(BAND)}
+        lengths = {"realization": description.realizations}
+        if axes.moment_times:
+            lengths |= {"t_moments": len(axes.moment_times), "x": len(axes.x), "band": len(BAND)}
         if description.extra_levels:
             lengths["probe"] = description.probes * description.repeats
         if description.kept:
             lengths["t"] = len(axes.kept_times)
+        lengths |= {netcdf_name(family): count for family, count in description.families.items()}
         for name, length in lengths.items():
             self._dataset.createDimension(name, length)
 
@@ -74,12 +100,14 @@ class EnsembleVariables:
         kind: str = "f8",
         blocks: Sequence[int] | None = None,
     ) -> Any:
-        role, owner, level = key
+        role, owner, label = key
+        family = next((f for f in self._description.families if netcdf_name(f) == label), None)
         fill = np.nan if kind == "f8" and role != "axis" else None
         variable = self._dataset.createVariable(
             name, kind, tuple(dimensions), fill_value=fill, contiguous=blocks is None, chunksizes=blocks
         )
-        own = {"role": role, "belongs_to": owner or None, "scheme_level": level or None}
+        level = (label or None) if family is None else None
+        own = {"role": role, "belongs_to": owner or None, "scheme_level": level, "family": family}
         set_attributes(variable, {**attributes, **own})
         self.found[key] = variable
         return variable
@@ -108,13 +136,13 @@ class EnsembleVariables:
         }
         self._make(("failed_at", "", ""), "failed_at", ALONG, about)
 
-    def _make_flags(self, level: str, name: str, along: Sequence[str], about: Mapping[str, Any]) -> None:
+    def _make_flags(self, label: str, name: str, along: Sequence[str], about: Mapping[str, Any]) -> None:
         flags = {
             "units": "1",
             "flag_values": np.array(list(FAILURE_MEANINGS), dtype=np.int32),
             "flag_meanings": " ".join(FAILURE_MEANINGS.values()),
         }
-        self._make(("failed", "", level), name, along, {**about, **flags}, "i4")
+        self._make(("failed", "", label), name, along, {**about, **flags}, "i4")
 
     def _make_quantity(self, quantity: QuantityColumn, name: str) -> None:
         ancillary = "failed"
@@ -141,30 +169,45 @@ class EnsembleVariables:
         about = {"long_name": "number of the realization of the probe", "units": "1"}
         self._make(("probe", "", ""), "probe", ("probe",), about, "i4")[:] = probes
         for level in self._description.extra_levels:
-            name = self.names.take(f"failed_{level.label}")
-            long_name = f"whether, and why, a probe failed at level {level.label}"
-            self._make_flags(level.label, name, ("probe",), {"long_name": long_name})
-            for quantity in self._description.quantities:
-                self._make_at_level(quantity, level, name)
-
-    def _make_at_level(self, quantity: QuantityColumn, level: Level, failed: str) -> None:
-        scheme = {
-            "nodes": level.nodes,
-            "quadrature_points": level.quadrature_points,
-            "halvings_of_the_step": level.halvings,
-            "noise_modes": level.modes or None,
-            "ancillary_variables": failed,
-        }
-        about = {"long_name": f"{quantity.name} at level {level.label}", "units": quantity.units}
-        name = self.names.take(f"{quantity.name}_{level.label}")
-        self._make(("value", quantity.name, level.label), name, ("probe",), {**about, **scheme})
-        if quantity.may_not_occur:
-            about = {
-                "long_name": f"margin by which {quantity.name} occurs at level {level.label}",
-                "units": self._description.axes.field_units,
+            scheme = {
+                "nodes": level.nodes,
+                "quadrature_points": level.quadrature_points,
+                "halvings_of_the_step": level.halvings,
+                "noise_modes": level.modes or None,
             }
-            name = self.names.take(f"{quantity.name}_margin_{level.label}")
-            self._make(("margin", quantity.name, level.label), name, ("probe",), {**about, **scheme})
+            at = f"at level {level.label}"
+            self._make_further(_Further(level.label, "probe", at, f"probe failed {at}", scheme))
+
+    def _make_families(self) -> None:
+        for family, count in self._description.families.items():
+            label = netcdf_name(family)
+            about = {
+                "long_name": f"number of the run of the family {family}",
+                "units": "1",
+                "comment": FAMILY_COMMENTS[family],
+            }
+            numbers = np.arange(count, dtype=np.int32)
+            self._make(("number", "", label), label, (label,), about, "i4")[:] = numbers
+            words = f"in runs of the family {family}"
+            self._make_further(_Further(label, label, words, f"run of the family {family} failed", {}))
+
+    def _make_further(self, runs: _Further) -> None:
+        """The flags of further runs and all quantities with their margins."""
+        along = (runs.dimension,)
+        failed = self.names.take(f"failed_{runs.label}")
+        self._make_flags(runs.label, failed, along, {"long_name": f"whether, and why, a {runs.who_failed}"})
+        more = {**runs.attributes, "ancillary_variables": failed}
+        for quantity in self._description.quantities:
+            about = {"long_name": f"{quantity.name} {runs.words}", "units": quantity.units}
+            name = self.names.take(f"{quantity.name}_{runs.label}")
+            self._make(("value", quantity.name, runs.label), name, along, {**about, **more})
+            if quantity.may_not_occur:
+                about = {
+                    "long_name": f"margin by which {quantity.name} occurs {runs.words}",
+                    "units": self._description.axes.field_units,
+                }
+                name = self.names.take(f"{quantity.name}_margin_{runs.label}")
+                self._make(("margin", quantity.name, runs.label), name, along, {**about, **more})
 
     def _make_moments(self) -> None:
         axes = self._description.axes

@@ -7,6 +7,7 @@ import re
 FIXED = (
     *("realization", "sample", "repeat", "replicate", "probe", "failed", "failed_at"),
     *("u", "t", "x", "t_moments", "band", "fan", "path"),
+    *("held_out", "exchange", "screening"),
 )
 """Names that are taken before any input or quantity."""
 

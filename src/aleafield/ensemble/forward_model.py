@@ -8,6 +8,7 @@ from typing import Protocol
 from aleafield.arrays import FloatArray, IntArray
 from aleafield.ensemble.level import Level, PathPart
 from aleafield.ensemble.records import Records
+from aleafield.randomness.families import Family
 from aleafield.randomness.inputs import Input
 
 
@@ -16,6 +17,9 @@ class ForwardModel(Protocol):
 
     A realization is a parameter sample with one noise path: number j is path j mod R of sample j // R, R the
     number of `repeats`.  Without repeats realizations and samples are the same.
+
+    Besides the main sample there are families of further runs, numbered by themselves.  Under noise there is only
+    the main one.
 
     Monte Carlo, quasi-Monte Carlo, the error split, pilots, resumption and workers are built on `evaluate`
     alone; none of them knows of kernels, meshes or time steppers.  An implementation must be picklable, and the
@@ -32,7 +36,9 @@ class ForwardModel(Protocol):
         """Noise paths of each parameter sample; 1 without repeats, and without noise."""
         ...
 
-    def evaluate(self, level: Level, realizations: IntArray, times: Sequence[float] = ()) -> Records:
+    def evaluate(
+        self, level: Level, realizations: IntArray, times: Sequence[float] = (), family: Family = "main"
+    ) -> Records:
         """Quantities (and fields and histories at `times`) of the realizations at a level.
 
         Parameters
@@ -40,6 +46,7 @@ class ForwardModel(Protocol):
         level : Level
         realizations : int array (S,), S a multiple of 8 where equality to the bit is wanted
         times : model times at which fields and histories are wanted, increasing
+        family : the family whose numbers the realizations are
         """
         ...
 

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 
 import numpy as np
@@ -28,6 +28,7 @@ class Records:
     ----------
     realizations : int array (S,)
         Their indices: realization j is noise path j mod R of parameter sample j // R, with R paths a sample.
+        Those of another family than the main sample count within it.
     inputs : mapping of path to float array (S,)
     values : mapping of quantity name to float array (S,)
         NaN where the quantity does not occur or the sample failed.
@@ -60,6 +61,26 @@ class Records:
     def valid(self) -> BoolArray:
         """Which realizations did not fail, shape (S,)."""
         return np.asarray(self.failed == FINITE)
+
+    @staticmethod
+    def joined(pieces: Sequence[Records]) -> Records:
+        """The realizations of several records, one after the other."""
+
+        def columns(name: str) -> dict[str, FloatArray]:
+            found = [getattr(piece, name) for piece in pieces]
+            return {key: np.concatenate([columns[key] for columns in found]) for key in found[0]}
+
+        fields = [piece.fields for piece in pieces if piece.fields is not None]
+        return Records(
+            realizations=np.concatenate([piece.realizations for piece in pieces]),
+            inputs=columns("inputs"),
+            values=columns("values"),
+            margins=columns("margins"),
+            failed=np.concatenate([piece.failed for piece in pieces]),
+            failed_at=np.concatenate([piece.failed_at for piece in pieces]),
+            fields=np.concatenate(fields) if fields else None,
+            histories=columns("histories"),
+        )
 
     def first(self, count: int) -> Records:
         """The first `count` realizations: what remains of a padded batch."""

@@ -20,7 +20,7 @@ TOLERANCE = 1e-4
 SAMPLES = 1024
 """Samples, from the front of the stream, that are looked at."""
 MOST_MODES = 16385
-"""Where the number is cut off however many the space carries: 30 MB of increments for 256 realizations."""
+"""Where the number is cut off however many the space carries: 4 MB of noise a realization and generation."""
 _SAFETY = 1.25
 
 
@@ -148,11 +148,16 @@ def _fewest(correlation: LengthCorrelation, length: float, carried: float, image
         limit = "as many as are possible" if carried > MOST_MODES else "as many as the nodes carry"
         certain = np.ndim(bound(correlation.correlation_length)) == 0
         note = (
-            f"noise: {modes} modes, {limit}, leave out {100 * share:.2g} % of its variance"
+            f"noise: {modes} modes, {limit}, leave out {100 * share:.3g} % of its variance"
             + ("" if certain else " at the shortest correlation length looked at")
             + (" (rough in space: a share like 1 / modes)" if correlation.roughness == "rough" else "")
             + "; what that does is the part noise_modes of every error"
         )
+        if carried > MOST_MODES and not certain:
+            note += (
+                f"; the ring of length {length:.4g} follows from the upper end of the law of correlation_length: a law "
+                "with a bound, such as truncated_normal, makes it shorter"
+            )
     kept = NoiseModes(modes, length, 0.0, 0.0, image_error, note)
     shares = [float(np.mean(correlation.dropped(count, length))) for count in (modes, kept.finer)]
     return replace(kept, dropped=shares[0], dropped_finer=shares[1])

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import sys
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from typing import Any
@@ -23,11 +24,15 @@ from aleafield.projection.scheme import Scheme
 from aleafield.projection.semidiscrete import SemiDiscreteField
 from aleafield.quantities import FormulaQuantity, History, Observer, PeakPosition, Quantity
 from aleafield.randomness.design import Design
+from aleafield.randomness.families import Family
 from aleafield.randomness.inputs import Input
+from aleafield.randomness.wiener import path_bytes
 from aleafield.spaces import Space, make_space
 from aleafield.stepping import euler_maruyama, runge_kutta
 from aleafield.stepping.schedule import Schedule
 
+NOISE_BYTES = 1 << 27
+"""Memory that the noise of a batch may take: 128 MiB, more only where 8 realizations need more."""
 FINEST_HALVINGS = 1
 """Halvings of the finest level of the error split: bridges inside steps are the same at all its levels."""
 
@@ -149,7 +154,8 @@ class FieldModel:
         discretisation, steps = prepared.discretisation, len(prepared.schedule)
         if self.noise is None:
             return 4.0 * steps * discretisation.operations
-        return steps * (discretisation.operations + discretisation.noise_operations)
+        draws = 1 << (self._depth(level) - level.halvings - 1)
+        return steps * (discretisation.operations + draws * discretisation.noise_operations)
 
     def path(self, level: Level) -> tuple[PathPart, ...]:
         """Space, quadrature, time and noise part of a level's error."""
@@ -175,11 +181,35 @@ class FieldModel:
             completed.append(part)
         return tuple(completed)
 
-    def evaluate(self, level: Level, realizations: IntArray, times: Sequence[float] = ()) -> Records:
+    def evaluate(
+        self, level: Level, realizations: IntArray, times: Sequence[float] = (), family: Family = "main"
+    ) -> Records:
         """Quantities, and fields and histories at `times`, at a level (see `ForwardModel.evaluate`)."""
+        if self.noise is not None and family != "main":
+            raise ValueError(f"{family!r} given: under noise there is only the main family")
+        most = self._largest_batch(level)
+        if len(realizations) > most:
+            pieces = (realizations[first : first + most] for first in range(0, len(realizations), most))
+            return Records.joined([self._evaluate(level, piece, times, family) for piece in pieces])
+        return self._evaluate(level, realizations, times, family)
+
+    def _largest_batch(self, level: Level) -> int:
+        """Realizations whose noise is in memory at a time, a multiple of 8; rows do not depend on one another."""
+        if self.noise is None:
+            return sys.maxsize
+        return max(8, NOISE_BYTES // path_bytes(level.modes, self._depth(level)) // 8 * 8)
+
+    def _depth(self, level: Level) -> int:
+        """How often the noise paths of a level halve their base steps."""
+        bridged = any(q.bridged for q in self.quantities)
+        return 1 + (max(level.halvings, FINEST_HALVINGS) if bridged else level.halvings)
+
+    def _evaluate(
+        self, level: Level, realizations: IntArray, times: Sequence[float], family: Family
+    ) -> Records:
         prepared = self._prepared(level)
         space = prepared.discretisation.space
-        inputs = self.design.values(realizations // self._repeats)
+        inputs = self.design.values_at(self.design.points(family, realizations // self._repeats))
         binding = self.equation.binding(inputs)
         system = prepared.discretisation.system(self.equation.bind(binding), len(realizations))
         quantities = [q.bind(f"quantity.{q.name}", binding) for q in self.quantities]
@@ -204,7 +234,6 @@ class FieldModel:
 
     def _noise(self, system: SemiDiscreteField, level: Level, realizations: IntArray) -> BatchNoise:
         assert system.forcing is not None
-        bridged = any(q.bridged for q in self.quantities)
         return BatchNoise(
             system.forcing,
             self.design.seed,
@@ -213,7 +242,7 @@ class FieldModel:
             level.modes,
             self.schedule(),
             level.halvings,
-            max(level.halvings, FINEST_HALVINGS) if bridged else level.halvings,
+            self._depth(level),
         )
 
     @staticmethod
@@ -247,7 +276,7 @@ class FieldModel:
             wrong = occurs & ~np.isfinite(value) & (failed == FINITE)
             failed[wrong] = QUANTITY_NOT_FINITE
             values[quantity.name] = np.where(occurs, value, np.nan)
-        followed = {name: np.array(history.values) for name, history in histories.items()}
+        followed = {name: finite_or_nan(history.values) for name, history in histories.items()}
         for array in (*values.values(), *margins.values(), *followed.values()):
             array[failed != FINITE] = np.nan
         return Records(
@@ -268,3 +297,8 @@ class FieldModel:
                 self.schedule(level.halvings),
             )
         return self._levels[level]
+
+
+def finite_or_nan(values: FloatArray) -> FloatArray:
+    """A copy with NaN in place of what is infinite: there is no value to draw or to order."""
+    return np.where(np.isfinite(values), values, np.nan)

@@ -23,14 +23,12 @@ class BatchNoise:
         Of the study, not halved; the steps that its doubled step has are the base of every path.
     halvings : int
         Of the level.
-    finest : int
-        Halvings of the finest level that sees the same bridges; `halvings` where nothing is bridged.
+    depth : int
+        How often the paths halve a base step: as often as the finest level that sees the same bridges.
 
     Attributes
     ----------
     paths : WienerPaths
-    depth : int
-        How often the paths halve a base step.
     sub_steps, steps_per_base : int
         Of a base step: the finest parts of the paths, and the steps of this level.
     """
@@ -44,19 +42,18 @@ class BatchNoise:
         modes: int,
         schedule: Schedule,
         halvings: int,
-        finest: int,
+        depth: int,
     ) -> None:
         self._forcing = forcing
         self._seed, self._samples, self._repeats = seed, samples, repeats
-        self.depth = finest + 1
-        self.sub_steps = 2**self.depth
+        self.sub_steps = 2**depth
         self.steps_per_base = 2 ** (halvings + 1)
-        self.paths = WienerPaths(seed, samples, repeats, modes, schedule.base_lengths, self.depth)
+        self.paths = WienerPaths(seed, samples, repeats, modes, schedule.base_lengths, depth)
 
     def along(self, functional: FloatArray) -> FloatArray:
         """Weights (m,) or (S, m) of the modes' increments in those of a linear functional (n,) of the field."""
         return self._forcing.along(functional)
 
     def uniforms(self, name: str) -> PathUniforms:
-        """The uniform numbers of a quantity, the same at every level."""
-        return PathUniforms(self._seed, f"bridge of {name}", self._samples, self._repeats)
+        """The uniform numbers of a functional and a kind of extreme, the same at every level."""
+        return PathUniforms(self._seed, f"bridges: {name}", self._samples, self._repeats)

@@ -34,6 +34,11 @@ class Integral(LinearQuantity):
         """It is: its variance does not depend on the mesh."""
         return True
 
+    @property
+    def functional_name(self) -> str:
+        """The integral."""
+        return "the integral"
+
     def functional(self, space: Space) -> FloatArray:
         """The integral of the element."""
         return space.integral_weights
@@ -58,6 +63,11 @@ class Mean(LinearQuantity):
     def defined_for_white_noise(self) -> bool:
         """It is: its variance does not depend on the mesh."""
         return True
+
+    @property
+    def functional_name(self) -> str:
+        """The integral, up to a factor."""
+        return "the integral"
 
     def functional(self, space: Space) -> FloatArray:
         """The mean of the element."""

@@ -64,7 +64,7 @@ class Bridges:
         exp(-2 (c - a)(c - b) / v); this is inverted.  It is never below the ends, rounding or not.
         """
         left, right = self.ends[:-1], self.ends[1:]
-        spread = np.sqrt((right - left) ** 2 - 2.0 * self.variance * np.log(self.uniforms))
+        spread = np.hypot(right - left, np.sqrt(-2.0 * self.variance * np.log(self.uniforms)))
         outer = np.maximum if sign > 0 else np.minimum
         return np.asarray(outer(outer(left, right), 0.5 * (left + right + sign * spread)))
 
@@ -86,7 +86,10 @@ class Bridges:
         below = level - self.ends[part, samples]
         beyond = np.abs(level - self.ends[part + 1, samples])
         normal, choice = ndtri(self.draws[0]), self.draws[1]
-        g = 0.5 * normal**2 * self.variance / below
+        scale = np.maximum(below, beyond)  # squares of what is left neither overflow nor vanish
+        variance = self.variance / scale / scale
+        below, beyond = below / scale, beyond / scale
+        g = 0.5 * normal**2 * variance / below
         rest = beyond + g + np.sqrt(g * (g + 2.0 * beyond))
         with np.errstate(invalid="ignore"):  # 0 / 0 of a straight path that ends at the level, not chosen
             far = below * rest / (beyond**2 + below * rest)
@@ -106,7 +109,8 @@ class BridgedFunctional:
     functional : LinearFunctional
     noise : NoisyPaths
     name : str
-        Of the quantity: tells its uniform numbers from those of others.
+        Of the functional and the kind of extreme, never of the quantity: all that is asked of one bridge sees the
+        same uniform numbers, so that a higher level is not reached without the lower one.
     """
 
     def __init__(self, functional: LinearFunctional, noise: NoisyPaths, name: str) -> None:

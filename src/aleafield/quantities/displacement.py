@@ -74,9 +74,11 @@ class Track:
         self._start = np.where(np.isnan(self._start), here, self._start)
 
     def since_start(self, u: FloatArray, t: float) -> FloatArray:
-        """Delta, how far the pattern is from where it was first, (S,); units of length, NaN where it is nowhere."""
-        here = self.at(u, t)
-        return here - np.where(np.isnan(self._start), here, self._start)
+        """Delta, how far the pattern is from where it was first, (S,), units of length.
+
+        0 as long as there was none, NaN where there is none any more.
+        """
+        return np.where(np.isnan(self._start), 0.0, self.at(u, t) - self._start)
 
 
 class Wandering(Quantity):
@@ -84,8 +86,8 @@ class Wandering(Quantity):
 
     Delta(t) is the displacement since t = 0: on a ring that of the crest of the first Fourier mode, its turns
     counted from step to step; on an interval that of the peak.  It is positive towards larger x.  A pattern on
-    a ring that does not exist at t = 0 is followed from the end of the first step at which it does; while it does
-    not exist, Delta is not a number.
+    a ring that does not exist at t = 0 is followed from the end of the first step at which it does; until then Delta
+    is 0.
 
     Attributes
     ----------
@@ -106,6 +108,11 @@ class Wandering(Quantity):
     def is_peak_position(self, domain: Domain) -> bool:
         """On an interval, where it is the difference of two."""
         return not domain.periodic
+
+    @property
+    def followed(self) -> str:
+        """The displacement Delta(t)."""
+        return "displacement since t = 0"
 
     @property
     def history_dimension(self) -> Dimension:

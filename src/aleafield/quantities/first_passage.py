@@ -15,7 +15,7 @@ from aleafield.quantities.bridge import BridgedFunctional
 from aleafield.quantities.cubic import Cubic
 from aleafield.quantities.functional import LinearFunctional
 from aleafield.quantities.noisy import NoisyPaths
-from aleafield.quantities.point import off_the_nodes, point_evaluation, refuse_outside
+from aleafield.quantities.point import off_the_nodes, point_evaluation, refuse_outside, value_at
 from aleafield.quantities.quantity import Observer, Quantity
 from aleafield.spaces import Space
 from aleafield.stepping.view import AnyStep, StepView
@@ -69,7 +69,8 @@ class TimeToLevel(Quantity):
         """Follows the value at the point through all steps."""
         self.refuse_domain(space.domain)
         value = LinearFunctional(point_evaluation(space, self.at))
-        inside = SmoothFunctional(value) if noise is None else BridgedFunctional(value, noise, self.name)
+        name = f"maximum of {value_at(self.at)}"
+        inside = SmoothFunctional(value) if noise is None else BridgedFunctional(value, noise, name)
         return PassageObserver(value, inside, self.level)  # type: ignore[arg-type]
 
     def off_the_nodes(self, spaces: tuple[Space, ...]) -> bool:

@@ -41,5 +41,5 @@ class NoisyPaths(Protocol):
         ...
 
     def uniforms(self, name: str) -> UniformSource:
-        """The uniform numbers of the quantity of that name."""
+        """The uniform numbers of that name, of a functional and a kind of extreme."""
         ...

@@ -20,6 +20,11 @@ def point_evaluation(space: Space, at: float) -> FloatArray:
     return np.asarray(space.evaluation_matrix(np.array([at]))[0])
 
 
+def value_at(at: float) -> str:
+    """Name of the functional u -> u(at)."""
+    return f"the value at {at!r}"
+
+
 def refuse_outside(at: float, domain: Domain, key: str) -> None:
     """Raise InputError where a point does not lie in the domain."""
     if not (math.isfinite(at) and domain.low <= at <= domain.high):

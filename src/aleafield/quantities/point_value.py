@@ -6,7 +6,7 @@ from dataclasses import dataclass
 
 from aleafield.arrays import FloatArray
 from aleafield.geometry import Domain
-from aleafield.quantities.point import off_the_nodes, point_evaluation, refuse_outside
+from aleafield.quantities.point import off_the_nodes, point_evaluation, refuse_outside, value_at
 from aleafield.quantities.quantity import At, When
 from aleafield.quantities.timed import LinearQuantity
 from aleafield.spaces import Space
@@ -34,6 +34,11 @@ class Value(LinearQuantity):
     def refuse_domain(self, domain: Domain) -> None:
         """Raise InputError where the point lies outside."""
         refuse_outside(self.at, domain, self.key("at"))
+
+    @property
+    def functional_name(self) -> str:
+        """The value at that point."""
+        return value_at(self.at)
 
     def functional(self, space: Space) -> FloatArray:
         """The element's value at the point."""

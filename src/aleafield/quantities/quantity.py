@@ -141,6 +141,11 @@ class Quantity(Bindable, ABC):
         return False
 
     @property
+    def followed(self) -> str:
+        """What its history shows, in words; empty where it is the quantity itself."""
+        return ""
+
+    @property
     def history_dimension(self) -> Dimension:
         """Exponents of (activity, length, time) of its history."""
         return self.dimension

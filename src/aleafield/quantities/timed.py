@@ -96,6 +96,11 @@ class LinearQuantity(TimedQuantity):
     def functional(self, space: Space) -> FloatArray:
         """Weights (n,) of the unknowns of `space`."""
 
+    @property
+    @abstractmethod
+    def functional_name(self) -> str:
+        """What the functional is up to a factor, the same for all quantities that read it."""
+
     def reading(self, space: Space) -> Reading:
         """The functional as it stands."""
         return plain(LinearFunctional(self.functional(space)))
@@ -116,7 +121,8 @@ class LinearQuantity(TimedQuantity):
             return super().observer(space, duration)
         assert isinstance(self.when, Over)
         self.refuse_domain(space.domain)
-        inside = BridgedFunctional(LinearFunctional(self.functional(space)), noise, self.name)
+        name = f"{self.when.reduce} of {self.functional_name}"
+        inside = BridgedFunctional(LinearFunctional(self.functional(space)), noise, name)
         return BridgedWindow(self.when, inside, Clock(duration))
 
 

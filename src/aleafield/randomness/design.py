@@ -15,6 +15,7 @@ import numpy as np
 from aleafield.arrays import FloatArray, IntArray
 from aleafield.errors import InputError
 from aleafield.randomness.copula import KEY, Copula
+from aleafield.randomness.families import ExchangePoints, Family, TrajectoryPoints
 from aleafield.randomness.inputs import Dependence, Input
 from aleafield.randomness.points import PlainPoints, Points, SobolPoints
 from aleafield.randomness.sampled import Sampled
@@ -34,11 +35,11 @@ class Follower(NamedTuple):
 
 
 class Design:
-    """The inputs of every parameter sample.
+    """The inputs of every parameter sample, and of the further runs of each family.
 
     Quasi-Monte Carlo: sample i is point i // 16 of scrambling i mod 16. Monte Carlo: independent points.
-    Points have twice as many columns as there are inputs; the second half serves designs that exchange
-    single inputs.
+    Points have twice as many columns as there are inputs; the second half serves the family that exchanges
+    inputs.
 
     Parameters
     ----------
@@ -49,11 +50,14 @@ class Design:
         the first of them, chooses the row.
     method : "monte carlo" or "quasi-monte carlo"
     seed : int
+    groups : sequence of sequences of int, optional
+        Columns that the exchange family exchanges together as one input, by default each alone. They need not be
+        all columns.
 
     Attributes
     ----------
-    inputs, dependence, method, seed
-        As given.
+    inputs, dependence, method, seed, groups
+        As given; groups as tuples.
 
     Raises
     ------
@@ -61,15 +65,29 @@ class Design:
         The dependence does not fit the inputs.
     """
 
-    def __init__(self, inputs: Sequence[Input], dependence: Dependence, method: Method, seed: int) -> None:
+    def __init__(
+        self,
+        inputs: Sequence[Input],
+        dependence: Dependence,
+        method: Method,
+        seed: int,
+        groups: Sequence[Sequence[int]] | None = None,
+    ) -> None:
         self.inputs = tuple(inputs)
+        d = len(self.inputs)
+        self.groups = tuple((column,) for column in range(d)) if groups is None else tuple(map(tuple, groups))
         self.dependence = dependence
         self.method: Method = method
         self.seed = seed
         self._copula = Copula([entry.path for entry in self.inputs], dependence.rank_correlation)
         self._followers = _followers(self.inputs, dependence) if dependence.sampled_together else {}
         points = PlainPoints if method == "monte carlo" else SobolPoints
-        self._points: Points = points(2 * len(self.inputs), seed)
+        self._points: Points = points(2 * d, seed)
+        self._further: dict[Family, Points] = {
+            "held out": PlainPoints(d, seed, "held out"),
+            "exchange": ExchangePoints(self._points, self.groups),
+            "screening": TrajectoryPoints(d, seed),
+        }
 
     def unit_points(self, indices: IntArray) -> FloatArray:
         """Independent uniform points of the samples.
@@ -84,14 +102,29 @@ class Design:
         float array, (S, 2 d)
             Strictly between 0 and 1; d is the number of inputs.
         """
-        wanted = np.asarray(indices, dtype=np.int64)
-        if wanted.ndim != 1 or (wanted < 0).any():
-            raise ValueError("indices of samples are a list of integers that are not negative")
-        return self._points.at(wanted)
+        return self._points.at(_checked(indices))
+
+    def points(self, family: Family, indices: IntArray) -> FloatArray:
+        """Points of the unit cube of the inputs of a family's runs.
+
+        Parameters
+        ----------
+        family : Family
+        indices : int array, (S,)
+            Within the family, in any order.
+
+        Returns
+        -------
+        float array, (S, d)
+            Strictly between 0 and 1, one column for every input.
+        """
+        if family == "main":
+            return self.unit_points(indices)[:, : len(self.inputs)]
+        return self._further[family].at(_checked(indices))
 
     def values(self, indices: IntArray) -> dict[str, FloatArray]:
         """The inputs of the samples: path -> (S,), in the units of each input."""
-        return self.values_at(self.unit_points(indices)[:, : len(self.inputs)])
+        return self.values_at(self.points("main", indices))
 
     def values_at(self, points: FloatArray) -> dict[str, FloatArray]:
         """The inputs at points of the unit cube, through dependence and laws.
@@ -114,6 +147,13 @@ class Design:
             else:
                 values[entry.path] = follower.values[follower.law.rank(dependent[:, follower.leader])]
         return values
+
+
+def _checked(indices: IntArray) -> IntArray:
+    wanted = np.asarray(indices, dtype=np.int64)
+    if wanted.ndim != 1 or (wanted < 0).any():
+        raise ValueError("indices of samples are a list of integers that are not negative")
+    return wanted
 
 
 def _followers(inputs: Sequence[Input], dependence: Dependence) -> dict[int, Follower]:

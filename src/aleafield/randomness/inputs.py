@@ -40,3 +40,8 @@ class Dependence:
 
     rank_correlation: tuple[tuple[str, str, float], ...] = ()
     sampled_together: bool = False
+
+    @property
+    def independent(self) -> bool:
+        """Whether the inputs are independent of one another after all; correlations of 0 join nothing."""
+        return not self.sampled_together and not any(value for _, _, value in self.rank_correlation)

@@ -36,17 +36,25 @@ class Points(ABC):
 
 
 class PlainPoints(Points):
-    """Point i takes the Philox counters from i times the counters per point."""
+    """Point i takes the Philox counters from i times the counters per point.
 
-    def __init__(self, columns: int, seed: int) -> None:
+    Parameters
+    ----------
+    columns, seed : int
+    purpose : str
+        Points of different purposes have nothing in common.
+    """
+
+    def __init__(self, columns: int, seed: int, purpose: str = "parameter samples") -> None:
         self._columns = columns
         self._seed = seed
+        self._purpose = purpose
 
     def at(self, indices: IntArray) -> FloatArray:
         points = np.empty((len(indices), self._columns))
         counters = -(-self._columns // 4)
         for first, count, rows, offsets in _runs(indices):
-            source = bit_generator(self._seed, "parameter samples")
+            source = bit_generator(self._seed, self._purpose)
             source.advance(first * counters)
             raw = source.random_raw(count * counters * 4).reshape(count, counters * 4)[:, : self._columns]
             points[rows] = uniforms(raw)[offsets]

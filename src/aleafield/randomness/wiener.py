@@ -41,7 +41,7 @@ class WienerPaths:
 
     Notes
     -----
-    Memory: 8 * 32 * S * m * (depth + 1) bytes for depths up to 6.
+    Memory: see `path_bytes`.
     """
 
     def __init__(
@@ -77,6 +77,12 @@ class WienerPaths:
             increments = halves.reshape(-1, *increments.shape[1:])
             length *= 0.5
         return increments
+
+
+def path_bytes(modes: int, depth: int) -> int:
+    """Memory of one realization of `WienerPaths`: a block of numbers of each generation of halvings."""
+    numbers = sum(max(_BLOCK, 1 << max(0, generation - 1)) for generation in range(depth + 1))
+    return 8 * modes * numbers
 
 
 class _Normals:

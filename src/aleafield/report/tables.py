@@ -130,9 +130,9 @@ def field_table(findings: Sequence[FieldFindings], units: Units, confidence: str
     heads = (
         labelled("t", units.time),
         "variance",
-        f"{confidence} interval",
+        f"{confidence} interval (sampling)",
         "correlation length",
-        f"{confidence} interval",
+        f"{confidence} interval (sampling)",
     )
     return table("Variance and correlation length of the field", heads, rows)
 

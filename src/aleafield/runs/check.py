@@ -11,14 +11,13 @@ import numpy as np
 
 from aleafield.errors import InputError
 from aleafield.field.equation import FieldEquation
-from aleafield.field.kernels import CosineKernel, FormulaKernel
-from aleafield.field.noise_modes import NoiseModes
-from aleafield.field.rates import FormulaRate, LinearRate
+from aleafield.field.kernels import CosineKernel
 from aleafield.forward.field_model import FieldModel
 from aleafield.projection.discretisation import Discretisation
 from aleafield.projection.pairing import Pairing
-from aleafield.projection.smoothness import drive_is_smooth, initial_is_smooth, kernel_is_smooth, typical
+from aleafield.runs.hypotheses import Hypothesis, hypotheses
 from aleafield.runs.model import Choices, design_of, field_model, noise_modes
+from aleafield.runs.noise_words import noise_warnings, noise_words
 from aleafield.runs.plan_file import count_probes
 from aleafield.runs.resolution import COARSE, MeshWidth, Stability, domain_notes, mesh_width, stability
 from aleafield.sampling.allocation import Allocation, allocate
@@ -32,28 +31,6 @@ MANY_STEPS = 20_000
 """Steps from which a run is called long."""
 MOST_DRAWN = 1 << 16
 """Samples drawn to look for impossible numbers."""
-
-
-@dataclass(frozen=True)
-class Hypothesis:
-    """One hypothesis of the convergence theory.
-
-    Attributes
-    ----------
-    name : str
-    holds : bool or None
-        None where it cannot be told.
-    reason : str
-    """
-
-    name: str
-    holds: bool | None
-    reason: str
-
-    @property
-    def verdict(self) -> str:
-        """ "holds", "does not hold" or "not known"."""
-        return "not known" if self.holds is None else "holds" if self.holds else "does not hold"
 
 
 @dataclass(frozen=True)
@@ -175,88 +152,15 @@ def _checked(study: Study) -> CheckResult:
         time=_time(study, model, stable),
         resolution=_resolution(widths, unit),
         sampling=_sampling(allocation, model),
-        noise=None if noise is None else _noise(study, noise, unit),
+        noise=None if noise is None else noise_words(study, noise, unit),
         notes=(*_lumping(model.pairing), *_dependence(study), *domain_notes(bound, unit)),
         warnings=(
             *study.warnings,
-            *_noise_warnings(study, noise),
+            *noise_warnings(study, noise),
             *_start(discretisation, bound, len(first)),
             *_warnings(study, model.pairing, widths, stable),
         ),
     )
-
-
-def hypotheses(equation: FieldEquation, model: FieldModel) -> list[Hypothesis]:
-    """The hypotheses under which the theory gives an order, and whether they hold for an unbound equation."""
-    rate, sample = equation.rate, typical(equation)
-    unknown = isinstance(rate, FormulaRate)
-    bounded = None if unknown else rate.bounded
-    form = "a formula" if unknown else "the form"
-    smooth_rate = rate.smoothness == "smooth"
-    if unknown and smooth_rate:
-        slope: tuple[bool | None, str] = (
-            None,
-            "smooth by its formula; whether its slope is bounded is not known",
-        )
-    elif smooth_rate:
-        slope = (True, "f is smooth and its slope is bounded")
-    elif rate.smoothness == "step":
-        slope = (
-            False,
-            "f jumps at the threshold; the crossings are resolved, only observed orders are claimed",
-        )
-    else:
-        slope = (False, "f has a kink or a jump")
-    drive, initial = drive_is_smooth(sample), initial_is_smooth(sample)
-    found = [
-        Hypothesis(
-            "bounded rate",
-            bounded,
-            f"{form} is bounded"
-            if bounded
-            else "a linear rate grows without bound"
-            if isinstance(rate, LinearRate)
-            else "whether the formula is bounded is not known; solutions may blow up",
-        ),
-        Hypothesis("differentiable rate with bounded derivative", *slope),
-        _continuous_kernel(sample),
-        Hypothesis(
-            "smooth drive and initial state",
-            drive and initial,
-            "smooth in x"
-            if drive and initial
-            else f"the {'initial state' if drive else 'drive'} has a kink or a jump in x",
-        ),
-        Hypothesis(
-            "switches of the drive on the schedule",
-            not model.switching.uncertain,
-            "at uncertain times, or at times that depend on x: order 1 in time"
-            if model.switching.uncertain
-            else f"at {', '.join(f'{t:g}' for t in model.switching.times)}"
-            if model.switching.times
-            else "the drive does not switch",
-        ),
-    ]
-    if model.noise is not None:
-        found.append(
-            Hypothesis(
-                "noise that is a function of x",
-                not model.noise.white,
-                "white in space: the field is no function, and only what is integrated over space has a limit"
-                if model.noise.white
-                else "its variance at a point is finite",
-            )
-        )
-    return found
-
-
-def _continuous_kernel(sample: FieldEquation) -> Hypothesis:
-    name = "continuous kernel"
-    if kernel_is_smooth(sample):
-        return Hypothesis(name, True, "smooth everywhere, the diagonal included")
-    if any(isinstance(part, FormulaKernel) for part in sample.kernel.parts.values()):
-        return Hypothesis(name, None, "not smooth; whether it has kinks or jumps is not known")
-    return Hypothesis(name, True, "with a kink on the diagonal, which spoils rules for smooth integrands")
 
 
 def _scheme(pairing: Pairing, discretisation: Discretisation) -> dict[str, Any]:
@@ -315,45 +219,6 @@ def _resolution(widths: MeshWidth, unit: str) -> dict[str, Any]:
         "gap_over_width": widths.ratio,
         "words": words,
     }
-
-
-def _noise(study: Study, noise: NoiseModes, unit: str) -> dict[str, Any]:
-    assert study.equation.noise is not None
-    correlation = study.equation.noise.correlation.name
-    ring = f"{noise.modes} modes of a ring of length {noise.length:.5g}{unit}"
-    if noise.dropped is None:
-        words = [f"{correlation}: {ring}"]
-    else:
-        words = [f"{correlation} correlation: {ring} leave out {noise.dropped:.2g} of the variance"]
-    if noise.image_error > 0:
-        words.append(f"the images on that ring change the correlation by less than {noise.image_error:.1g}")
-    words.append("Euler-Maruyama: strong order 1 for additive noise and a smooth rate")
-    return {
-        "correlation": correlation,
-        "modes": noise.modes,
-        "ring_length": noise.length,
-        "dropped_share": noise.dropped,
-        "image_error": noise.image_error,
-        "words": words,
-    }
-
-
-def _noise_warnings(study: Study, noise: NoiseModes | None) -> list[str]:
-    if noise is None:
-        return []
-    found = [noise.note] if noise.note else []
-    if noise.white:
-        found.append(
-            "noise.correlation: white in space: mean and spread of the field at a point, as stored and drawn, "
-            "belong to this mesh and grow like 1 / h"
-        )
-    for quantity in study.quantities:
-        if quantity.open_side is not None or quantity.open_occurrence is not None:
-            found.append(
-                f"{quantity.key('over')}: between the ends of steps a noisy path is not seen, and what it does there "
-                "shrinks like the root of the step only: one side of the intervals stays open"
-            )
-    return found
 
 
 def _sampling(allocation: Allocation, model: FieldModel) -> dict[str, Any]:

@@ -5,9 +5,9 @@ Only the protocol of a forward model is seen here; which field it solves, and wh
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Mapping
 from contextlib import ExitStack, closing
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 from aleafield.archive.chunk_store import ChunkStore
 from aleafield.archive.chunks import LANE, Task, cut
@@ -20,8 +20,8 @@ from aleafield.archive.layout import Layout
 from aleafield.archive.sources import EarlierEnsemble, InTurn, StoredChunks
 from aleafield.archive.table import write_table
 from aleafield.ensemble.forward_model import ForwardModel
-from aleafield.ensemble.level import Level
 from aleafield.errors import Interrupted
+from aleafield.randomness.families import Family
 from aleafield.runs.plan_file import Plan
 from aleafield.runs.progress import Progress
 from aleafield.runs.workers import Solver, solved
@@ -40,15 +40,17 @@ class Cost:
 
 @dataclass(frozen=True)
 class Stored:
-    """How much of an ensemble is in place: realizations, and those that are probes; 0 where there is none."""
+    """How much of an ensemble is in place: realizations, those that are probes, runs of other families; 0 and none
+    where there is no ensemble."""
 
     realizations: int = 0
     probes: int = 0
+    families: Mapping[Family, int] = field(default_factory=dict)
 
     @staticmethod
     def whole(plan: Plan) -> Stored:
         """All that a plan asks for."""
-        return Stored(plan.realizations, plan.probe_realizations)
+        return Stored(plan.realizations, plan.probe_realizations, dict(plan.families))
 
 
 @dataclass(frozen=True)
@@ -64,17 +66,19 @@ def stored_ensemble(layout: Layout) -> Stored:
     if not layout.ensemble.exists():
         return Stored()
     with reading(layout.ensemble) as reader:
-        return Stored(len(reader), reader.probes)
+        return Stored(len(reader), reader.probes, reader.families)
 
 
-def tasks_of(plan: Plan, stored: Stored) -> dict[Level, list[Task]]:
-    """What is to be solved at each level beyond what is in place, the extra levels first."""
-    tasks = {}
+def tasks_of(plan: Plan, stored: Stored) -> list[Task]:
+    """What is to be solved beyond what is in place: the extra levels, the main sample, the other families."""
+    tasks: list[Task] = []
     for level in plan.extra_levels:
         width = min(plan.chunk_width, -(-plan.probes // LANE) * LANE) * plan.repeats
-        tasks[level] = list(cut(level, stored.probes, plan.probe_realizations, width))
+        tasks += cut(level, stored.probes, plan.probe_realizations, width)
     width = plan.chunk_width * plan.repeats
-    tasks[plan.level] = list(cut(plan.level, stored.realizations, plan.realizations, width))
+    tasks += cut(plan.level, stored.realizations, plan.realizations, width)
+    for family, count in plan.families.items():
+        tasks += cut(plan.level, stored.families.get(family, 0), count, plan.chunk_width, family)
     return tasks
 
 
@@ -94,7 +98,7 @@ def execute(
         On Ctrl-C, when a worker dies or when the disk fails; what was stored is safe.
     """
     store = ChunkStore(layout)
-    tasks = [task for level in tasks_of(plan, stored).values() for task in level]
+    tasks = tasks_of(plan, stored)
     missing = [task for task in tasks if not store.holds(task)]
     work = {task: plan.operations[task.level.label] * task.count for task in tasks}
     solver = Solver(model, plan.level, plan.moment_times, plan.kept_times)
@@ -124,12 +128,14 @@ def put_together(layout: Layout, plan: Plan, question: Question) -> Summary:
     What an ensemble already in place holds is taken from it, the rest from the chunks.
     """
     stored = stored_ensemble(layout)
-    cost = Cost()
+    cost, held_state = Cost(), None
     with ExitStack() as stack:
         sources: list[EarlierEnsemble | StoredChunks] = []
         if stored.realizations:
             reader = stack.enter_context(reading(layout.ensemble))
-            state = read_state(layout, stored.realizations, str(reader.attribute("field_state_sha256")))
+            digest = reader.attribute("field_state_sha256")
+            state = None if digest is None else read_state(layout, stored.realizations, str(digest))
+            held_state = digest if stored.realizations == plan.realizations else None
             sources.append(EarlierEnsemble(reader, plan.level, state))
             cost = Cost(float(reader.attribute("wall_time_s")), float(reader.attribute("processor_time_s")))
         if stored != Stored.whole(plan):
@@ -141,6 +147,7 @@ def put_together(layout: Layout, plan: Plan, question: Question) -> Summary:
             question.describe(plan, cost),
             InTurn(*sources),
             lambda columns: question.summarise(columns, plan, cost),
+            held_state,
         )
     with reading(layout.ensemble) as reader:
         write_table(layout, reader)

@@ -24,6 +24,15 @@ ROWS = 64
 POINTS_PER_NODE = 4
 """Equally spaced points of a field whose nodes are not."""
 
+SAMPLING_ONLY = (
+    "the interval holds the sampling error alone: fields are stored at the run's level only; ask for `value` or "
+    "`spectral power` to see what mesh, step and modes do"
+)
+ONE_OVER_E = (
+    "the distance at which the correlation of the fluctuations falls to 1/e: the correlation_length of an "
+    "exponential correlation, sqrt(2) times that of a gaussian one"
+)
+
 
 def field_entries(reader: EnsembleReader, study: Study, plan: Plan) -> list[dict[str, object]] | None:
     """Variance over realizations and correlation length at the kept times; None without noise.
@@ -48,8 +57,8 @@ def field_entries(reader: EnsembleReader, study: Study, plan: Plan) -> list[dict
         entries.append(
             {
                 "time": time,
-                "variance": _stated(found.variance).as_json(),
-                "correlation_length": _stated(found.correlation_length).as_json(),
+                "variance": _stated(found.variance, SAMPLING_ONLY).as_json(),
+                "correlation_length": _stated(found.correlation_length, ONE_OVER_E, SAMPLING_ONLY).as_json(),
             }
         )
     return entries
@@ -61,15 +70,15 @@ def _few(times: tuple[float, ...]) -> tuple[float, ...]:
     return times[::-1][::every][::-1]
 
 
-def _stated(estimate: Estimate) -> Statement:
-    """A statement of which nothing but the sampling error is known."""
+def _stated(estimate: Estimate, *notes: str) -> Statement:
+    """A statement of which nothing but the sampling error is known: no total, and it says so."""
     if estimate.value is None or estimate.low is None or estimate.high is None:
         return no_statement(estimate.reason or "not determined")
     half = max(estimate.value - estimate.low, estimate.high - estimate.value)
     if not math.isfinite(half):
         return no_statement("its error is beyond the range of double precision")
-    error = {**dict.fromkeys(ERROR_KEYS), "sampling": half, "total": half}
-    return Statement(estimate.value, error, (estimate.low, estimate.high))
+    error = {**dict.fromkeys(ERROR_KEYS), "sampling": half}
+    return Statement(estimate.value, error, (estimate.low, estimate.high), notes=notes)
 
 
 def _groups(reader: EnsembleReader, plan: Plan) -> tuple[IntArray, int]:

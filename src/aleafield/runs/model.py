@@ -15,7 +15,7 @@ from aleafield.geometry import Ring
 from aleafield.projection.pairing import resolve
 from aleafield.quantities import PeakPosition
 from aleafield.randomness.design import Design
-from aleafield.runs.probing import probe_demand
+from aleafield.runs.probing import affordable_share, probe_demand
 from aleafield.runs.resolution import stable_step
 from aleafield.sampling.allocation import Allocation
 from aleafield.study.study import Study
@@ -24,6 +24,8 @@ PILOT_TIMES = 21
 """Times spread over the run at which pilots compare fields."""
 STABILITY_SAMPLES = 4096
 """Samples whose largest stable step is looked at, from the front of the stream, however many a run has."""
+MOST_FURTHER_HALVINGS = 3
+"""How often a step that the pilots accept is halved again for the sake of the error split."""
 BLOCK = 256
 """Samples whose kernels are looked at together."""
 
@@ -91,12 +93,29 @@ def make_choices(study: Study, allocation: Allocation) -> Choices:
     step, notes = _time_step(study, allocation, noise)
     if noise is not None and noise.note:
         notes = (*notes, noise.note)
+    if noise is not None and study.scheme.time_step is None:
+        step = _step_for_the_split(study, allocation, Choices(step, {}, noise))
     choices = Choices(step, {}, noise, notes=notes)
     model = field_model(study, allocation, choices)
     choices = replace(choices, peak_references=_peak_references(study, model))
     if noise is not None:
         choices = replace(choices, probe_demand=probe_demand(field_model(study, allocation, choices)))
     return choices
+
+
+def _step_for_the_split(study: Study, allocation: Allocation, choices: Choices) -> float:
+    """The step, halved until as many probes as may be afforded tell the time part from its own noise.
+
+    First passages and fronts jump from path to path: few paths differ much between two steps, and the mean of such
+    differences needs many probes.  A smaller step makes them rarer.
+    """
+    step = choices.time_step
+    for _ in range(MOST_FURTHER_HALVINGS):
+        model = field_model(study, allocation, replace(choices, time_step=step))
+        if probe_demand(model, "time") <= affordable_share(model):
+            break
+        step /= 2.0
+    return step
 
 
 def _peak_references(study: Study, model: FieldModel) -> dict[str, float]:
@@ -160,5 +179,8 @@ def _time_step(
         times = ends[np.unique(np.linspace(0, len(ends) - 1, PILOT_TIMES).round().astype(np.int64))]
     aim = study.aim
     demand = None if aim is None or aim.relative else Demand(aim.quantity, aim.tolerance)
+    note = ""
+    if demand is not None and all(q.name != demand.quantity for q in study.quantities):
+        note = f'time_step = "auto" is not judged by {demand.quantity}, which looks inside the steps of noisy paths'
     settled = choose_halvings(model, model.level, pilot_realizations(model), list(times), demand)
-    return base / 2**settled.halvings, (settled.note,) if settled.note else ()
+    return base / 2**settled.halvings, tuple(filter(None, (settled.note, note)))

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import json
 from collections.abc import Mapping
-from dataclasses import asdict, dataclass, replace
+from dataclasses import asdict, dataclass, field, replace
 from typing import Any
 
 from aleafield.accounting import SHARE, number_of_probes, share_of_probes
@@ -14,8 +14,9 @@ from aleafield.archive.durable import write_json
 from aleafield.archive.layout import Layout
 from aleafield.ensemble.forward_model import ForwardModel
 from aleafield.ensemble.level import Level, PathPart
-from aleafield.errors import ArchiveError
+from aleafield.errors import ArchiveError, InputError
 from aleafield.field.noise_modes import NoiseModes
+from aleafield.randomness.families import Family
 from aleafield.sampling.allocation import Allocation
 
 SCHEMA = 1
@@ -61,13 +62,15 @@ class Plan:
         Below the results folder: where relative paths of the study's data files start.
     operators : tuple of mapping
         By part of the kernel: operator, its error and the reason for the choice.
-    notes : tuple of str
-        What the user must know of these choices.
+    notes, choice_notes : tuple of str
+        What the user must know of all this, and the part of it that an extension does not change.
     noise : NoiseModes or None
         The noise modes that are kept; None without noise.
     probe_demand : float
         Least number of probes over that of samples, so that the noise of the error split stays small; 0
         without noise.
+    families : mapping of family to count
+        Runs at the run's level besides the main sample, at least one each; see `with_rows`.
     """
 
     digest: str
@@ -87,8 +90,10 @@ class Plan:
     data_folder: str
     operators: tuple[Mapping[str, Any], ...] = ()
     notes: tuple[str, ...] = ()
+    choice_notes: tuple[str, ...] = ()
     noise: NoiseModes | None = None
     probe_demand: float = 0.0
+    families: Mapping[Family, int] = field(default_factory=dict)
 
     @property
     def samples(self) -> int:
@@ -158,9 +163,17 @@ def count_probes(
     return probes, share_of_probes(probes, samples, main, extra)
 
 
-def plan_notes(allocation: Allocation, probes: int, probe_share: float) -> tuple[str, ...]:
+def plan_notes(
+    allocation: Allocation, probes: int, probe_share: float, probe_demand: float = 0.0
+) -> tuple[str, ...]:
     """What a user must know of the number of samples and probes."""
     notes = [allocation.note] if allocation.note else []
+    wanted = least_number(allocation.samples, probe_demand)
+    if probes < min(wanted, allocation.samples):
+        notes.append(
+            f"differences between levels are noisy: the error split asks for {wanted} probes and has {probes}, which "
+            "cost as much as the samples already; a smaller time_step or more nodes make the differences smaller"
+        )
     if probe_share > SHARE and allocation.realizations > 1:
         notes.append(
             f"the error split solves {probes} of the {allocation.samples} samples at finer and coarser levels "
@@ -171,20 +184,49 @@ def plan_notes(allocation: Allocation, probes: int, probe_share: float) -> tuple
 
 
 def with_more_samples(plan: Plan, model: ForwardModel, allocation: Allocation) -> Plan:
-    """The plan of an extension: more samples, the probes anew for their number, nothing else anew."""
+    """The plan of an extension: more samples, the probes anew for their number, nothing else anew.
+
+    Other families keep their runs; who wants more of them for more samples asks `with_rows`.
+    """
     probes, share = count_probes(model, plan.level, plan.path, allocation.samples, plan.probe_demand)
     return replace(
         plan,
         allocation=allocation,
         probes=probes,
         probe_share=share,
-        notes=plan_notes(allocation, probes, share),
+        notes=(*plan.choice_notes, *plan_notes(allocation, probes, share, plan.probe_demand)),
     )
+
+
+def with_rows(plan: Plan, family: Family, count: int) -> Plan:
+    """The plan with so many runs of a family in all, for a stage that is decided on what earlier ones gave.
+
+    Raises
+    ------
+    InputError
+        Under noise.
+    ValueError
+        For the main family, whose number the allocation says, for no run, and for fewer than there are.
+    """
+    if plan.noise is not None:
+        raise InputError(
+            "family",
+            f"{family!r} under noise",
+            "under noise the main sample is the only one: add samples to it",
+        )
+    if family == "main" or count < max(1, plan.families.get(family, 0)):
+        raise ValueError(
+            f"{count} runs of the family {family!r}: of another than main, at least as many as before"
+        )
+    return replace(plan, families={**plan.families, family: count})
 
 
 def write_plan(layout: Layout, plan: Plan) -> None:
     """Store a plan as plan.json."""
-    write_json(layout.plan, {"schema": SCHEMA, **asdict(plan), "path": [_part_as_json(p) for p in plan.path]})
+    document = {"schema": SCHEMA, **asdict(plan), "path": [_part_as_json(p) for p in plan.path]}
+    if not plan.families:
+        del document["families"]
+    write_json(layout.plan, document)
 
 
 def read_plan(layout: Layout) -> Plan:
@@ -218,7 +260,7 @@ def _from_json(document: Mapping[str, Any]) -> Plan:
     content["path"] = tuple(_part_from_json(part) for part in content["path"])
     content["allocation"] = Allocation(**content["allocation"])
     content["noise"] = None if content["noise"] is None else NoiseModes(**content["noise"])
-    for name in ("schedule_times", "moment_times", "kept_times", "operators", "notes"):
+    for name in ("schedule_times", "moment_times", "kept_times", "operators", "notes", "choice_notes"):
         content[name] = tuple(content[name])
     return Plan(**content)
 

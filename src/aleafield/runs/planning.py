@@ -73,7 +73,8 @@ def make_plan(study: Study, chunk_width: int | None = None) -> tuple[Plan, Field
         kept_times=kept_times(study.keep, np.asarray(model.schedule().times).tolist()),
         data_folder=data_folder(study.source.data_files),
         operators=operators_of(model),
-        notes=(*choices.notes, *plan_notes(allocation, probes, share)),
+        notes=(*choices.notes, *plan_notes(allocation, probes, share, choices.probe_demand)),
+        choice_notes=choices.notes,
         noise=choices.noise,
         probe_demand=choices.probe_demand,
     )

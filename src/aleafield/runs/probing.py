@@ -2,22 +2,29 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 
 import numpy as np
 
-from aleafield.accounting import PilotDifferences, anticipated_factor, demand
+from aleafield.accounting import LARGEST_SHARE, PilotDifferences, anticipated_factor, demand
 from aleafield.arrays import FloatArray
-from aleafield.ensemble.level import Level
+from aleafield.ensemble.level import Level, PathPart
 from aleafield.ensemble.records import Records
 from aleafield.forward.field_model import FieldModel
 from aleafield.forward.pilots import PILOTS
+from aleafield.runs.plan_file import extra_levels
 
-MOST_REPEATS = 4
+MOST_REPEATS = 2
 """Noise paths of each pilot that are looked at, the first ones."""
 
 
-def probe_demand(model: FieldModel) -> float:
+def affordable_share(model: FieldModel) -> float:
+    """Share of the samples that may be probes where their extra levels cost as much as all samples."""
+    extra = extra_levels(model.path(model.level), model.level)
+    return LARGEST_SHARE * model.operations(model.level) / sum(model.operations(level) for level in extra)
+
+
+def probe_demand(model: FieldModel, part: str | None = None) -> float:
     """Share of the samples that must be probes for the noise of the error split to stay small.
 
     Differences between levels of a noisy field are noisy themselves: where they spread widely against the
@@ -28,11 +35,13 @@ def probe_demand(model: FieldModel) -> float:
     ----------
     model : FieldModel
         With noise.
+    part : str, optional
+        One part of the discretisation alone.
     """
-    return demand(_differences(model))
+    return demand(_differences(model, [p for p in model.path(model.level) if part in (None, p.name)]))
 
 
-def _differences(model: FieldModel) -> Iterator[PilotDifferences]:
+def _differences(model: FieldModel, path: Sequence[PathPart]) -> Iterator[PilotDifferences]:
     paths = min(model.repeats, MOST_REPEATS)
     pilots = (np.arange(PILOTS)[:, None] * model.repeats + np.arange(paths)).ravel().astype(np.int64)
     found: dict[Level, Records] = {}
@@ -46,7 +55,7 @@ def _differences(model: FieldModel) -> Iterator[PilotDifferences]:
         return records.values[name].reshape(PILOTS, paths)
 
     run = at(model.level)
-    for part in model.path(model.level):
+    for part in path:
         factor = anticipated_factor(part.expected_order, part.ratio, part.known_factor)
         coarser, finer = (at(level) for level in part.pair)
         for quantity in model.quantities:

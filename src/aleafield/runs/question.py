@@ -7,7 +7,6 @@ from datetime import UTC, datetime
 
 from aleafield.archive.description import Axes, Description, InputColumn, QuantityColumn
 from aleafield.arrays import FloatArray
-from aleafield.quantities.displacement import Wandering
 from aleafield.runs.execution import Cost, Question
 from aleafield.runs.plan_file import Plan
 from aleafield.runs.summary import summarise
@@ -39,7 +38,7 @@ def describe(study: Study, plan: Plan, cost: Cost, x: FloatArray) -> Description
                 study.quantity_units(q),
                 q.measure,
                 q.may_not_occur,
-                "displacement since the start" if isinstance(q, Wandering) else "",
+                q.followed,
                 study.units.derived(q.history_dimension),
             )
             for q in study.quantities
@@ -59,6 +58,7 @@ def describe(study: Study, plan: Plan, cost: Cost, x: FloatArray) -> Description
             field_units=study.activity_unit,
         ),
         attributes=_provenance(study, plan, cost),
+        families=plan.families,
     )
 
 
@@ -97,4 +97,5 @@ def _provenance(study: Study, plan: Plan, cost: Cost) -> dict[str, object]:
 
 def _how_many(plan: Plan) -> str:
     paths = f" with {plan.repeats} noise paths each" if plan.repeats > 1 else ""
-    return f"{plan.samples} samples{paths}"
+    further = "".join(f", {count} runs {family}" for family, count in plan.families.items())
+    return f"{plan.samples} samples{paths}{further}"

@@ -11,7 +11,6 @@ from aleafield.archive.durable import make_folder, remove, write_bytes
 from aleafield.archive.ensemble_reader import EnsembleReader, reading
 from aleafield.archive.field_state import BAND_SAMPLES, FAN_REALIZATIONS
 from aleafield.archive.layout import Layout
-from aleafield.quantities.displacement import Wandering
 from aleafield.report.data import FieldRecord, HistoryRecord, Provenance, ReportData
 from aleafield.report.figures import figure_files, report_figures
 from aleafield.report.findings import quantity_findings
@@ -71,14 +70,20 @@ def write_report(layout: Layout, study: Study, plan: Plan, summary: Mapping[str,
 
 
 def _histories(study: Study, reader: EnsembleReader) -> dict[str, HistoryRecord]:
-    """The quantities that were followed in time."""
-    found = {}
+    """The quantities that were followed in time; what several of them show alike stands once, with the first."""
+    found: dict[str, HistoryRecord] = {}
     for quantity in study.quantities:
         history = reader.histories(quantity.name)
         if history is not None:
             fan, paths = history
+            others = (one for one in found.values() if one.followed)
+            if any(
+                one.followed == quantity.followed and np.array_equal(one.fan, fan, equal_nan=True)
+                for one in others
+            ):
+                continue
             found[quantity.name] = HistoryRecord(
-                followed="displacement since t = 0" if isinstance(quantity, Wandering) else "",
+                followed=quantity.followed,
                 units=study.units.derived(quantity.history_dimension),
                 t=reader.axis("t_moments"),
                 fan=fan,

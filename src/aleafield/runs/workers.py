@@ -38,7 +38,7 @@ class Solver:
     ----------
     model : ForwardModel
     level : Level
-        The run's: only there fields are looked at.
+        The run's: only there, and only in the main sample, fields are looked at.
     moment_times, kept_times : tuple of float
     """
 
@@ -52,9 +52,9 @@ class Solver:
         start = time.process_time()
         n_kept = min(max(MOST_KEPT - task.first, 0), task.count) if self.kept_times else 0
         times: list[float] = []
-        if task.level == self.level:
+        if task.level == self.level and task.family == "main":
             times = sorted({*self.moment_times, *(self.kept_times if n_kept else ())})
-        records = self.model.evaluate(task.level, task.indices, times).first(task.count)
+        records = self.model.evaluate(task.level, task.indices, times, task.family).first(task.count)
         state = kept = None
         if records.fields is not None:
             at_moments = np.searchsorted(times, self.moment_times)

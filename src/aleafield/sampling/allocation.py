@@ -6,7 +6,7 @@ from dataclasses import dataclass, replace
 
 from aleafield.errors import InputError
 from aleafield.randomness.points import SCRAMBLINGS
-from aleafield.sampling.request import SamplingMethod, SamplingRequest
+from aleafield.sampling.request import AskedMethod, SamplingMethod, SamplingRequest
 
 LEAST_POINTS = 4
 """Least number of points of a scrambling, a power of two."""
@@ -29,6 +29,9 @@ class Allocation:
         What was rounded or changed, and why; empty where nothing was.
     repeats : int
         Noise paths of each parameter sample.
+    surrogate : bool
+        Whether statistics are wanted from a polynomial chaos expansion fitted to these samples; the samples are
+        the same without.
     """
 
     method: SamplingMethod
@@ -36,6 +39,7 @@ class Allocation:
     replicates: int
     note: str = ""
     repeats: int = 1
+    surrogate: bool = False
 
     @property
     def points_per_replicate(self) -> int:
@@ -51,8 +55,9 @@ class Allocation:
 def allocate(request: SamplingRequest, n_inputs: int, noisy: bool) -> Allocation:
     """The samples that a request gets.
 
-    Quasi-Monte Carlo needs 16 scramblings of 2^k points, k >= 2, and rounds up.  Without inputs there is one
-    run, and with noise as many independent noise paths as samples were asked for.
+    Quasi-Monte Carlo needs 16 scramblings of 2^k points, k >= 2, and rounds up; polynomial chaos is fitted to
+    these very points.  Without inputs there is one run, and with noise as many independent noise paths as
+    samples were asked for.
 
     Parameters
     ----------
@@ -81,13 +86,15 @@ def allocate(request: SamplingRequest, n_inputs: int, noisy: bool) -> Allocation
     while points * SCRAMBLINGS < request.samples:
         points *= 2
     samples = points * SCRAMBLINGS
+    surrogate = request.method == "polynomial chaos"
     note = ""
     if samples != request.samples:
+        taker = "polynomial chaos" if surrogate else "quasi-Monte Carlo"
         note = (
-            f"{request.samples} samples asked, {samples} used: quasi-Monte Carlo takes "
+            f"{request.samples} samples asked, {samples} used: {taker} takes "
             f"{SCRAMBLINGS} scramblings of {points} points, a power of two"
         )
-    return _numbered(Allocation("quasi-monte carlo", samples, SCRAMBLINGS, note, repeats))
+    return _numbered(Allocation("quasi-monte carlo", samples, SCRAMBLINGS, note, repeats, surrogate))
 
 
 def extended(current: Allocation, more: int) -> Allocation:
@@ -103,8 +110,8 @@ def extended(current: Allocation, more: int) -> Allocation:
     wanted = current.samples + more
     if current.replicates == 1:
         return _numbered(Allocation(current.method, wanted, 1, repeats=current.repeats))
-    request = SamplingRequest("quasi-monte carlo", wanted, current.repeats)
-    return allocate(request, n_inputs=1, noisy=True)
+    method: AskedMethod = "polynomial chaos" if current.surrogate else "quasi-monte carlo"
+    return allocate(SamplingRequest(method, wanted, current.repeats), n_inputs=1, noisy=True)
 
 
 def _numbered(allocation: Allocation) -> Allocation:

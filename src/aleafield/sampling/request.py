@@ -6,6 +6,9 @@ from dataclasses import dataclass
 from typing import Literal
 
 SamplingMethod = Literal["monte carlo", "quasi-monte carlo"]
+"""How the points of the samples are drawn."""
+AskedMethod = Literal["auto", "monte carlo", "quasi-monte carlo", "polynomial chaos"]
+"""What a study may ask for: a way to draw points, or a surrogate fitted to them."""
 
 
 @dataclass(frozen=True)
@@ -14,13 +17,13 @@ class SamplingRequest:
 
     Attributes
     ----------
-    method : "auto", "monte carlo" or "quasi-monte carlo"
+    method : AskedMethod
     samples : int
         Parameter samples asked for; `allocation` rounds them where the method needs it.
     noise_repeats : int
         Noise paths of each parameter sample.
     """
 
-    method: Literal["auto", "monte carlo", "quasi-monte carlo"] = "auto"
+    method: AskedMethod = "auto"
     samples: int = 1024
     noise_repeats: int = 1

@@ -32,8 +32,10 @@ from aleafield.geometry import Interval, Ring
 from aleafield.quantities import At, FunctionQuantity, Over, Quantity
 from aleafield.randomness.laws import Law
 from aleafield.study.reading import read_text
-from aleafield.study.study import Study
+from aleafield.study.study import SensitivityRequest, Study
 
+Sensitivity = SensitivityRequest
+"""What is wanted of the inputs, under the name that it has in Python."""
 Number = float | int | str | Formula | Law
 """A number, an expression of parameters as a string, or a law."""
 
@@ -79,6 +81,7 @@ def build_study(
     sampling: Mapping[str, Any] | None = None,
     aim: Mapping[str, Any] | None = None,
     dependence: Mapping[str, Any] | None = None,
+    sensitivity: SensitivityRequest | None = None,
     report: Mapping[str, Any] | None = None,
     keep: Mapping[str, Any] | None = None,
     units: Mapping[str, str] | None = None,
@@ -100,6 +103,7 @@ def build_study(
     drive, initial : a number, the text of a formula, or `term(text, name=value, ..)`
     noise : noise in the tissue, as `Noise(0.02, GaussianCorrelation(0.5))`
     scheme, sampling, aim, dependence, report, keep, units : as in the study file
+    sensitivity : which inputs cause the spread, as `Sensitivity(["first", "total"])`
     seed : int
     folder : where relative paths of data files start
 
@@ -131,6 +135,7 @@ def build_study(
         "sampling": sampling,
         "aim": aim,
         "dependence": dependence,
+        "sensitivity": None if sensitivity is None else dataclasses.asdict(sensitivity),
         "report": report,
         "keep": keep,
     }

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Literal
@@ -13,6 +13,9 @@ from aleafield.quantities import Quantity
 from aleafield.randomness.inputs import Dependence, Input
 from aleafield.sampling.request import SamplingRequest
 from aleafield.units import ACTIVITY, Units
+
+SensitivityIndex = Literal["first", "total", "second", "shapley"]
+"""Sobol' indices of first order, total, of second order, and Shapley effects."""
 
 
 @dataclass(frozen=True)
@@ -41,6 +44,28 @@ class ReportRequest:
 
     quantiles: tuple[float, ...] = (0.05, 0.5, 0.95)
     exceed: Mapping[str, tuple[float, ...]] = field(default_factory=dict)
+
+
+@dataclass(frozen=True)
+class SensitivityRequest:
+    """What is wanted of the inputs: which of them cause the spread, and which to measure next.
+
+    Attributes
+    ----------
+    indices : tuple of SensitivityIndex
+        In Python any sequence, in any order.
+    wanted_sd : mapping of quantity to standard deviation
+        In units of the quantity: the cheapest set of inputs is wanted that brings its spread below this.
+    fix_below : float
+        Share of the variance, between 0 and 1: an input may be fixed where its total index is surely below.
+    screening : bool
+        Whether elementary effects choose first among many inputs.
+    """
+
+    indices: Sequence[SensitivityIndex] = ()
+    wanted_sd: Mapping[str, float] = field(default_factory=dict)
+    fix_below: float = 0.01
+    screening: bool = False
 
 
 @dataclass(frozen=True)
@@ -90,6 +115,7 @@ class Study:
     dependence: Dependence = Dependence()
     aim: Aim | None = None
     confidence: float = 0.95
+    sensitivity: SensitivityRequest | None = None
     report: ReportRequest = ReportRequest()
     keep: Keep = Keep()
     warnings: tuple[str, ...] = ()

@@ -30,11 +30,12 @@ def fan(name: str, quantity: str, record: HistoryRecord, units: Units) -> Drawin
     Drawing, or None where no two times in a row have quantiles
     """
     known: BoolArray = np.asarray(np.isfinite(record.fan).all(axis=0))
+    paths = [np.where(np.isfinite(path), path, np.nan) for path in record.paths]
     bands = list(stretches(known))
     if not bands:
         return None
     followed = record.followed or quantity
-    seen = np.concatenate([record.fan.ravel(), record.paths.ravel()])
+    seen = np.concatenate([record.fan[:, known].ravel(), *paths])
     low, high = float(np.nanmin(seen)), float(np.nanmax(seen))
     pad = 0.06 * (high - low)
     drawing = Drawing(
@@ -46,7 +47,7 @@ def fan(name: str, quantity: str, record: HistoryRecord, units: Units) -> Drawin
     )
     frame = Frame(76, 14, 466, 260, (float(record.t[0]), float(record.t[-1])), (low - pad, high + pad))
     drawing.add(*frame.left_axis(labelled(followed, record.units)))
-    for path in record.paths:
+    for path in paths:
         drawing.add(
             *(frame.curve(record.t[cut], path[cut], "single") for cut in stretches(np.isfinite(path)))
         )

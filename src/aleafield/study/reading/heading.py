@@ -10,9 +10,6 @@ SECTIONS = (
     "title", "about", "seed", "units", "parameters", "dependence", "domain", "kernel", "rate", "drive",
     "initial", "dynamics", "noise", "scheme", "quantity", "sampling", "sensitivity", "aim", "report", "keep",
 )  # fmt: skip
-UNBUILT_SECTIONS = {
-    "sensitivity": "take the section out; the ensemble file holds all inputs and quantities",
-}
 
 
 def read_title(table: Table) -> str:

@@ -18,7 +18,7 @@ from aleafield.study.impossible import refuse_impossible_laws
 from aleafield.study.positions import located
 from aleafield.study.reading.document import Document, load, parse
 from aleafield.study.reading.domain import read_domain
-from aleafield.study.reading.heading import SECTIONS, UNBUILT_SECTIONS, read_about, read_title, read_units
+from aleafield.study.reading.heading import SECTIONS, read_about, read_title, read_units
 from aleafield.study.reading.kernel import read_kernel
 from aleafield.study.reading.noise import read_noise, refuse_pointwise
 from aleafield.study.reading.numbers import Numbers
@@ -27,7 +27,8 @@ from aleafield.study.reading.rate import read_rate
 from aleafield.study.reading.report import read_keep, read_report
 from aleafield.study.reading.sampling import read_aim, read_dependence, read_sampling
 from aleafield.study.reading.scheme import read_scheme, settled
-from aleafield.study.reading.table import Table, not_built_yet
+from aleafield.study.reading.sensitivity import read_sensitivity
+from aleafield.study.reading.table import Table
 from aleafield.study.reading.terms import read_dynamics, read_term
 from aleafield.study.study import Study, StudySource
 
@@ -73,9 +74,6 @@ def read_text(
 
 def _study(document: Document, extra: tuple[FunctionQuantity, ...]) -> Study:
     root = Table(document.data)
-    for section, instead in UNBUILT_SECTIONS.items():
-        if section in root:
-            raise not_built_yet(section, f"[{section}]", instead)
     root.only(SECTIONS, "a study")
     folder = None if document.path is None else document.path.parent
     title, about = read_title(root), read_about(root)
@@ -116,7 +114,6 @@ def _study(document: Document, extra: tuple[FunctionQuantity, ...]) -> Study:
         equation=equation,
         scheme=scheme,
         quantities=quantities,
-        sampling=read_sampling(root.table("sampling"), noisy=equation.noise is not None),
         aim=aim,
         confidence=confidence,
         report=read_report(root.table("report"), names),
@@ -156,14 +153,20 @@ def _refuse_overshoot(pairing: Pairing, quantities: tuple[Quantity, ...]) -> Non
 
 
 def _completed(study: Study, root: Table) -> Study:
-    """The study with its dependence, its data files and its digest, after the checks of the whole."""
+    """The study with what concerns all its inputs, its data files and digest, after the checks of the whole."""
     inputs = study.inputs
     paths = [entry.path for entry in inputs]
+    noisy = study.equation.noise is not None
     refuse_equal_names(study.quantities, paths)
+    sampling = read_sampling(root.table("sampling"), noisy, bool(inputs))
     dependence = read_dependence(root.table("dependence"))
     if dependence != Dependence():
         Design(inputs, dependence, "monte carlo", study.seed)  # refuses a dependence that does not fit
-    study = dataclasses.replace(study, dependence=dependence)
+    sensitivity = None
+    if "sensitivity" in root:
+        names = [quantity.name for quantity in study.quantities]
+        sensitivity = read_sensitivity(root.table("sensitivity"), names, paths, dependence, noisy)
+    study = dataclasses.replace(study, sampling=sampling, dependence=dependence, sensitivity=sensitivity)
     refuse_impossible_laws(study)
     source = dataclasses.replace(study.source, data_files=_data_files(study.source.path, inputs))
     study = dataclasses.replace(study, source=source)

@@ -13,26 +13,31 @@ from aleafield.sampling.request import SamplingRequest
 from aleafield.study.reading.table import Table, finite, not_built_yet, shown
 from aleafield.study.study import Aim
 
-METHODS = ("auto", "monte carlo", "quasi-monte carlo")
-_LATER = 'use "monte carlo" or "quasi-monte carlo" for now'
-UNBUILT_METHODS = {"polynomial chaos": _LATER, "multilevel": _LATER}
+METHODS = ("auto", "monte carlo", "quasi-monte carlo", "polynomial chaos")
+UNBUILT_METHODS = {
+    "multilevel": 'use "quasi-monte carlo", or "polynomial chaos" for a smooth quantity, for now'
+}
 _PER_CENT = re.compile(r"\s*(.+?)\s*%\s*")
 
 
-def read_sampling(table: Table, noisy: bool) -> SamplingRequest:
+def read_sampling(table: Table, noisy: bool, uncertain: bool) -> SamplingRequest:
     """Method, count of samples and noise paths of each; auto, 1024 and 1 where they are left out.
 
     Parameters
     ----------
     noisy : whether the study has noise
+    uncertain : whether it has uncertain inputs
 
     Raises
     ------
     InputError
-        For methods that are unknown or not built yet, counts that are no whole numbers, and repeats of no noise.
+        For methods that are unknown, not built yet or without a meaning for the study, counts that are no whole
+        numbers, and repeats of no noise.
     """
     table.only(("method", "samples", "noise_repeats"), "[sampling]")
     method = table.choice("method", METHODS, "auto", UNBUILT_METHODS)
+    if method == "polynomial chaos":
+        _refuse_chaos(table.key("method"), noisy, uncertain)
     if table.value("samples", None) == "auto":
         raise not_built_yet(table.key("samples"), "'auto'", "give a number of samples for now, as 1024")
     samples = table.integer("samples", 1024, least=1)
@@ -42,6 +47,25 @@ def read_sampling(table: Table, noisy: bool) -> SamplingRequest:
         needed = "nothing reads it, every repeat would be the same: take it out, or add a section [noise]"
         raise InputError(table.key("noise_repeats"), found, needed)
     return SamplingRequest(method, samples, repeats)  # type: ignore[arg-type]
+
+
+def _refuse_chaos(key: str, noisy: bool, uncertain: bool) -> None:
+    """Refuse an expansion of what is not a function of uncertain inputs."""
+    if noisy:
+        raise InputError(
+            key,
+            "'polynomial chaos' and a section [noise]",
+            "an expansion is a function of the inputs, and under noise a quantity is none: the same inputs give "
+            'another value on every path; use "quasi-monte carlo" with noise_repeats of 2 or more, which parts '
+            "the spread into noise and inputs",
+        )
+    if not uncertain:
+        raise InputError(
+            key,
+            "'polynomial chaos' and no uncertain input",
+            "there is nothing to expand in: write a number of the model as a distribution, as "
+            '"uniform(0.8, 1.2)", or take the method out',
+        )
 
 
 def read_dependence(table: Table) -> Dependence:

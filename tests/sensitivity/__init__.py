@@ -1,0 +1,1 @@
+"""Indices of sensitivity against closed forms, published values and general-purpose libraries."""
