@@ -36,7 +36,7 @@ class Integral(LinearQuantity):
 
     @property
     def functional_name(self) -> str:
-        """The integral."""
+        """The integral of u over the domain."""
         return "the integral"
 
     def functional(self, space: Space) -> FloatArray:

@@ -1,0 +1,1 @@
+"""Polynomial chaos against closed forms, quadrature and published indices."""
