@@ -83,7 +83,7 @@ def number_of_probes(
     The largest multiple of 16, at most `samples`, whose extra levels cost at most a quarter of the main
     samples; at least `at_least` (rounded up to a multiple of 16) where there are as many samples, as far as the
     extra levels then cost no more than the main samples; but 32 whatever that costs.  Rough noise may ask for
-    every sample to be a probe: ten times the work for intervals that are a third narrower at best.
+    every sample to be a probe: ten times the work for intervals that are half as wide at best.
 
     Parameters
     ----------

@@ -12,41 +12,56 @@ from dataclasses import dataclass
 import numpy as np
 from scipy import optimize, stats
 
-from tests.benchmarks.coverage.truth import FloatArray, Law, Truth, random_law
+from tests.benchmarks.coverage.truth import FloatArray, Known, Law, Truth, random_law
 
 
 @dataclass(frozen=True)
 class Instance:
-    """A study file's model part and the exact statistics of its quantities."""
+    """A study file's model part and the exact statistics of its quantities.
+
+    `repeats` are the noise paths of a parameter sample; without `inputs` only noise is random.  `stepped` are the
+    statistics of the scheme itself, where they are known.
+    """
 
     family: str
     study: str
-    truths: Mapping[str, Truth]
+    truths: Mapping[str, Known]
+    repeats: int = 1
+    inputs: bool = True
+    stepped: Mapping[str, Known] | None = None
 
 
-def _pick(rng: np.random.Generator, *options: object) -> object:
+def pick(rng: np.random.Generator, *options: object) -> object:
+    """One of the options."""
     return options[int(rng.integers(len(options)))]
 
 
-def _ring_scheme(rng: np.random.Generator) -> str:
+def ring_scheme(rng: np.random.Generator) -> str:
+    """Projector, nodes, method and quadrature of a ring, as study text."""
     kind = rng.integers(3)
     if kind == 0:
         return f'projector = "piecewise linear"\nnodes = {int(rng.integers(8, 40)) * 2}\nmethod = "{_method(rng)}"'
-    quadrature = _pick(rng, "matched", "trapezoid")
+    return fourier_scheme(rng)
+
+
+def fourier_scheme(rng: np.random.Generator) -> str:
+    """Fourier modes, at least 5 of them."""
+    quadrature = pick(rng, "matched", "trapezoid")
     return (
         f'projector = "fourier"\nnodes = {int(rng.integers(5, 16))}\nmethod = "{_method(rng)}"\n'
         f'quadrature = "{quadrature}"'
     )
 
 
-def _interval_scheme(rng: np.random.Generator) -> str:
+def interval_scheme(rng: np.random.Generator) -> str:
+    """Projector, nodes, method and quadrature of an interval, as study text."""
     kind = rng.integers(5)
     if kind <= 1:
         method = _method(rng)
-        quadrature = _pick(rng, "matched", "trapezoid")
+        quadrature = pick(rng, "matched", "trapezoid")
         nodes = 2 * int(rng.integers(4, 20)) + 1
         return f'projector = "piecewise linear"\nnodes = {nodes}\nmethod = "{method}"\nquadrature = "{quadrature}"'
-    quadrature = _pick(rng, "matched", "trapezoid")
+    quadrature = pick(rng, "matched", "trapezoid")
     points = f"\nquadrature_points = {2 * int(rng.integers(6, 24)) + 1}" if quadrature == "trapezoid" else ""
     if kind <= 3:
         nodes = 2 * int(rng.integers(3, 7)) + 1
@@ -55,7 +70,7 @@ def _interval_scheme(rng: np.random.Generator) -> str:
 
 
 def _method(rng: np.random.Generator) -> str:
-    return str(_pick(rng, "collocation", "galerkin"))
+    return str(pick(rng, "collocation", "galerkin"))
 
 
 def _cosine_mode(
@@ -81,7 +96,7 @@ formula = "{start}"
 time_constant = {time_constant}
 duration = {duration!r}
 [scheme]
-{_ring_scheme(rng)}
+{ring_scheme(rng)}
 time_step = {duration / float(rng.uniform(1.5, most_steps))!r}"""
 
 
@@ -118,7 +133,7 @@ formula = "(1 - {p!r}**2)/(1 - 2*{p!r}*cos(x) + {p!r}**2)"
 time_constant = 1.0
 duration = {duration!r}
 [scheme]
-{_ring_scheme(rng)}
+{ring_scheme(rng)}
 time_step = {duration / float(rng.uniform(1.5, 12))!r}
 [[quantity]]
 name = "value"
@@ -140,7 +155,7 @@ def growing_mode(rng: np.random.Generator) -> Instance:
     duration = float(rng.uniform(1.5, 3.0))
     low = float(rng.uniform(0.2, 0.8))
     strength = random_law(rng, low, low + float(rng.uniform(0.6, 1.2)))
-    level = float(np.exp((float(strength.ppf(np.float64(rng.uniform(0.1, 0.7)))) - 1) * duration))
+    level = float(np.exp((float(strength.ppf(np.array(rng.uniform(0.1, 0.7)))) - 1) * duration))
     crossing = 1 + np.log(level) / duration
     share = float(_share_below(strength, crossing))
 
@@ -183,9 +198,9 @@ level = {level!r}
 
 
 def _share_below(law: Law, value: float) -> float:
-    if value <= float(law.ppf(np.float64(0.0))):
+    if value <= float(law.ppf(np.array(0.0))):
         return 0.0
-    return float(optimize.brentq(lambda v: float(law.ppf(np.float64(v))) - value, 0.0, 1.0, xtol=1e-15))
+    return float(optimize.brentq(lambda v: float(law.ppf(np.array(v))) - value, 0.0, 1.0, xtol=1e-15))
 
 
 def lognormal_decay(rng: np.random.Generator) -> Instance:
@@ -249,7 +264,7 @@ formula = "z*exp(x) + 0.2"
 time_constant = 1.0
 duration = 1.0
 [scheme]
-{_interval_scheme(rng)}
+{interval_scheme(rng)}
 time_step = {1 / float(rng.uniform(1.5, 10))!r}
 [[quantity]]
 name = "value"
@@ -286,7 +301,7 @@ def step_bump(rng: np.random.Generator) -> Instance:
         return np.asarray(np.pi - np.arcsin(h))
 
     nodes = int(rng.integers(12, 40)) * 2
-    projector = _pick(rng, "piecewise linear", "fourier")
+    projector = pick(rng, "piecewise linear", "fourier")
     study = f"""
 [parameters]
 h = "{threshold.text}"

@@ -1,9 +1,10 @@
-"""Exact statistics of a quantity that is a monotone function of one input."""
+"""What is known of a quantity, and its exact statistics where it is a monotone function of one input."""
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass
+from typing import Protocol
 
 import numpy as np
 from numpy.typing import NDArray
@@ -11,6 +12,32 @@ from scipy import optimize, stats
 
 FloatArray = NDArray[np.float64]
 _NODES, _WEIGHTS = np.polynomial.legendre.leggauss(20)
+
+
+class Known(Protocol):
+    """A quantity whose statistics are known."""
+
+    @property
+    def mean(self) -> float:
+        """Mean given that it occurs."""
+
+    @property
+    def sd(self) -> float:
+        """Standard deviation given that it occurs."""
+
+    @property
+    def occurs(self) -> float:
+        """Probability of occurrence."""
+
+    @property
+    def variance(self) -> Mapping[str, float]:
+        """Members of the variance, parted into parameters and noise; empty without noise."""
+
+    def quantile(self, p: float) -> float:
+        """Quantile given that it occurs."""
+
+    def exceed(self, level: float) -> float:
+        """Probability that it occurs and lies above the level."""
 
 
 @dataclass(frozen=True)
@@ -63,6 +90,11 @@ class Truth:
     def occurs(self) -> float:
         """Probability of occurrence."""
         return self.last - self.first
+
+    @property
+    def variance(self) -> Mapping[str, float]:
+        """Nothing is parted without noise."""
+        return {}
 
     def moment(self, function: Callable[[FloatArray], FloatArray]) -> float:
         """Mean of function(Q) given that Q occurs, by panels refined towards both ends."""
