@@ -38,7 +38,7 @@ from aleafield.runs.execution import (
 )
 from aleafield.runs.plan_file import Plan, count_probes, read_plan, with_more_samples, with_rows, write_plan
 from aleafield.runs.progress import NoProgress
-from aleafield.runs.statements import Asked, statements_of
+from aleafield.runs.statements import Asked, columns_of, statements_of
 from aleafield.sampling.allocation import Allocation
 from aleafield.sampling.request import SamplingMethod
 from tests.archive.analytic_model import DURATION, INPUTS, MODES, AnalyticModel
@@ -129,7 +129,7 @@ def summarise(reader: EnsembleReader, plan: Plan, cost: Cost) -> Summary:
     """The statements of all quantities."""
     asked = Asked((0.05, 0.5), (1.0,), 0.95)
     quantities = {
-        name: statements_of(reader, plan, name, asked).as_json(reader.unit(name))
+        name: statements_of(columns_of(reader, plan, name), asked).as_json(reader.unit(name))
         for name in reader.quantities
     }
     return {"quantities": quantities, "cost": {"measured_s": cost.wall}}

@@ -366,8 +366,8 @@ def test_what_is_asked_about_the_inputs() -> None:
     assert study.sensitivity == asked
     assert list(study.sensitivity.wanted_sd) == ["width", "mean square"]
     assert study.digest == read_text(FULL + SENSITIVITY).digest
-    alone = read_text(MINIMAL_STUDY + "\n[sensitivity]\nfix_below = 0.02\nscreening = true\n")
-    assert alone.sensitivity == SensitivityRequest((), {}, 0.02, True)
+    alone = read_text(MINIMAL_STUDY + "\n[sensitivity]\nfix_below = 0.02\n")
+    assert alone.sensitivity == SensitivityRequest((), {}, 0.02)
 
 
 JOINED = """
@@ -393,9 +393,9 @@ def test_sensitivity_from_python_is_that_of_the_text() -> None:
     text = MINIMAL_STUDY.replace("threshold = 0.3", 'threshold = "normal(0.3, 0.02)"')
     chaos = '\n[sampling]\nmethod = "polynomial chaos"\nsamples = 64\n'
     for asked, entries in (
-        (aleafield.Sensitivity(), "fix_below = 0.01"),
-        (aleafield.Sensitivity(["total", "first"], {"width": 0.1}, fix_below=0.02, screening=True),
-         'indices = ["first", "total"]\nwanted_sd = { width = 0.1 }\nfix_below = 0.02\nscreening = true'),
+        (aleafield.Sensitivity(["shapley"]), 'indices = ["shapley"]'),
+        (aleafield.Sensitivity(["total", "first"], {"width": 0.1}, fix_below=0.02),
+         'indices = ["first", "total"]\nwanted_sd = { width = 0.1 }\nfix_below = 0.02'),
     ):  # fmt: skip
         written = read_text(f"{text}{chaos}\n[sensitivity]\n{entries}\n")
         built = aleafield.build_study(

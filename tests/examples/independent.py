@@ -154,9 +154,45 @@ def _interface(h: float, width: float, tau: float) -> tuple[float, float]:
     return (at[60.0] - at[30.0]) / 30.0, passage
 
 
+def which_input_matters(inputs: Mapping[str, Array]) -> dict[str, Array]:
+    """Flanked stimulus on a ring of 24 mm: periodised Gaussians and patches, 60 ms from rest."""
+    excitation, inhibition = inputs["excitation"], inputs["inhibition"]
+    coupling, contrast = inputs["coupling"][:, None], inputs["contrast"][:, None]
+    n_samples, n, length = len(excitation), 120, 24.0
+    x = (np.arange(n) - n // 2) * (length / n)
+    distance = x[:, None] - x[None, :]
+    kernel = np.zeros((n_samples, n, n))
+    for image in range(-3, 4):
+        kernel += gaussian(distance + image * length, excitation, 1.0)
+        kernel -= gaussian(distance + image * length, inhibition, inputs["kernel.inhibition.width"])
+    shortest = np.abs((distance + length / 2) % length - length / 2)
+    patches = np.exp(-((shortest - 4) ** 2) / 2) + np.exp(-((shortest + 4) ** 2) / 2)
+    kernel += coupling[:, :, None] * patches / (2 * np.sqrt(2 * np.pi))
+    kernel *= length / n
+    stimulus = inputs["drive.centre"][:, None] * np.exp(-(x**2) / 2)
+    stimulus += contrast * (np.exp(-((x - 4) ** 2) / 2) + np.exp(-((x + 4) ** 2) / 2))
+    stimulus += (inhibition - excitation)[:, None] - coupling
+    tau, threshold = inputs["dynamics.time_constant"][:, None], np.zeros(n_samples)
+
+    def change(_: float, flat: Array) -> Array:
+        u = flat.reshape(n_samples, n)
+        source = 2.0 * logistic(u, inputs["rate.gain"], threshold)
+        return np.asarray((-u + (kernel @ source[:, :, None])[:, :, 0] + stimulus) / tau).ravel()
+
+    solution = course(change, (0, 60), np.zeros(n_samples * n))
+    end = solution.y[:, -1].reshape(n_samples, n)
+
+    def passage(i: int) -> float:
+        return brentq(lambda t: float(solution.sol(t)[i * n + n // 2]) - 0.5, 0.01, 60.0, xtol=1e-10)
+
+    latency = np.array([passage(i) for i in range(n_samples)])
+    return {"response": end[:, n // 2], "latency": latency, "mean": end.mean(axis=1)}
+
+
 ORACLES: dict[str, Oracle] = {
     "evoked_response": evoked_response,
     "bump_on_a_ring": bump_on_a_ring,
     "travelling_front": travelling_front,
     "wandering_memory": wandering_memory,
+    "which_input_matters": which_input_matters,
 }

@@ -16,6 +16,8 @@ import pytest
 BIASES = ("space", "quadrature", "time", "noise_modes", "surrogate")
 ERROR = {*BIASES, "bias_noise", "sampling", "total"}
 QUANTITY = {"units", "mean", "sd", "quantiles", "exceed", "occurs", "sensitivity", "variance"}
+CAUSES = {"measure_next", "pin_down", "ranking", "notes"}
+"""Members of a quantity besides, where the study has a section [sensitivity]."""
 DOCUMENT = {
     *("schema", "title", "quantities", "field", "inputs", "scheme", "sampling", "aim", "plan", "cost"),
     *("failed", "confidence", "warnings"),
@@ -45,6 +47,11 @@ def assert_is_summary(document: Mapping[str, Any]) -> None:
     noise = document["scheme"]["noise"]
     for name, entry in document["quantities"].items():
         assert_is_quantity(entry, name)
+        assert_are_causes(entry, name, set(document["inputs"]), noise is not None)
+        if document["sampling"] is None or document["sampling"]["asked"] != "polynomial chaos":
+            assert_has_no(entry, name, "surrogate")
+        if noise is None:
+            assert_has_no(entry, name, "noise_modes")
         assert_is_variance(entry["variance"], name, noise is not None, bool(document["inputs"]))
     assert_is_field(document["field"], noise is not None)
     for path, entry in document["inputs"].items():
@@ -83,9 +90,8 @@ def count(value: object, place: str) -> int:
 
 def assert_is_quantity(entry: Mapping[str, Any], name: str) -> None:
     """Statistics of one quantity."""
-    assert set(entry) == QUANTITY, name
+    assert set(entry) in (QUANTITY, QUANTITY | CAUSES), name
     assert text(entry["units"]), name
-    assert entry["sensitivity"] == {}, name
     assert_is_statistic(entry["mean"], f"{name}.mean")
     assert_is_statistic(entry["sd"], f"{name}.sd", low=0.0)
     if entry["occurs"] is not None:
@@ -100,6 +106,62 @@ def assert_is_quantity(entry: Mapping[str, Any], name: str) -> None:
     assert all(0 < float(p) < 1 for p in entry["quantiles"]), name
     assert_goes(entry["quantiles"], 1.0, f"{name}.quantiles")
     assert_goes(entry["exceed"], -1.0, f"{name}.exceed")
+
+
+def assert_has_no(entry: Mapping[str, Any], name: str, part: str) -> None:
+    """No statistic has an error from what the run does not have."""
+    groups = [{"mean": entry["mean"], "sd": entry["sd"]}, entry["quantiles"], entry["exceed"]]
+    for group in groups:
+        for label, statistic in group.items():
+            assert statistic["error"][part] is None, f"{name}.{label}: there is no {part}"
+
+
+def assert_are_causes(entry: Mapping[str, Any], name: str, inputs: set[str], noisy: bool) -> None:
+    """What [sensitivity] asked: indices by input, what to measure next, what to pin down, how sure the order is."""
+    sensitivity = entry["sensitivity"]
+    asked = set(entry) >= CAUSES
+    assert asked or sensitivity == {}, name
+    assert set(sensitivity) <= inputs | ({"noise"} if noisy else set()), name
+    for path, indices in sensitivity.items():
+        place = f"{name}.sensitivity.{path}"
+        assert set(indices) <= ({"total"} if path == "noise" else {"first", "total", "second", "shapley"}), (
+            place
+        )
+        for kind, index in indices.items():
+            if kind != "second":
+                assert_is_index(index, f"{place}.{kind}")
+                continue
+            assert set(index) <= inputs - {path}, place
+            for other, pair in index.items():
+                assert_is_index(pair, f"{place}.second.{other}")
+                assert pair == sensitivity[other]["second"][path], f"{place}.second.{other} is not symmetric"
+    if not asked:
+        return
+    assert set(entry["measure_next"]) == inputs, name
+    for path, gain in entry["measure_next"].items():
+        assert set(gain) == {"remaining_sd_known", "remaining_sd_halved", "may_be_fixed"}, f"{name}.{path}"
+        assert gain["may_be_fixed"] in (True, False, None), f"{name}.{path}"
+        for kind in ("remaining_sd_known", "remaining_sd_halved"):
+            assert_is_statistic(gain[kind], f"{name}.measure_next.{path}.{kind}", low=0.0)
+    for one in entry["pin_down"]:
+        assert set(one) <= {"inputs", "remaining_sd", "wanted_sd", "exhaustive", "reason"}, name
+        if one["inputs"] is None:
+            assert text(one["reason"]), name
+            continue
+        assert set(one["inputs"]) <= inputs, name
+        assert 0 <= number(one["remaining_sd"], name) <= number(one["wanted_sd"], name)
+    ranking = entry["ranking"]
+    if ranking is not None:
+        assert ranking["by"] in ("first", "total", "shapley"), name
+        assert sorted(ranking["order"]) == sorted(inputs), name
+        assert len(ranking["above_next"]) == len(inputs) - 1, name
+        assert all(0 <= number(p, name) <= 1 for p in (*ranking["above_next"], ranking["first_is_largest"]))
+    assert all(text(note) for note in entry["notes"]), name
+
+
+def assert_is_index(entry: Mapping[str, Any], place: str) -> None:
+    """A share of the variance: its interval lies in [0, 1]; its estimate need not."""
+    assert_is_statistic(entry, place, 0.0, 1.0, beyond=True)
 
 
 def assert_is_variance(variance: Mapping[str, Any] | None, name: str, noisy: bool, parameters: bool) -> None:
@@ -155,9 +217,17 @@ def assert_goes(group: Mapping[str, Any], direction: float, place: str) -> None:
 
 
 def assert_is_statistic(
-    entry: Mapping[str, Any], place: str, low: float = -math.inf, high: float = math.inf
+    entry: Mapping[str, Any],
+    place: str,
+    low: float = -math.inf,
+    high: float = math.inf,
+    *,
+    beyond: bool = False,
 ) -> None:
-    """{value, error, interval}, the value and both ends within [low, high]; a mean may have `corrected`."""
+    """{value, error, interval}, both ends within [low, high], and the value too unless it may lie beyond.
+
+    A mean may have `corrected`.
+    """
     assert {"value", "error", "interval"} <= set(entry), place
     assert set(entry) <= {"value", "error", "interval", "corrected", "reason", "orders", "notes"}, place
     assert_is_error(entry["error"], place)
@@ -167,7 +237,7 @@ def assert_is_statistic(
         assert text(entry["reason"]), f"{place}: nothing is said and no reason given"
     else:
         assert "reason" not in entry, place
-        assert_is_interval(entry, place, low, high)
+        assert_is_interval(entry, place, low, high, beyond)
     if "corrected" in entry:
         assert place.endswith(".mean"), place
         assert set(entry["corrected"]) == {"value", "error", "interval"}, place
@@ -182,12 +252,13 @@ def assert_is_statistic(
 def assert_is_error(error: Mapping[str, Any], place: str) -> None:
     """All parts are there; each is null or a number that is not negative."""
     assert set(error) == ERROR, place
-    assert error["surrogate"] is None, f"{place}: there is no surrogate"
     for key, value in error.items():
         assert value is None or number(value, f"{place}.{key}") >= 0, f"{place}.{key}"
 
 
-def assert_is_interval(entry: Mapping[str, Any], place: str, low: float, high: float) -> None:
+def assert_is_interval(
+    entry: Mapping[str, Any], place: str, low: float, high: float, beyond: bool = False
+) -> None:
     """Ordered ends about the value, within the bounds, no longer than `total`, which is the sum it must be.
 
     total = B + sqrt(sampling^2 + bias_noise^2), B the sum of the biases, null counted as 0.
@@ -199,7 +270,8 @@ def assert_is_interval(entry: Mapping[str, Any], place: str, low: float, high: f
         number(left, place) if left is not None else -math.inf,
         number(right, place) if right is not None else math.inf,
     )
-    assert max(ends[0], low) <= value <= min(ends[1], high), place
+    inside = min(max(value, low), high) if beyond else value
+    assert max(ends[0], low) <= inside <= min(ends[1], high), place
     assert left is None or left >= low, place
     assert right is None or right <= high, place
     if left is None or right is None:
@@ -255,7 +327,11 @@ def assert_is_sampling(sampling: Mapping[str, Any] | None, uncertain: bool) -> N
     assert (sampling is None) == (not uncertain)
     if sampling is None:
         return
-    assert set(sampling) == {"method", "samples", "replicates", "points_per_replicate", "noise_repeats"}
+    counts = {"samples", "replicates", "points_per_replicate", "noise_repeats"}
+    assert set(sampling) == counts | {"method", "asked", "further_runs"}
+    assert sampling["asked"] in ("auto", "monte carlo", "quasi-monte carlo", "polynomial chaos")
+    assert set(sampling["further_runs"]) <= {"held out", "exchange", "screening"}
+    assert all(count(runs, family) > 0 for family, runs in sampling["further_runs"].items())
     points, replicates = sampling["points_per_replicate"], sampling["replicates"]
     assert sampling["samples"] == points * replicates
     assert count(sampling["noise_repeats"], "noise_repeats") >= 1

@@ -2,7 +2,13 @@
 
 from __future__ import annotations
 
+import re
 import xml.etree.ElementTree as ElementTree
+
+import numpy as np
+
+from aleafield.arrays import FloatArray
+from aleafield.report.svg import Drawing
 
 SVG = "{http://www.w3.org/2000/svg}"
 
@@ -41,3 +47,32 @@ def number(text: str) -> float:
         .replace(" \N{MULTIPLICATION SIGN} 10", "e")
         .translate(str.maketrans("⁻⁰¹²³⁴⁵⁶⁷⁸⁹", "-0123456789"))
     )
+
+
+def read_back(drawing: Drawing | None) -> ElementTree.Element:
+    """The elements of a drawing, read back from its file."""
+    assert drawing is not None
+    return ElementTree.fromstring(drawing.document())
+
+
+def axis_of(root: ElementTree.Element, anchor: str, along: str) -> tuple[float, float]:
+    """Offset and slope of the lowest axis, px against its numbers."""
+    marks = [
+        (number(words(t)), float(t.get(along) or 0), float(t.get("y") or 0))
+        for t in root.iter(f"{SVG}text")
+        if t.get("text-anchor") == anchor and re.fullmatch("[\N{MINUS SIGN}0-9.]+", words(t))
+    ]
+    values, places, _ = np.array(
+        [m for m in marks if anchor != "middle" or m[2] == max(y for *_, y in marks)]
+    ).T
+    slope, offset = np.polyfit(values, places, 1)
+    return float(offset), float(slope)
+
+
+def cloud_places(path: ElementTree.Element) -> FloatArray:
+    """Places of the dots of a cloud in px, from its relative steps."""
+    steps = re.findall(r"m(-?\d+) ?(-?\d+)h0", path.get("d") or "")
+    assert "".join(f"m{a}{b if b.startswith('-') else ' ' + b}h0" for a, b in steps) == path.get("d")
+    left, top, scale = (float(n) for n in re.findall(r"[0-9.]+", path.get("transform") or ""))
+    found: FloatArray = np.cumsum(np.array(steps, dtype=np.int64), axis=0) * scale + [left, top]
+    return found

@@ -19,7 +19,7 @@ from aleafield.report.figures.field_maps import even_grid
 from aleafield.report.findings import quantity_findings
 from aleafield.report.image import png
 from aleafield.report.palette import DARK, LIGHT, linear_light, map_colours, perceptual
-from aleafield.report.parts import CAUSES, PARTS
+from aleafield.report.parts import CAUSES, INDICES, NOISE, PARTS
 from aleafield.report.svg import Frame
 from tests.report.reading import SVG, words
 from tests.report.sample_report import sample_report
@@ -178,7 +178,12 @@ VISION = {
 @pytest.mark.parametrize("palette", [LIGHT, DARK], ids=["light", "dark"])
 def test_neighbouring_parts_stay_apart(palette: dict[str, str], vision: str) -> None:
     """Any two colours of a picture differ by 0.08 in Oklab at least; 0.02 is about what the eye just tells apart."""
-    for names in ([part.style for part in PARTS], [cause.key for cause in CAUSES]):
+    pictures = (
+        [part.style for part in PARTS],
+        [cause.key for cause in CAUSES],
+        [*(kind.style for kind in INDICES), NOISE.key],
+    )
+    for names in pictures:
         colours = np.clip(linear_light([palette[f"part-{name}"] for name in names]) @ VISION[vision].T, 0, 1)
         lab = perceptual(colours)
         apart = np.linalg.norm(lab[:, None] - lab[None], axis=-1)
@@ -194,7 +199,7 @@ def contrast(first: str, second: str) -> float:
 @pytest.mark.parametrize("palette", [LIGHT, DARK], ids=["light", "dark"])
 def test_text_can_be_read(palette: dict[str, str]) -> None:
     """WCAG 2.1 asks 4.5 for text."""
-    for name in (*(part.style for part in PARTS), *(cause.key for cause in CAUSES)):
+    for name in [n.removeprefix("part-") for n in palette if n.startswith("part-")]:
         assert contrast(palette[f"part-{name}"], palette[f"on-part-{name}"]) >= 4.5, name
     for ink in ("ink", "quiet", "accent", "mark", "alarm"):
         for ground in ("paper", "panel"):

@@ -5,8 +5,10 @@ from __future__ import annotations
 import csv
 import dataclasses
 import json
+import xml.etree.ElementTree as ElementTree
 from pathlib import Path
 
+import numpy as np
 import pytest
 
 from aleafield.errors import ArchiveError
@@ -16,7 +18,7 @@ from aleafield.runs.run import run
 from aleafield.runs.wording import model_text
 from aleafield.study.reading import read_text
 from aleafield.study.study import Study
-from tests.report.reading import number, page_tree, rows, section, words
+from tests.report.reading import SVG, cloud_places, number, page_tree, rows, section, words
 
 STUDY = """title = "A small ring"
 units = {{ length = "mm", time = "ms", activity = "mV" }}
@@ -82,6 +84,7 @@ def folder(tmp_path_factory: pytest.TempPathFactory) -> Path:
                 "steps": 10,
                 "noise": None,
                 "bridged": (),
+                "dependence": "",
             },
         ),
         (
@@ -138,11 +141,37 @@ def test_a_run_leaves_page_and_figures(folder: Path) -> None:
         "field-mean.svg",
         "field-profile.svg",
         "field-spread.svg",
+        "scatter-top.svg",
     ]
     summary = json.loads((folder / "summary.json").read_text(encoding="utf-8"))
     shown = rows(tree, "How uncertain top is")[0][1].removesuffix(" mV")
     mean = summary["quantities"]["top"]["mean"]
     assert number(shown) == pytest.approx(mean["value"], abs=0.05 * mean["error"]["total"])
+
+
+def test_the_scatter_shows_the_stored_inputs(folder: Path) -> None:
+    """The value of every sample over its own input: places in the picture against rows of ensemble.csv."""
+    with open(folder / "ensemble.csv", newline="", encoding="utf-8") as file:
+        table = list(csv.DictReader(file))
+    tree = ElementTree.fromstring((folder / "figures" / "scatter-top.svg").read_text(encoding="utf-8"))
+    clouds = [cloud_places(e) for e in tree.iter(f"{SVG}path") if e.get("class") == "cloud"]
+    assert len(clouds) == 2
+    value = np.array([float(row["top"]) for row in table])
+    for path, places in zip(("drive.a", "dynamics.time_constant"), clouds, strict=True):
+        at = np.column_stack([np.array([float(row[path]) for row in table]), -value])
+        spans = [np.ptp(points, axis=0) for points in (places, at)]
+        shown, known = ((p - p.min(axis=0)) / span for p, span in zip((places, at), spans, strict=True))
+        # every sample has a dot within the grain of half a px of 150
+        nearest = np.abs(known[:, None] - shown[None]).max(axis=2).min(axis=1)
+        assert nearest.max() < 0.01
+
+
+def test_dependence_in_words() -> None:
+    built = study(
+        noise='[dependence]\nrank_correlation = [["drive.a", "dynamics.time_constant", 0.6]]',
+    )
+    said = model_text(built, make_plan(built)[0]).dependence
+    assert said == "rank correlation 0.6 of drive.a and dynamics.time_constant"
 
 
 def test_report_writes_the_same_again(folder: Path) -> None:

@@ -5,6 +5,7 @@ neighbouring levels.  Output are statements: a value, the parts of its error, an
 `docs/error_split.md` states the mathematics.
 """
 
+from aleafield.accounting.expanded import Expanded
 from aleafield.accounting.order import RELATIVE_ROUND_OFF, anticipated_factor
 from aleafield.accounting.probes import (
     LARGEST_SHARE,
@@ -31,6 +32,7 @@ __all__ = [
     "SD",
     "SHARE",
     "Clusters",
+    "Expanded",
     "LevelValues",
     "Pair",
     "PartDifferences",

@@ -3,13 +3,14 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
+from aleafield.accounting.expanded import FROM_SAMPLES, Expanded, expanded_statement
 from aleafield.accounting.measured import MeasuredPart
 from aleafield.accounting.records import PartDifferences
 from aleafield.accounting.split import combine
 from aleafield.accounting.statement import Statement
-from aleafield.accounting.statistic import MEAN, OCCURS, SD, exceed, quantile
+from aleafield.accounting.statistic import MEAN, OCCURS, SD, Statistic, exceed, quantile
 from aleafield.accounting.variance import Clusters, VarianceStatements, variance_statements
 from aleafield.estimates import Sample
 
@@ -60,6 +61,7 @@ def quantity_statements(
     exceed_levels: Sequence[float],
     confidence: float,
     clusters: Clusters | None = None,
+    expanded: Expanded | None = None,
 ) -> QuantityStatements:
     """All statements of one quantity; the parts are measured once.
 
@@ -72,6 +74,8 @@ def quantity_statements(
     confidence : float in (0, 1)
     clusters : Clusters or None
         Which realizations share their parameter sample; None without noise.
+    expanded : Expanded or None
+        The surrogate that gives mean, sd and, where it is accurate enough, quantiles and probabilities.
 
     Raises
     ------
@@ -79,11 +83,20 @@ def quantity_statements(
         When a quantile's probability is not between 0 and 1.
     """
     measured = [MeasuredPart(sample, part) for part in parts]
+
+    def stated(statistic: Statistic) -> Statement:
+        if expanded is None:
+            return combine(sample, measured, statistic, confidence)
+        if statistic.has_influence or expanded.for_quantiles:
+            return expanded_statement(expanded, sample, measured, statistic, confidence)
+        found = combine(sample, measured, statistic, confidence)
+        return replace(found, notes=(FROM_SAMPLES, *found.notes))
+
     return QuantityStatements(
-        mean=combine(sample, measured, MEAN, confidence),
-        sd=combine(sample, measured, SD, confidence),
-        quantiles={p: combine(sample, measured, quantile(p), confidence) for p in quantiles},
-        exceed={c: combine(sample, measured, exceed(c), confidence) for c in exceed_levels},
+        mean=stated(MEAN),
+        sd=stated(SD),
+        quantiles={p: stated(quantile(p)) for p in quantiles},
+        exceed={c: stated(exceed(c)) for c in exceed_levels},
         occurs=None if sample.margin is None else combine(sample, measured, OCCURS, confidence),
         variance=None if clusters is None else variance_statements(sample, measured, clusters, confidence),
     )

@@ -71,7 +71,7 @@ def combine(
     """`split_error` for parts that are already measured."""
     with np.errstate(over="ignore", invalid="ignore"):
         return state(
-            statistic.estimate(sample, confidence), sample, measured, _OfStatistic(statistic, confidence)
+            statistic.estimate(sample, confidence), sample, measured, OfStatistic(statistic, confidence)
         )
 
 
@@ -154,7 +154,7 @@ class Biases:
 
 
 @dataclass(frozen=True)
-class _OfStatistic:
+class OfStatistic:
     """A statistic as the subject of a statement."""
 
     statistic: Statistic
@@ -162,10 +162,12 @@ class _OfStatistic:
 
     @property
     def limits(self) -> tuple[float, float]:
+        """Those of the statistic."""
         return self.statistic.limits
 
     @property
     def corrected(self) -> bool:
+        """For the mean alone."""
         return self.statistic == MEAN
 
     def biases(self, measured: Sequence[MeasuredPart], value: float) -> Biases:
@@ -181,12 +183,14 @@ class _OfStatistic:
         return Biases({name: replace(bias, size=sizes[name]) for name, bias in found.known.items()})
 
     def order(self, measured: MeasuredPart) -> Order:
+        """That of the quantity, of its margin, or the more cautious of both."""
         if self.statistic.kind == "occurs":
             return measured.margin_order
         by_values = self.statistic.kind in ("quantile", "exceed")
         return measured.order if by_values else measured.conditional_order
 
     def open_sides(self, measured: MeasuredPart) -> frozenset[Side]:
+        """Those of the part for this statistic."""
         return measured.open_sides(self.statistic)
 
 

@@ -72,6 +72,8 @@ class ModelText:
     noise : as in "gaussian (strength 0.02 mV, correlation length 0.5 mm), 65 modes of a ring of 40 mm"; None
         without noise
     bridged : quantities that see extremes or passages of the noisy path inside its steps
+    dependence : how the inputs depend on one another, as in "rank correlation 0.6 of h and rate.gain"; empty where
+        they are independent
     """
 
     domain: str
@@ -85,6 +87,7 @@ class ModelText:
     steps: int
     noise: str | None = None
     bridged: tuple[str, ...] = ()
+    dependence: str = ""
 
 
 @dataclass(frozen=True)
@@ -118,6 +121,7 @@ class ReportData:
     provenance : Provenance
     values : by quantity, float array (S',) of the stored samples or the first of them; NaN where the quantity
         does not occur or the sample failed
+    inputs : by path, float array (I,), I <= S', of the first of the same samples, as many as pictures need
     fields : FieldRecord, or None where mean or spread of the field is not finite
     histories : HistoryRecord by quantity, for the quantities of a noisy field that are followed in time
     """
@@ -131,5 +135,6 @@ class ReportData:
     about: str = ""
     measures: Mapping[str, str] = field(default_factory=dict)
     values: Mapping[str, FloatArray] = field(default_factory=dict)
+    inputs: Mapping[str, FloatArray] = field(default_factory=dict)
     fields: FieldRecord | None = None
     histories: Mapping[str, HistoryRecord] = field(default_factory=dict)

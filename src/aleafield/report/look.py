@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from aleafield.report.palette import css_variables
-from aleafield.report.parts import CAUSES, PARTS
+from aleafield.report.parts import CAUSES, INDICES, PARTS
 from aleafield.report.svg import STYLE, part_style
 
 _PAGE = """
@@ -109,5 +109,10 @@ SCRIPT = """
 
 def style_sheet() -> str:
     """All rules of the page, those of its drawings included."""
-    colours = part_style([*(part.style for part in PARTS), *(cause.key for cause in CAUSES)])
+    styles = [
+        *(part.style for part in PARTS),
+        *(kind.style for kind in INDICES),
+        *(cause.key for cause in CAUSES),
+    ]
+    colours = part_style(styles)
     return css_variables() + STYLE + colours + _PAGE

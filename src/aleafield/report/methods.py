@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
-from aleafield.report import methods_of_noise
+from aleafield.report import methods_of_causes, methods_of_noise
 from aleafield.report.data import ReportData
 from aleafield.report.findings import quantity_findings, with_units
 from aleafield.report.markup import Markup, element, escaped, joined
@@ -35,10 +35,12 @@ def methods(data: ReportData) -> Methods:
         ("Model", _model(data, cite)),
         ("Discretisation", escaped(_discretisation(data, cite))),
         ("Uncertainty", escaped(_uncertainty(data, cite))),
+        ("Surrogate", escaped(methods_of_causes.surrogate(data, cite))),
+        ("Influence of the inputs", escaped(methods_of_causes.causes(data, cite))),
         ("Errors", escaped(_errors(data, cite))),
         ("Software", escaped(_software(data))),
     )
-    return Methods(paragraphs, cite.sources())
+    return Methods(tuple(entry for entry in paragraphs if entry[1]), cite.sources())
 
 
 def _model(data: ReportData, cite: Citations) -> Markup:
@@ -92,6 +94,8 @@ def _uncertainty(data: ReportData, cite: Citations) -> str:
     if count == 0:
         return f"No input of the model is uncertain; {samples} samples differ by their noise. {noise}{end}"
     text = f"Uncertain inputs of the model: {count}, with the laws of the table of inputs. "
+    if data.model.dependence:
+        text += f"They depend on one another: {data.model.dependence}. "
     if sampling["method"] == "quasi-monte carlo":
         text += (
             f"Quasi-Monte Carlo drew {samples} samples: {sampling['replicates']} independent scramblings "

@@ -4,10 +4,12 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
+from aleafield.report.blocks import said, shown
 from aleafield.report.caution import CAUTION
 from aleafield.report.data import ReportData
 from aleafield.report.figures import Figure
 from aleafield.report.findings import QuantityFindings, field_findings, quantity_findings
+from aleafield.report.influence_sections import causes_section, next_section
 from aleafield.report.look import SCRIPT, style_sheet
 from aleafield.report.markup import Content, Markup, element, joined
 from aleafield.report.methods import methods
@@ -30,12 +32,14 @@ from aleafield.report.verdict import (
     confidence_text,
     exceedance,
     failed_text,
+    from_surrogate,
     interval_text,
     occurrence,
     realizations_text,
     remedies,
     runs_name,
     spread,
+    surrogate_note,
 )
 
 SECTIONS: tuple[tuple[str, str], ...] = (
@@ -43,6 +47,8 @@ SECTIONS: tuple[tuple[str, str], ...] = (
     ("spread", "How uncertain"),
     ("chances", "Chance of exceeding"),
     ("noise", "Noise or ignorance"),
+    ("causes", "Which input causes it"),
+    ("next", "What to measure next"),
     ("error", "Where the error comes from"),
     ("time", "Over time"),
     ("field", "The field"),
@@ -52,7 +58,10 @@ SECTIONS: tuple[tuple[str, str], ...] = (
     ("methods", "Methods"),
     ("study", "The study"),
 )
-"""Identifier and heading of every section, in order; "noise" and "time" stand for noisy fields only."""
+"""Identifier and heading of every section, in order.
+
+"noise" and "time" stand for noisy fields only, "causes" and "next" where the study asks for them.
+"""
 
 
 def page(data: ReportData, figures: Sequence[Figure]) -> str:
@@ -64,21 +73,23 @@ def page(data: ReportData, figures: Sequence[Figure]) -> str:
     figures : of `report_figures`
     """
     findings = quantity_findings(data.summary)
-    contents = {
+    contents: dict[str, Markup | None] = {
         "answers": _answers(data, findings),
         "spread": _spread(data, findings),
         "chances": _chances(data, findings),
+        "causes": causes_section(data, figures),
+        "next": next_section(data, figures),
         "error": _error(data, figures, findings),
         "field": _field(data, figures),
         "distributions": _distributions(figures),
-        "inputs": _inputs(data),
+        "inputs": _inputs(data, figures),
         "failures": _failures(data),
         "methods": _methods(data),
         "study": element("pre", element("code", data.study_text)),
     }
     if data.model.noise is not None:
         contents |= {"noise": _noise(data, figures, findings), "time": _over_time(figures)}
-    present = [(name, heading) for name, heading in SECTIONS if name in contents]
+    present = [(name, heading) for name, heading in SECTIONS if contents.get(name) is not None]
     sections = (
         element("section", element("h2", heading), contents[name], id=name) for name, heading in present
     )
@@ -118,6 +129,11 @@ def _facts(data: ReportData) -> list[tuple[str, str | None]]:
         count = realizations_text(summary, "\N{MULTIPLICATION SIGN}")
         facts.append((f"{count}, {METHODS[sampling['method']]}", None))
         facts.append((f"{len(summary['inputs']) or 'no'} uncertain inputs", None))
+        if sampling.get("asked") == "polynomial chaos":
+            found = quantity_findings(summary)
+            accepted = sum(bool(from_surrogate(one.all())) for one in found)
+            told = f"accepted for {accepted} of {len(found)} quantities" if accepted else "refused"
+            facts.append((f"polynomial chaos: {told}", None if accepted == len(found) else "bad"))
     facts.append((f"intervals at {confidence_text(summary)} confidence", None))
     facts.append((f"computed in {short(cost['measured_s'])} s", None))
     facts.append((f"{percent(cost['split_share'])} of the work for the error split", None))
@@ -136,7 +152,7 @@ def _answers(data: ReportData, findings: Sequence[QuantityFindings]) -> Markup:
     if aim is None:
         return cards
     outcome = "is met" if aim["met"] else "is missed"
-    return joined((cards, _said(f"The aim of the study {outcome}: {aim['reason']}.", "aim")))
+    return joined((cards, said(f"The aim of the study {outcome}: {aim['reason']}.", "aim")))
 
 
 def _card(data: ReportData, found: QuantityFindings, confidence: str) -> Markup:
@@ -148,22 +164,15 @@ def _card(data: ReportData, found: QuantityFindings, confidence: str) -> Markup:
         "article",
         element("h3", name),
         element("p", big, class_="big"),
-        _said(f"{confidence} interval: {interval_text(mean)}", "range"),
-        _said(answer(found, confidence)),
+        said(f"{confidence} interval: {interval_text(mean)}", "range"),
+        said(answer(found, confidence)),
         *(
-            _said(text)
+            said(text)
             for text in (occurrence(found), exceedance(found), spread(found), parting(found))
             if text
         ),
         class_="card",
     )
-
-
-def _said(text: str, kind: str | None = None) -> Markup:
-    """A paragraph whose numbers stay on one line with their per cent sign or power of ten."""
-    for mark in ("%", "\N{MULTIPLICATION SIGN} 10"):
-        text = text.replace(f" {mark}", f"\N{NO-BREAK SPACE}{mark.replace(' ', chr(160))}")
-    return element("p", text, class_=kind)
 
 
 def _spread(data: ReportData, findings: Sequence[QuantityFindings]) -> Markup:
@@ -173,7 +182,8 @@ def _spread(data: ReportData, findings: Sequence[QuantityFindings]) -> Markup:
         "outwards. The spread (standard deviation, quantiles) is a property of the model, its inputs and its "
         "noise and does not shrink with more samples; the intervals do."
     )
-    return joined((element("p", note), *(spread_table(found, confidence) for found in findings)))
+    notes = (said(text) for found in findings if (text := surrogate_note(found)))
+    return joined((element("p", note), *notes, *(spread_table(found, confidence) for found in findings)))
 
 
 def _chances(data: ReportData, findings: Sequence[QuantityFindings]) -> Markup:
@@ -190,15 +200,15 @@ def _noise(data: ReportData, figures: Sequence[Figure], findings: Sequence[Quant
         "go if the inputs were measured; the second is the mean variance between runs with the same inputs, and "
         "stays."
     )
-    said = (_said(f"{parting(found)} {consequence(found)}".strip(), "lead") for found in findings)
-    drawn = (_figure(figure) for figure in figures if figure.section == "noise")
+    parted = (said(f"{parting(found)} {consequence(found)}".strip(), "lead") for found in findings)
+    drawn = (shown(figure) for figure in figures if figure.section == "noise")
     return joined(
-        (element("p", note), *said, *drawn, variance_table(findings, confidence_text(data.summary)))
+        (element("p", note), *parted, *drawn, variance_table(findings, confidence_text(data.summary)))
     )
 
 
 def _over_time(figures: Sequence[Figure]) -> Markup:
-    drawn = [_figure(figure) for figure in figures if figure.section == "time"]
+    drawn = [shown(figure) for figure in figures if figure.section == "time"]
     if not drawn:
         return element("p", "No quantity of this study is one number of the field at a time.")
     return element("div", *drawn, class_="pair")
@@ -209,13 +219,13 @@ def _error(data: ReportData, figures: Sequence[Figure], findings: Sequence[Quant
     parts: list[Content] = []
     for found in findings:
         parts.append(element("h3", found.name))
-        parts.append(_said(cause(found.name, found.mean), "lead"))
+        parts.append(said(cause(found.name, found.mean), "lead"))
         shrink = remedies(found.mean)
         if shrink:
             parts.append(element("p", "What would shrink it:"))
             parts.append(element("ul", *(element("li", text) for text in shrink)))
         if found.name in drawn:
-            parts.append(_figure(drawn[found.name]))
+            parts.append(shown(drawn[found.name]))
         parts.append(
             element(
                 "details",
@@ -229,14 +239,9 @@ def _error(data: ReportData, figures: Sequence[Figure], findings: Sequence[Quant
     return joined(parts)
 
 
-def _figure(figure: Figure) -> Markup:
-    caption = joined((element("b", f"{figure.drawing.title}. "), figure.caption))
-    return element("figure", figure.drawing.inline(), element("figcaption", caption))
-
-
 def _field(data: ReportData, figures: Sequence[Figure]) -> Markup:
     found = field_table(field_findings(data.summary, data.units), data.units, confidence_text(data.summary))
-    drawn = [_figure(figure) for figure in figures if figure.section == "field"]
+    drawn = [shown(figure) for figure in figures if figure.section == "field"]
     pictures = (
         element("div", *drawn, class_="pair")
         if drawn
@@ -252,13 +257,16 @@ def _field(data: ReportData, figures: Sequence[Figure]) -> Markup:
 
 
 def _distributions(figures: Sequence[Figure]) -> Markup:
-    drawn = [_figure(figure) for figure in figures if figure.section == "distribution"]
+    drawn = [shown(figure) for figure in figures if figure.section == "distribution"]
     return joined(drawn) if drawn else element("p", "No quantity has a stored value.")
 
 
-def _inputs(data: ReportData) -> Markup:
+def _inputs(data: ReportData, figures: Sequence[Figure]) -> Markup:
     found = input_table(data.summary)
-    return element("p", "No input is uncertain.") if found is None else found
+    if found is None:
+        return element("p", "No input is uncertain.")
+    joint = said(f"They depend on one another: {data.model.dependence}.") if data.model.dependence else None
+    return joined((found, joint, *(shown(figure) for figure in figures if figure.section == "inputs")))
 
 
 def _failures(data: ReportData) -> Markup:

@@ -35,6 +35,9 @@ LIGHT: Mapping[str, str] = {
     "part-sampling": "#dd6b2f",
     "part-parameters": "#1c5d99",
     "part-noise": "#d9c48b",
+    "part-index-first": "#17457f",
+    "part-index-total": "#5aa9db",
+    "part-index-shapley": "#b4531a",
     "on-part-space": "#ffffff",
     "on-part-quadrature": "#10202c",
     "on-part-time": "#ffffff",
@@ -44,6 +47,9 @@ LIGHT: Mapping[str, str] = {
     "on-part-sampling": "#1d0f07",
     "on-part-parameters": "#ffffff",
     "on-part-noise": "#211b0a",
+    "on-part-index-first": "#ffffff",
+    "on-part-index-total": "#10202c",
+    "on-part-index-shapley": "#ffffff",
 }
 """Colour variables on a light ground."""
 
@@ -65,7 +71,11 @@ DARK: Mapping[str, str] = {
     "part-surrogate": "#8c4a7c",
     "part-parameters": "#3573b0",
     "part-noise": "#cdb87e",
+    "part-index-first": "#3f74bd",
+    "part-index-total": "#8ecbf0",
+    "part-index-shapley": "#d0703a",
     "on-part-time": "#06201a",
+    "on-part-index-shapley": "#1d0f07",
 }
 """The same variables on a dark ground."""
 

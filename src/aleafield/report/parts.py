@@ -63,7 +63,8 @@ PARTS: tuple[Part, ...] = (
         "surrogate",
         "surrogate",
         "bound on the bias of the surrogate, from solver runs that did not fit it",
-        "sample the solver itself, or give the surrogate more runs",
+        "give the surrogate more runs: a larger samples in [sampling]; where that does not help, sample the solver "
+        'itself with method = "quasi-monte carlo"',
     ),
     Part(
         "bias_noise",
@@ -108,3 +109,37 @@ NOISE = Cause(
 )
 CAUSES = (PARAMETERS, NOISE)
 """The causes of variance, in the order of pictures."""
+
+
+@dataclass(frozen=True)
+class IndexKind:
+    """A kind of index that says how much of a quantity's variance an input causes.
+
+    Attributes
+    ----------
+    key : name in the summary
+    name : name in running text
+    meaning : what it is
+    """
+
+    key: str
+    name: str
+    meaning: str
+
+    @property
+    def style(self) -> str:
+        """Name of its colour."""
+        return f"index-{self.key}"
+
+
+FIRST = IndexKind(
+    "first", "first order", "share of the variance that would go, on average, if this input alone were known"
+)
+TOTAL = IndexKind(
+    "total", "total", "share of the variance that would stay, on average, if all but this input were known"
+)
+SHAPLEY = IndexKind(
+    "shapley", "Shapley effect", "fair share of the variance, also where inputs depend on one another"
+)
+INDICES = (FIRST, TOTAL, SHAPLEY)
+"""The kinds of indices of single inputs, in the order of pictures and tables."""

@@ -27,6 +27,27 @@ SOURCES: dict[str, str] = {
     "Processes and their Applications 87, 167-197.",
     "components": "Williams, J. S. (1962). A confidence interval for variance components. Biometrika 49, "
     "278-281.",
+    "homogeneous chaos": "Wiener, N. (1938). The homogeneous chaos. American Journal of Mathematics 60, 897-936.",
+    "chaos": "Xiu, D. and Karniadakis, G. E. (2002). The Wiener-Askey polynomial chaos for stochastic differential "
+    "equations. SIAM Journal on Scientific Computing 24, 619-644.",
+    "chaos indices": "Sudret, B. (2008). Global sensitivity analysis using polynomial chaos expansions. Reliability "
+    "Engineering and System Safety 93, 964-979.",
+    "rosenblatt": "Rosenblatt, M. (1952). Remarks on a multivariate transformation. Annals of Mathematical "
+    "Statistics 23, 470-472.",
+    "sobol indices": "Sobol', I. M. (1993). Sensitivity estimates for nonlinear mathematical models. Mathematical "
+    "Modelling and Computational Experiments 1, 407-414.",
+    "total index": "Homma, T. and Saltelli, A. (1996). Importance measures in global sensitivity analysis of "
+    "nonlinear models. Reliability Engineering and System Safety 52, 1-17.",
+    "saltelli": "Saltelli, A., Annoni, P., Azzini, I., Campolongo, F., Ratto, M. and Tarantola, S. (2010). Variance "
+    "based sensitivity analysis of model output. Computer Physics Communications 181, 259-270.",
+    "exchange": "Azzini, I., Mara, T. A. and Rosati, R. (2021). Comparison of two sets of Monte Carlo estimators of "
+    "Sobol' indices. Environmental Modelling and Software 144, 105167.",
+    "shapley": "Owen, A. B. (2014). Sobol' indices and Shapley value. SIAM/ASA Journal on Uncertainty Quantification "
+    "2, 245-251.",
+    "shapley algorithm": "Song, E., Nelson, B. L. and Staum, J. (2016). Shapley effects for global sensitivity "
+    "analysis: theory and computation. SIAM/ASA Journal on Uncertainty Quantification 4, 1060-1083.",
+    "primer": "Saltelli, A., Ratto, M., Andres, T., Campolongo, F., Cariboni, J., Gatelli, D., Saisana, M. and "
+    "Tarantola, S. (2008). Global Sensitivity Analysis: The Primer. Wiley.",
     "convergence": "Roache, P. J. (1994). Perspective: a method for uniform reporting of grid refinement "
     "studies. Journal of Fluids Engineering 116, 405-413.",
 }

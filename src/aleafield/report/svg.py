@@ -26,6 +26,11 @@ STYLE = (
     ".plot .limit-text{fill:var(--mark);font-weight:600}"
     ".plot .limit-text{paint-order:stroke;stroke:var(--panel);stroke-width:4px}"
     ".plot .whisker{stroke:var(--ink);stroke-width:2}.plot .dot{fill:var(--ink)}"
+    ".plot .halo{stroke:var(--panel);stroke-width:5;opacity:.75}"
+    ".plot .ring{fill:var(--panel);stroke:var(--ink);stroke-width:2}.plot .gain{fill:var(--accent-soft)}"
+    ".plot .now{stroke:var(--ink);stroke-width:1.5}.plot .now-band{fill:var(--quiet);opacity:.18}"
+    ".plot .cloud{fill:none;stroke:var(--accent);stroke-width:5;stroke-linecap:round;opacity:.45}"
+    ".plot .trend{fill:none;stroke:var(--mark);stroke-width:2;stroke-linejoin:round}"
     ".plot .open{stroke:var(--ink);stroke-width:2;stroke-dasharray:2 3}"
     ".plot .probe{fill:transparent}.plot .probe:hover{fill:var(--quiet);fill-opacity:.18}"
 )
@@ -129,6 +134,14 @@ def box(
     return element("rect", *children, x=x, y=y, width=width, height=height, class_=kind, rx=radius)
 
 
+def whisker(left: float, right: float, y: float) -> list[Markup]:
+    """An interval between two places in px, readable on any ground; none where it has no length."""
+    if not right > left:
+        return []
+    line = [segment(left, y, right, y, kind) for kind in ("halo", "whisker")]
+    return line + [segment(end, y - 3.5, end, y + 3.5, "whisker") for end in (left, right)]
+
+
 def path(points: Sequence[tuple[float, float]], kind: str, closed: bool = False) -> Markup:
     """A polyline through points in px."""
     steps = "L".join(f"{number_text(x)} {number_text(y)}" for x, y in points)
@@ -186,9 +199,13 @@ class Frame:
         """Whether a datum lies within the horizontal range."""
         return self.x_range[0] <= value <= self.x_range[1]
 
-    def bottom_axis(self, title: str) -> list[Markup]:
-        """Ticks, labels and title below the plot."""
-        values = ticks(*self.x_range, wanted=max(2, round(self.width / 80)))
+    def bottom_axis(self, title: str, room: float = 80.0) -> list[Markup]:
+        """Ticks, two at least, labels and title below the plot; `room` is what a tick has along it in px."""
+        wanted = max(2, round(self.width / room))
+        values = ticks(*self.x_range, wanted)
+        while len(values) < 2:
+            wanted += 1
+            values = ticks(*self.x_range, wanted)
         parts = [segment(self.left, self.bottom, self.right, self.bottom, "axis")]
         for value, text in zip(values, tick_labels(values), strict=True):
             x = self.x(value)
@@ -197,9 +214,13 @@ class Frame:
         parts.append(label(self.left + self.width / 2, self.bottom + 36, title, None, "middle"))
         return parts
 
+    def levels(self) -> list[float]:
+        """Data at which the left axis has its ticks."""
+        return ticks(*self.y_range, wanted=max(2, round(self.height / 48)))
+
     def left_axis(self, title: str, grid: bool = True) -> list[Markup]:
         """Ticks, labels and title at the left, with lines across the plot."""
-        values = ticks(*self.y_range, wanted=max(2, round(self.height / 48)))
+        values = self.levels()
         parts = []
         labels = tick_labels(values)
         for value, text in zip(values, labels, strict=True):

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Iterable, Sequence
 
 from aleafield.report.data import Summary
 from aleafield.report.findings import (
@@ -138,9 +138,16 @@ def field_table(findings: Sequence[FieldFindings], units: Units, confidence: str
 
 
 def error_table(findings: QuantityFindings) -> Markup:
-    """Every part of every statistic of a quantity in its own units; a dash where a part does not apply."""
+    """Every part of every statistic of a quantity in its own units."""
+    return parts_table(
+        f"Error parts of {findings.name} ({findings.units}; probabilities without unit)", findings.all()
+    )
+
+
+def parts_table(caption: str, findings: Iterable[Finding]) -> Markup:
+    """Every part of the error of each finding; a dash where a part does not apply."""
     rows = []
-    for found in findings.all():
+    for found in findings:
         cells: list[Content] = [found.name]
         for part in PARTS:
             text = typographic(short(found.error.get(part.key), 2))
@@ -148,10 +155,7 @@ def error_table(findings: QuantityFindings) -> Markup:
             cells.append(element("span", text, class_="small") if small else text)
         cells.append(element("b", half_width_text(found)))
         rows.append(cells)
-    heads = ("statistic", *(part.name for part in PARTS), "total")
-    return table(
-        f"Error parts of {findings.name} ({findings.units}; probabilities without unit)", heads, rows
-    )
+    return table(caption, ("statistic", *(part.name for part in PARTS), "total"), rows)
 
 
 def order_table(findings: QuantityFindings, summary: Summary) -> Markup | None:

@@ -6,12 +6,15 @@ from collections.abc import Sequence
 
 from aleafield.report.data import Summary
 from aleafield.report.findings import Finding, QuantityFindings, quantity_findings, with_units
+from aleafield.report.influence import Influence, Measurement, influences, measurements
+from aleafield.report.influence_words import pinned, undetermined
 from aleafield.report.parting import per_cent
 from aleafield.report.parts import PARTS, Part
 from aleafield.report.rounding import DASH, percent
 from aleafield.report.verdict import METHODS, confidence_text, main_parts, realizations_text
 
 _BAR = 20
+_MOST_INPUTS = 8
 _COLOURS = {
     "space": "34",
     "quadrature": "96",
@@ -35,7 +38,7 @@ def result_lines(summary: Summary, files: Sequence[str] = (), colour: bool = Fal
     Returns
     -------
     lines : quantity, mean and interval, spread, where the error comes from; then quantiles, exceedance,
-        occurrence, the causes of variance, failures, warnings, files
+        occurrence, the causes of variance, indices of the inputs and what to pin down, failures, warnings, files
     """
     findings = quantity_findings(summary)
     heads = ("quantity", f"mean and {confidence_text(summary)} interval", "spread (sd)", "error comes from")
@@ -51,6 +54,8 @@ def result_lines(summary: Summary, files: Sequence[str] = (), colour: bool = Fal
     causes = _causes(findings)
     if causes:
         lines += ["", *causes]
+    for block in (*map(_influence, influences(summary)), *map(_promises, measurements(summary))):
+        lines += ["", *block] if block else []
     lines.append("")
     lines += _closing(summary)
     if files:
@@ -102,6 +107,32 @@ def _causes(findings: Sequence[QuantityFindings]) -> list[str]:
     heads = ("noise or ignorance", "variance", "of which noise", "share of the parameters")
     lines = _aligned([heads, *rows], None) if rows else []
     return lines + [f"noise or ignorance of {', '.join(names)}: {why}" for why, names in unknown.items()]
+
+
+def _influence(found: Influence) -> list[str]:
+    """The most important inputs of a quantity with their indices, or why there are none."""
+    why = [text for text in undetermined(found) if text]
+    kinds = found.stated
+    if not kinds:
+        return why
+    shown = found.inputs[:_MOST_INPUTS]
+    rows = [
+        (one.path, *(_index(one.indices[kind]) if kind in one.indices else "-" for kind in kinds))
+        for one in shown
+    ]
+    if found.noise is not None:
+        rows.append(("noise, total", _index(found.noise), *("" for _ in kinds[1:])))
+    lines = _aligned([(f"causes of {found.quantity}", *(kind.name for kind in kinds)), *rows], None)
+    rest = len(found.inputs) - len(shown)
+    return [*lines, *([f"and {rest} less important inputs"] if rest else []), *why]
+
+
+def _index(found: Finding) -> str:
+    return "-" if found.value is None else _estimate(found)
+
+
+def _promises(found: Measurement) -> list[str]:
+    return [pinned(found, one, written=str) for one in found.sets]
 
 
 def _closing(summary: Summary) -> list[str]:

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterable, Sequence
+
 from aleafield.accounting.split import RESOLUTION
 from aleafield.report.data import Summary
 from aleafield.report.findings import Finding, QuantityFindings, with_units
@@ -33,6 +35,35 @@ def value_text(found: Finding) -> str:
     if found.value is None:
         return DASH
     return with_units(typographic(found.rounded.value), found.units)
+
+
+def listed(names: Sequence[str], most: int = 6) -> str:
+    """Names in running text.
+
+    >>> listed(["h", "s", "tau"]), listed(["h", "s", "tau"], 1)
+    ('h, s and tau', 'h and 2 others')
+    """
+    if len(names) > most + 1:
+        names = [*names[:most], f"{len(names) - most} others"]
+    if len(names) == 1:
+        return names[0]
+    return f"{', '.join(names[:-1])} and {names[-1]}"
+
+
+def from_surrogate(findings: Iterable[Finding]) -> list[Finding]:
+    """Those of some findings that a surrogate gave."""
+    return [one for one in findings if one.error.get("surrogate") is not None]
+
+
+def surrogate_note(findings: QuantityFindings) -> str:
+    """Which statistics of a quantity come from a surrogate; empty without one."""
+    names = [one.name for one in from_surrogate(findings.all())]
+    if not names:
+        return ""
+    return (
+        f"Of {findings.name}, {listed(names, 20)} come from a surrogate of the solver (polynomial chaos); quantiles "
+        "and probabilities are read off it by sampling it. What it may be wrong by is a part of their intervals."
+    )
 
 
 METHODS = {"monte carlo": "Monte Carlo", "quasi-monte carlo": "quasi-Monte Carlo"}

@@ -20,8 +20,8 @@ from aleafield.runs.model import Choices, design_of, field_model, noise_modes
 from aleafield.runs.noise_words import noise_warnings, noise_words
 from aleafield.runs.plan_file import count_probes
 from aleafield.runs.resolution import COARSE, MeshWidth, Stability, domain_notes, mesh_width, stability
+from aleafield.runs.stages import further_runs, refuse_impossible_runs
 from aleafield.sampling.allocation import Allocation, allocate
-from aleafield.study.impossible import refuse_impossible_samples
 from aleafield.study.positions import located
 from aleafield.study.study import Study
 
@@ -45,7 +45,7 @@ class CheckResult:
     scheme : mapping: projector, method, nodes, rule, quadrature_points, expected orders, operator
     time : mapping: step, steps, times on the schedule, largest stable step
     resolution : mapping: gaps of nodes and points, smallest kernel width, their ratio
-    sampling : mapping: method, samples, replicates, probes and what their extra levels cost
+    sampling : mapping: method, samples, replicates, probes and what their extra levels cost, the most further runs
     noise : mapping or None: correlation, modes, ring length, dropped share of the variance, error of the images
     notes : tuple of str
         What to know; nothing is wrong.
@@ -130,7 +130,7 @@ def check(study: Study) -> CheckResult:
 def _checked(study: Study) -> CheckResult:
     allocation = allocate(study.sampling, len(study.inputs), study.equation.noise is not None)
     design = design_of(study, allocation)
-    refuse_impossible_samples(study, design, min(allocation.samples, MOST_DRAWN))
+    refuse_impossible_runs(study, design, allocation, MOST_DRAWN)
     first = np.arange(min(FIRST_SAMPLES, allocation.samples), dtype=np.int64)
     bound = study.equation.bind(study.equation.binding(design.values(first)))
     step = study.scheme.time_step
@@ -151,7 +151,7 @@ def _checked(study: Study) -> CheckResult:
         scheme=_scheme(model.pairing, discretisation),
         time=_time(study, model, stable),
         resolution=_resolution(widths, unit),
-        sampling=_sampling(allocation, model),
+        sampling=_sampling(study, allocation, model),
         noise=None if noise is None else noise_words(study, noise, unit),
         notes=(*_lumping(model.pairing), *_dependence(study), *domain_notes(bound, unit)),
         warnings=(
@@ -221,7 +221,7 @@ def _resolution(widths: MeshWidth, unit: str) -> dict[str, Any]:
     }
 
 
-def _sampling(allocation: Allocation, model: FieldModel) -> dict[str, Any]:
+def _sampling(study: Study, allocation: Allocation, model: FieldModel) -> dict[str, Any]:
     probes, share = count_probes(model, model.level, model.path(model.level), allocation.samples)
     words = [f"{allocation.samples} samples, {allocation.method}"]
     if allocation.replicates > 1:
@@ -234,6 +234,11 @@ def _sampling(allocation: Allocation, model: FieldModel) -> dict[str, Any]:
     words.append(f"error split on the first {probes} of them, {cost}")
     if model.noise is not None:
         words.append("more where pilots show that differences between levels are noisy")
+    further = further_runs(study, allocation)
+    if "held out" in further:
+        words.append(f"{further['held out']} further runs judge the surrogate")
+    if "exchange" in further:
+        words.append(f"{further['exchange']} more for total indices, where no surrogate is accepted")
     return {
         "method": allocation.method,
         "samples": allocation.samples,
@@ -241,6 +246,7 @@ def _sampling(allocation: Allocation, model: FieldModel) -> dict[str, Any]:
         "noise_repeats": allocation.repeats,
         "probes": probes,
         "probe_share": share,
+        "further_runs": further,
         "words": words,
     }
 

@@ -123,7 +123,25 @@ def execute(
 
 
 def put_together(layout: Layout, plan: Plan, question: Question) -> Summary:
-    """Build ensemble.nc, ensemble.csv and summary.json from what is stored.
+    """Build ensemble.nc, ensemble.csv and summary.json from what is stored; see `gather`."""
+    summary = gather(layout, plan, question)
+    with reading(layout.ensemble) as reader:
+        write_table(layout, reader)
+    write_json(layout.summary, summary)
+    return summary
+
+
+def gather_stage(layout: Layout, plan: Plan, question: Question) -> None:
+    """Build an ensemble.nc without statistics, so that the next stage can be decided on it.
+
+    Statements that an earlier, shorter run left would belong to no ensemble: they go first.
+    """
+    remove(layout.summary)
+    gather(layout, plan, Question(question.describe, lambda *_: {"quantities": {}}))
+
+
+def gather(layout: Layout, plan: Plan, question: Question) -> Summary:
+    """Build ensemble.nc from what is stored.
 
     What an ensemble already in place holds is taken from it, the rest from the chunks.
     """
@@ -142,22 +160,23 @@ def put_together(layout: Layout, plan: Plan, question: Question) -> Summary:
             store = ChunkStore(layout)
             sources.append(StoredChunks(store, tasks_of(plan, stored)))
             cost = Cost(cost.wall + store.wall_seconds, cost.processor + store.processor_seconds)
-        summary = build(
+        return build(
             layout,
             question.describe(plan, cost),
             InTurn(*sources),
             lambda columns: question.summarise(columns, plan, cost),
             held_state,
         )
-    with reading(layout.ensemble) as reader:
-        write_table(layout, reader)
-    write_json(layout.summary, summary)
-    return summary
+
+
+def is_solved(layout: Layout, plan: Plan) -> bool:
+    """Whether all runs that a plan names are in the ensemble."""
+    return stored_ensemble(layout) == Stored.whole(plan)
 
 
 def is_complete(layout: Layout, plan: Plan) -> bool:
-    """Whether everything that comes from solving is in place."""
-    return stored_ensemble(layout) == Stored.whole(plan)
+    """Whether everything that comes from solving is in place, and no stage is left to decide."""
+    return plan.settled and is_solved(layout, plan)
 
 
 def clear_parts(layout: Layout) -> None:

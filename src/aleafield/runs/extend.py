@@ -15,8 +15,8 @@ from aleafield.runs.plan_file import read_plan, with_more_samples, write_plan
 from aleafield.runs.planning import planned_model
 from aleafield.runs.progress import NoProgress, Progress
 from aleafield.runs.run import RunResult, finish, worker_count
+from aleafield.runs.stages import first_stage, refuse_impossible_runs
 from aleafield.sampling.allocation import extended
-from aleafield.study.impossible import refuse_impossible_samples
 from aleafield.study.study import Study
 
 MOST_SAMPLES = 1_000_000_000
@@ -78,7 +78,7 @@ def extend(
             allocation = extended(plan.allocation, samples)
             if allocation.note:
                 progress.say(allocation.note)
-            refuse_impossible_samples(study, design_of(study, allocation), allocation.samples)
-            plan = with_more_samples(plan, model, allocation)
+            refuse_impossible_runs(study, design_of(study, allocation), allocation)
+            plan = first_stage(study, with_more_samples(plan, model, allocation))
             write_plan(layout, plan)
         return finish(layout, study, plan, model, worker_count(workers), progress)

@@ -71,6 +71,8 @@ class Plan:
         without noise.
     families : mapping of family to count
         Runs at the run's level besides the main sample, at least one each; see `with_rows`.
+    settled : bool
+        Whether no further runs are to be decided on what those above give.
     """
 
     digest: str
@@ -94,6 +96,7 @@ class Plan:
     noise: NoiseModes | None = None
     probe_demand: float = 0.0
     families: Mapping[Family, int] = field(default_factory=dict)
+    settled: bool = True
 
     @property
     def samples(self) -> int:
@@ -226,6 +229,8 @@ def write_plan(layout: Layout, plan: Plan) -> None:
     document = {"schema": SCHEMA, **asdict(plan), "path": [_part_as_json(p) for p in plan.path]}
     if not plan.families:
         del document["families"]
+    if plan.settled:
+        del document["settled"]
     write_json(layout.plan, document)
 
 

@@ -15,8 +15,8 @@ from aleafield.forward.field_model import FieldModel
 from aleafield.runs.folder import data_folder
 from aleafield.runs.model import Choices, design_of, field_model, make_choices
 from aleafield.runs.plan_file import Plan, count_probes, default_width, plan_notes
+from aleafield.runs.stages import first_stage, refuse_impossible_runs
 from aleafield.sampling.allocation import allocate
-from aleafield.study.impossible import refuse_impossible_samples
 from aleafield.study.study import Keep, Study
 
 MOMENT_TIMES = 41
@@ -43,7 +43,7 @@ def make_plan(study: Study, chunk_width: int | None = None) -> tuple[Plan, Field
     if chunk_width is not None and (chunk_width < LANE or chunk_width % LANE):
         raise InputError("chunk_width", f"{chunk_width} given", f"a positive multiple of {LANE} is needed")
     allocation = allocate(study.sampling, len(study.inputs), study.equation.noise is not None)
-    refuse_impossible_samples(study, design_of(study, allocation), allocation.samples)
+    refuse_impossible_runs(study, design_of(study, allocation), allocation)
     choices = make_choices(study, allocation)
     model = field_model(study, allocation, choices)
     level, path = model.level, model.path(model.level)
@@ -78,7 +78,7 @@ def make_plan(study: Study, chunk_width: int | None = None) -> tuple[Plan, Field
         noise=choices.noise,
         probe_demand=choices.probe_demand,
     )
-    return plan, model
+    return first_stage(study, plan), model
 
 
 def planned_model(study: Study, plan: Plan) -> FieldModel:

@@ -23,6 +23,10 @@ MOST_VALUES = 1 << 16
 """Values of a quantity that a histogram shows, the first ones: memory does not grow with the samples."""
 
 
+MOST_SCATTERED = 1 << 13
+"""Realizations whose inputs stand beside their values, the first ones."""
+
+
 def report_data(study: Study, plan: Plan, summary: Mapping[str, Any], reader: EnsembleReader) -> ReportData:
     """Everything that the report of a finished run shows.
 
@@ -43,6 +47,7 @@ def report_data(study: Study, plan: Plan, summary: Mapping[str, Any], reader: En
         model=model_text(study, plan),
         provenance=Provenance(study.seed, study.digest, plan.versions),
         values={name: reader.values(name)[:MOST_VALUES].copy() for name in reader.quantities},
+        inputs={path: reader.input(path)[:MOST_SCATTERED].copy() for path in reader.inputs},
         fields=_fields(reader),
         histories=_histories(study, reader),
     )

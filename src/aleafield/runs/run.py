@@ -11,17 +11,28 @@ from typing import Any
 
 from aleafield.archive.durable import remove_partials
 from aleafield.archive.ensemble_file import Summary
+from aleafield.archive.ensemble_reader import reading
 from aleafield.archive.layout import Layout
 from aleafield.archive.lock import locked
 from aleafield.errors import InputError
 from aleafield.forward.field_model import FieldModel
-from aleafield.runs.execution import clear_parts, execute, is_complete, put_together, stored_ensemble
+from aleafield.runs.execution import (
+    Question,
+    clear_parts,
+    execute,
+    gather_stage,
+    is_complete,
+    is_solved,
+    put_together,
+    stored_ensemble,
+)
 from aleafield.runs.folder import claimed_plan, stored_text, write_study
 from aleafield.runs.plan_file import Plan, write_plan
 from aleafield.runs.planning import make_plan, planned_model
 from aleafield.runs.progress import NoProgress, Progress
 from aleafield.runs.question import question_of
 from aleafield.runs.reporting import write_report
+from aleafield.runs.settling import next_stage
 from aleafield.runs.summary import unmet
 from aleafield.study.study import Study
 
@@ -112,16 +123,38 @@ def finish(
     layout: Layout, study: Study, plan: Plan, model: FieldModel, workers: int, progress: Progress
 ) -> RunResult:
     """Bring a folder to the state that its plan describes; the caller holds its lock."""
-    solved = 0
-    if not is_complete(layout, plan):
-        solved = execute(layout, model, plan, stored_ensemble(layout), workers, progress)
-    elif _up_to_date(layout, study):
+    if is_complete(layout, plan) and _up_to_date(layout, study):
         return _result(layout, study, json.loads(layout.summary.read_text(encoding="utf-8")), 0)
-    summary = put_together(layout, plan, question_of(study, model.points(plan.level)))
+    question = question_of(study, model.points(plan.level))
+    solved = _solve(layout, plan, model, workers, progress)
+    if not plan.settled:
+        plan = _settle(layout, study, plan, question, progress)
+        solved += _solve(layout, plan, model, workers, progress)
+    summary = put_together(layout, plan, question)
     write_report(layout, study, plan, summary)
     write_study(layout, study)
     clear_parts(layout)
     return _result(layout, study, summary, solved)
+
+
+def _solve(layout: Layout, plan: Plan, model: FieldModel, workers: int, progress: Progress) -> int:
+    """Solve what an ensemble lacks; how many chunks were solved."""
+    if is_solved(layout, plan):
+        return 0
+    return execute(layout, model, plan, stored_ensemble(layout), workers, progress)
+
+
+def _settle(layout: Layout, study: Study, plan: Plan, question: Question, progress: Progress) -> Plan:
+    """Decide the next stage on what the first one gave, and write it down before anything of it is solved."""
+    if not is_solved(layout, plan):
+        gather_stage(layout, plan, question)
+    clear_parts(layout)
+    with reading(layout.ensemble) as reader:
+        plan, note = next_stage(study, plan, reader)
+    if note:
+        progress.say(note)
+    write_plan(layout, plan)
+    return plan
 
 
 def worker_count(asked: int | None) -> int:

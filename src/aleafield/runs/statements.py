@@ -11,6 +11,7 @@ from numpy.typing import NDArray
 from aleafield.accounting import (
     MESH,
     Clusters,
+    Expanded,
     LevelValues,
     Pair,
     PartDifferences,
@@ -62,10 +63,31 @@ def blocks_of(reader: EnsembleReader, realizations: int | None = None) -> Blocks
     return Blocks()
 
 
-def statements_of(
-    reader: EnsembleReader, plan: Plan, quantity: str, asked: Asked, *, round_off: float = 0.0
-) -> QuantityStatements:
-    """The statements of one quantity; memory holds its columns and no others.
+@dataclass(frozen=True, eq=False)
+class QuantityColumns:
+    """What the statements of one quantity are made from.
+
+    Attributes
+    ----------
+    name : str
+    sample : Sample
+        All realizations.
+    parts : tuple of PartDifferences
+        Differences between levels on the probes.
+    clusters : Clusters or None
+        Which realizations share their parameter sample; None without noise.
+    """
+
+    name: str
+    sample: Sample
+    parts: tuple[PartDifferences, ...]
+    clusters: Clusters | None
+
+
+def columns_of(
+    reader: EnsembleReader, plan: Plan, quantity: str, *, round_off: float = 0.0
+) -> QuantityColumns:
+    """The columns of one quantity; memory holds these and no others.
 
     Parameters
     ----------
@@ -73,7 +95,6 @@ def statements_of(
     plan : Plan
     quantity : str
         Its name.
-    asked : Asked
     round_off : float
         As in `PartDifferences`.
     """
@@ -86,15 +107,30 @@ def statements_of(
         **blocks_of(reader)._asdict(),
     )
     levels = _LevelColumns(reader, plan, quantity, sample)
-    parts = [
+    parts = tuple(
         _differences(part, levels, plan, quantity, round_off) for part in (*plan.path, *_mesh(plan.path))
-    ]
+    )
     clusters = (
         Clusters(reader.numbers("sample").astype(np.int64), plan.repeats, bool(reader.inputs))
         if noisy
         else None
     )
-    return quantity_statements(sample, parts, asked.quantiles, asked.exceed, asked.confidence, clusters)
+    return QuantityColumns(quantity, sample, parts, clusters)
+
+
+def statements_of(
+    columns: QuantityColumns, asked: Asked, expanded: Expanded | None = None
+) -> QuantityStatements:
+    """The statements of one quantity, from its samples or from its surrogate."""
+    return quantity_statements(
+        columns.sample,
+        columns.parts,
+        asked.quantiles,
+        asked.exceed,
+        asked.confidence,
+        columns.clusters,
+        expanded,
+    )
 
 
 class _LevelColumns:

@@ -11,15 +11,17 @@ import numpy as np
 from aleafield.accounting import RELATIVE_ROUND_OFF
 from aleafield.archive.ensemble_file import Summary
 from aleafield.archive.ensemble_reader import EnsembleReader
+from aleafield.archive.names import netcdf_name
 from aleafield.ensemble.records import FAILURE_MEANINGS
 from aleafield.geometry import Domain
 from aleafield.quantities import Quantity
 from aleafield.report.rounding import percent
+from aleafield.runs.causes import Inquiry
 from aleafield.runs.execution import Cost
 from aleafield.runs.field_statements import field_entries
 from aleafield.runs.plan_file import Plan
 from aleafield.runs.remarks import remarks, runs_word
-from aleafield.runs.statements import Asked, statements_of
+from aleafield.runs.statements import Asked, QuantityColumns, columns_of, statements_of
 from aleafield.study.study import Study
 from aleafield.units import LENGTH
 
@@ -37,7 +39,15 @@ def summarise(reader: EnsembleReader, study: Study, plan: Plan, cost: Cost) -> S
 
     Quantities are read one at a time, so that memory holds the columns of one.
     """
-    quantities = {quantity.name: _quantity(reader, study, plan, quantity) for quantity in study.quantities}
+    inquiry = Inquiry(reader, study, plan) if study.inputs else None
+    quantities: dict[str, dict[str, Any]] = {}
+    refusals: list[str] = []
+    for quantity in study.quantities:
+        columns = columns_of(
+            reader, plan, quantity.name, round_off=_round_off(study.equation.domain, quantity)
+        )
+        quantities[quantity.name], refusal = _quantity(study, plan, quantity, columns, inquiry)
+        refusals += [refusal] if refusal else []
     failed = _failed(reader, plan.repeats)
     return {
         "schema": SCHEMA,
@@ -63,11 +73,18 @@ def summarise(reader: EnsembleReader, study: Study, plan: Plan, cost: Cost) -> S
             "processor_s": cost.processor,
             "samples": plan.samples,
             "realizations": plan.realizations,
-            "split_share": plan.probe_share / (1.0 + plan.probe_share),
+            "split_share": _split_share(plan),
         },
         "failed": failed,
         "confidence": study.confidence,
-        "warnings": [*study.warnings, *plan.notes, *remarks(reader, study), *_failure_warnings(failed, plan)],
+        "warnings": [
+            *study.warnings,
+            *plan.notes,
+            *refusals,
+            *remarks(reader, study),
+            *_failure_warnings(failed, plan),
+            *_further_failures(reader),
+        ],
     }
 
 
@@ -114,16 +131,23 @@ def _first_failures(entries: Sequence[Mapping[str, Any]], repeats: int) -> str:
     return ", ".join(named) + (", .." if len(entries) > MOST_NAMED else "")
 
 
-def _quantity(reader: EnsembleReader, study: Study, plan: Plan, quantity: Quantity) -> dict[str, object]:
+def _quantity(
+    study: Study, plan: Plan, quantity: Quantity, columns: QuantityColumns, inquiry: Inquiry | None
+) -> tuple[dict[str, Any], str]:
+    """The entry of one quantity; and why polynomial chaos, where it was asked, is not what it comes from."""
     asked = Asked(study.report.quantiles, study.report.exceed.get(quantity.name, ()), study.confidence)
-    statements = statements_of(
-        reader,
-        plan,
-        quantity.name,
-        asked,
-        round_off=_round_off(study.equation.domain, quantity),
-    )
-    return statements.as_json(study.quantity_units(quantity))
+    units = study.quantity_units(quantity)
+    if inquiry is None or not (study.sensitivity or plan.allocation.surrogate):
+        return statements_of(columns, asked).as_json(units), ""
+    fitted = inquiry.fitted(columns)
+    expanded, refusal = inquiry.expanded(columns, fitted) if plan.allocation.surrogate else (None, "")
+    if refusal:
+        refusal = f"{quantity.name}: polynomial chaos is refused, the samples answer instead: {refusal}"
+    statements = statements_of(columns, asked, expanded)
+    entry = statements.as_json(units)
+    if study.sensitivity is not None:
+        entry |= inquiry.entries(columns, fitted, statements.variance)
+    return entry, refusal
 
 
 def _round_off(domain: Domain, quantity: Quantity) -> float:
@@ -188,7 +212,15 @@ def _sampling(study: Study, plan: Plan) -> dict[str, object] | None:
         "replicates": plan.allocation.replicates,
         "points_per_replicate": plan.allocation.points_per_replicate,
         "noise_repeats": plan.repeats,
+        "asked": study.sampling.method,
+        "further_runs": dict(plan.families),
     }
+
+
+def _split_share(plan: Plan) -> float:
+    """Operations of the extra levels over those of all runs."""
+    runs = plan.realizations * (1.0 + plan.probe_share) + sum(plan.families.values())
+    return plan.realizations * plan.probe_share / runs
 
 
 def _aim(study: Study, quantities: Mapping[str, Mapping[str, Any]]) -> dict[str, object] | None:
@@ -256,3 +288,13 @@ def _failure_warnings(failed: Mapping[str, Any], plan: Plan) -> list[str]:
             "ensemble.csv flag all of them, with their inputs"
         )
     return warnings
+
+
+def _further_failures(reader: EnsembleReader) -> list[str]:
+    """Failed runs of the other families, which `failed` does not list."""
+    found = []
+    for family, count in reader.families.items():
+        failed = int((~reader.valid(netcdf_name(family))).sum())
+        if failed:
+            found.append(f"{failed} of {count} further runs ({family}) failed and are left out")
+    return found

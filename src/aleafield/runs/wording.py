@@ -14,6 +14,7 @@ from aleafield.field.rates import FormulaRate, Rate
 from aleafield.formula import Formula
 from aleafield.geometry import Domain
 from aleafield.projection.pairing import Pairing, resolve
+from aleafield.randomness.inputs import Dependence
 from aleafield.randomness.laws import Law
 from aleafield.report.data import ModelText
 from aleafield.runs.plan_file import Plan
@@ -44,7 +45,16 @@ def model_text(study: Study, plan: Plan) -> ModelText:
         bridged=()
         if equation.noise is None
         else tuple(quantity.name for quantity in study.quantities if quantity.bridged),
+        dependence=_dependence(study.dependence),
     )
+
+
+def _dependence(dependence: Dependence) -> str:
+    """Correlations that join something, and whether rows of a file are drawn whole."""
+    found = [f"rank correlation {rho:g} of {a} and {b}" for a, b, rho in dependence.rank_correlation if rho]
+    if dependence.sampled_together:
+        found.append("inputs from one file are drawn as whole rows of it")
+    return "; ".join(found)
 
 
 def _number(value: Any, dimension: Dimension, units: Units) -> str:

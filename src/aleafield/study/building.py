@@ -135,7 +135,7 @@ def build_study(
         "sampling": sampling,
         "aim": aim,
         "dependence": dependence,
-        "sensitivity": None if sensitivity is None else dataclasses.asdict(sensitivity),
+        "sensitivity": None if sensitivity is None else _asked(sensitivity),
         "report": report,
         "keep": keep,
     }
@@ -154,6 +154,11 @@ def build_study(
     for quantity in functions:
         digest.update(_source_of(quantity))
     return dataclasses.replace(study, digest=digest.hexdigest())
+
+
+def _asked(sensitivity: SensitivityRequest) -> dict[str, Any]:
+    """The entries of [sensitivity]; what is not asked for is left out."""
+    return {name: value for name, value in dataclasses.asdict(sensitivity).items() if value is not None}
 
 
 def _source_of(quantity: FunctionQuantity) -> bytes:

@@ -16,6 +16,7 @@ from aleafield.study.study import Study
 
 if TYPE_CHECKING:
     from aleafield.randomness.design import Design
+    from aleafield.randomness.families import Family
 
 
 def _bindables(study: Study) -> Iterator[tuple[str, Bindable]]:
@@ -48,8 +49,10 @@ def refuse_impossible_laws(study: Study) -> None:
         bindable.refuse_impossible_laws(path, certain)
 
 
-def refuse_impossible_samples(study: Study, design: Design, count: int, block: int = 4096) -> None:
-    """Draw the samples 0 .. count - 1 and refuse them where a number of the model comes out impossible.
+def refuse_impossible_samples(
+    study: Study, design: Design, count: int, block: int = 4096, family: Family = "main"
+) -> None:
+    """Draw the samples 0 .. count - 1 of a family and refuse them where a number of the model comes out impossible.
 
     What is not finite, and what has not the sign that it must have, is impossible.  Memory holds one block.
 
@@ -61,6 +64,8 @@ def refuse_impossible_samples(study: Study, design: Design, count: int, block: i
         Number of parameter samples.
     block : int
         Samples drawn at a time.
+    family : Family
+        Whose samples, numbered within it.
 
     Raises
     ------
@@ -69,7 +74,7 @@ def refuse_impossible_samples(study: Study, design: Design, count: int, block: i
     """
     for start in range(0, count, block):
         indices = np.arange(start, min(start + block, count), dtype=np.int64)
-        inputs = design.values(indices)
+        inputs = design.values_at(design.points(family, indices))
         binding = study.equation.binding(inputs)
         for path, bindable in _bindables(study):
             worst = min(
@@ -80,7 +85,12 @@ def refuse_impossible_samples(study: Study, design: Design, count: int, block: i
             drawn = ", ".join(f"{name} = {float(v[worst.position])!r}" for name, v in inputs.items())
             error = InputError(
                 worst.path,
-                f"sample {int(indices[worst.position])} gives {worst.found} (inputs: {drawn or 'none'})",
+                f"{_words(family)} {int(indices[worst.position])} gives {worst.found} (inputs: {drawn or 'none'})",
                 f"{worst.needed}: change the expression, or use truncated_normal for its inputs",
             )
             raise located(error, study.source.path, study.source.lines)
+
+
+def _words(family: Family) -> str:
+    """What the samples of a family are called."""
+    return "sample" if family == "main" else f"{family} sample"

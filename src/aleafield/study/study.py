@@ -56,16 +56,14 @@ class SensitivityRequest:
         In Python any sequence, in any order.
     wanted_sd : mapping of quantity to standard deviation
         In units of the quantity: the cheapest set of inputs is wanted that brings its spread below this.
-    fix_below : float
-        Share of the variance, between 0 and 1: an input may be fixed where its total index is surely below.
-    screening : bool
-        Whether elementary effects choose first among many inputs.
+    fix_below : float or None
+        Share of the variance, between 0 and 1: an input may be fixed where its total index is surely below.  None
+        where it is not asked for; then 0.01 counts where total indices are at hand anyway.
     """
 
     indices: Sequence[SensitivityIndex] = ()
     wanted_sd: Mapping[str, float] = field(default_factory=dict)
-    fix_below: float = 0.01
-    screening: bool = False
+    fix_below: float | None = None
 
 
 @dataclass(frozen=True)

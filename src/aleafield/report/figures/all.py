@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import re
+from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import Literal
 
@@ -14,11 +15,18 @@ from aleafield.report.figures.error_split import error_split
 from aleafield.report.figures.fan import fan
 from aleafield.report.figures.field_curves import course, profile
 from aleafield.report.figures.field_maps import mean_map, spread_map
+from aleafield.report.figures.index_bars import MOST_INPUTS, index_bars
+from aleafield.report.figures.remaining_spread import remaining_spread
+from aleafield.report.figures.scatter import MOST_CLOUDS, MOST_POINTS, scatter
 from aleafield.report.figures.variance_parts import variance_parts
 from aleafield.report.findings import QuantityFindings
+from aleafield.report.influence import Influence, influences, measurements
 from aleafield.report.svg import Drawing
 
-Section = Literal["noise", "error", "time", "field", "distribution"]
+Section = Literal["noise", "causes", "next", "error", "time", "field", "distribution", "inputs"]
+
+MOST_DOTS = 48_000
+"""Points of all clouds of a report: beyond it each has fewer."""
 
 
 @dataclass(frozen=True)
@@ -32,13 +40,14 @@ class Figure:
 
 
 def report_figures(data: ReportData, findings: list[QuantityFindings]) -> list[Figure]:
-    """The causes of variance, the error split of every quantity, what is followed in time, the field as far
-    as it is stored, every distribution."""
+    """The causes of variance, the influence of the inputs and what to measure next, the error split of every
+    quantity, what is followed in time, the field as far as it is stored, every distribution, every scatter."""
     names = drawing_names([found.name for found in findings])
     figures = []
     causes = variance_parts(findings, "variance-causes")
     if causes is not None:
         figures.append(Figure("noise", "", causes, _CAUSES_CAPTION))
+    figures.extend(_influence_figures(data, names))
     for found in findings:
         split = error_split(found, f"error-{names[found.name]}")
         if split is not None:
@@ -52,6 +61,7 @@ def report_figures(data: ReportData, findings: list[QuantityFindings]) -> list[F
         if drawn is not None and values is not None:
             count = int(np.isfinite(values).sum())
             figures.append(Figure("distribution", found.name, drawn, _distribution_caption(found, count)))
+    figures.extend(_scatter_figures(data, findings, names))
     return figures
 
 
@@ -81,6 +91,68 @@ _CAUSES_CAPTION = (
     "Each bar is the whole variance of a quantity, cut at the share of the parameters; the mark below the cut is "
     "its interval."
 )
+
+
+def _influence_figures(data: ReportData, names: Mapping[str, str]) -> list[Figure]:
+    """Indices of the inputs, and what would narrow each quantity."""
+    figures = []
+    for influence in influences(data.summary):
+        bars = index_bars(influence, f"causes-{names[influence.quantity]}")
+        if bars is not None:
+            figures.append(Figure("causes", influence.quantity, bars, _bars_caption(influence)))
+    for found in measurements(data.summary):
+        drawn = remaining_spread(found, f"next-{names[found.quantity]}")
+        if drawn is not None:
+            figures.append(Figure("next", found.quantity, drawn, _REMAINING_CAPTION))
+    return figures
+
+
+def _bars_caption(influence: Influence) -> str:
+    text = "; ".join(f"{kind.name}: {kind.meaning}" for kind in influence.stated)
+    text = f"{text[:1].upper()}{text[1:]}. " if text else ""
+    text += "Across the bars: their intervals."
+    if influence.noise is not None:
+        text += " Noise: the share that stays, on average, however well the inputs are known."
+    if influence.stated and len(influence.inputs) > MOST_INPUTS:
+        text += f" The {MOST_INPUTS} most important of {len(influence.inputs)} inputs; the table has all."
+    return text
+
+
+_REMAINING_CAPTION = (
+    "What stays of the standard deviation, on average over what may be found, when one input is known exactly or "
+    "its spread is halved; the bars are the gain, the lines across the marks the intervals. Grey: the standard "
+    "deviation now, with its interval."
+)
+
+
+def _scatter_figures(
+    data: ReportData, findings: list[QuantityFindings], names: Mapping[str, str]
+) -> list[Figure]:
+    """Every quantity against its inputs, the most important ones first where that is known."""
+    order = {one.quantity: [entry.path for entry in one.inputs] for one in influences(data.summary)}
+    columns = min(len(data.inputs), MOST_CLOUDS)
+    most = min(MOST_POINTS, MOST_DOTS // max(1, columns * len(findings)))
+    section: Section = "causes" if order else "inputs"
+    figures = []
+    for found in findings:
+        paths = [path for path in order.get(found.name, data.inputs) if path in data.inputs][:MOST_CLOUDS]
+        inputs = {path: (data.summary["inputs"][path]["units"], data.inputs[path]) for path in paths}
+        values = data.values.get(found.name)
+        if values is None or not inputs:
+            continue
+        values = values[: len(data.inputs[paths[0]])]
+        drawn = scatter((found.name, found.units), values, inputs, most, f"scatter-{names[found.name]}")
+        if drawn is not None:
+            count = min(most, int(np.isfinite(values).sum()))
+            figures.append(
+                Figure(section, found.name, drawn, _scatter_caption(count, columns, len(data.inputs)))
+            )
+    return figures
+
+
+def _scatter_caption(count: int, shown: int, inputs: int) -> str:
+    text = f"{count} runs. The line joins the means of groups of neighbours, equally many runs in each."
+    return text if shown == inputs else f"{text} {shown} of {inputs} inputs."
 
 
 def _fan_figures(data: ReportData, found: QuantityFindings, name: str) -> list[Figure]:

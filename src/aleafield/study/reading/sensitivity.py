@@ -8,7 +8,7 @@ from typing import cast
 from aleafield.errors import InputError
 from aleafield.formula import nearest_name
 from aleafield.randomness.inputs import Dependence
-from aleafield.study.reading.table import Table, finite, shown, unknown_key
+from aleafield.study.reading.table import Table, finite, not_built_yet, shown, unknown_key
 from aleafield.study.study import SensitivityIndex, SensitivityRequest
 
 INDICES = ("first", "total", "second", "shapley")
@@ -33,16 +33,17 @@ def read_sensitivity(
     ------
     InputError
         Where nothing is asked, for words and quantities that are unknown and numbers that cannot be, and for
-        questions that have no answer: of no inputs, of one input about pairs, Sobol' indices and elementary
-        effects of dependent inputs, elementary effects under noise.
+        questions that have no answer: of no inputs, of one input about pairs, Sobol' indices of
+        dependent inputs; and for elementary effects, which are not built yet.
     """
     table.only(("indices", "wanted_sd", "fix_below", "screening"), "[sensitivity]")
     if not inputs:
         _refuse_certain(table.path, noisy)
-    request = SensitivityRequest(
-        _indices(table), _wanted_sd(table, names), _fix_below(table), table.flag("screening", False)
-    )
-    if not (request.indices or request.wanted_sd or request.screening or "fix_below" in table):
+    if table.flag("screening", False):
+        instead = 'take it out; indices = ["total"] of a surrogate serves ten inputs and more'
+        raise not_built_yet(table.key("screening"), "screening by elementary effects", instead)
+    request = SensitivityRequest(_indices(table), _wanted_sd(table, names), _fix_below(table))
+    if not (request.indices or request.wanted_sd or "fix_below" in table):
         needed = 'write indices = ["first", "total"], or take the section out'
         raise InputError(table.path, "nothing is asked here", needed)
     if "second" in request.indices and len(inputs) == 1:
@@ -53,13 +54,6 @@ def read_sensitivity(
         )
     if not dependence.independent:
         _refuse_dependent(table, request)
-    if request.screening and noisy:
-        raise InputError(
-            table.key("screening"),
-            "screening under noise",
-            "an elementary effect is the difference of two single runs, and the noise would drown it: "
-            'take it out and ask for indices = ["first"]',
-        )
     return request
 
 
@@ -96,8 +90,10 @@ def _wanted_sd(table: Table, names: Sequence[str]) -> dict[str, float]:
     return {name: spreads[name] for name in names if name in spreads}
 
 
-def _fix_below(table: Table) -> float:
-    value = finite(table.value("fix_below", SensitivityRequest().fix_below), table.key("fix_below"))
+def _fix_below(table: Table) -> float | None:
+    if "fix_below" not in table:
+        return None
+    value = finite(table.value("fix_below"), table.key("fix_below"))
     if not 0 < value < 1:
         raise InputError(
             table.key("fix_below"),
@@ -129,11 +125,4 @@ def _refuse_dependent(table: Table, request: SensitivityRequest) -> None:
             f"{', '.join(sobol)} of inputs that [dependence] joins",
             "Sobol' indices part the variance only between independent inputs; ask for Shapley effects, which "
             'share out what dependent inputs cause together: indices = ["shapley"]',
-        )
-    if request.screening:
-        raise InputError(
-            table.key("screening"),
-            "screening of inputs that [dependence] joins",
-            "it moves one input at a time, and dependent inputs do not move alone: take it out and ask for "
-            'indices = ["shapley"]',
         )
