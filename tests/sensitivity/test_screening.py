@@ -9,8 +9,9 @@ import pytest
 from scipy.stats import binom
 
 from aleafield.arrays import FloatArray
+from aleafield.randomness.trajectories import STEP, trajectories
 from aleafield.sensitivity.exchange import Exchange
-from aleafield.sensitivity.screening import GROUP_TOTAL, STEP, Screening, trajectories
+from aleafield.sensitivity.screening import GROUP_TOTAL, Screening
 from tests.sensitivity.known_functions import ISHIGAMI, g_function, scrambled
 
 D = 30

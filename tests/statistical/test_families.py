@@ -9,10 +9,11 @@ import pytest
 from scipy import stats
 
 from aleafield.randomness.design import Design, Method
-from aleafield.randomness.families import Family, exchange_runs, screening_runs
+from aleafield.randomness.families import Family, exchange_runs
 from aleafield.randomness.inputs import Dependence, Input
 from aleafield.randomness.laws import Uniform
 from aleafield.randomness.streams import generator
+from aleafield.randomness.trajectories import STEP
 from tests.statistical.test_design import FALSE_ALARM, cube
 
 METHODS: tuple[Method, ...] = ("monte carlo", "quasi-monte carlo")
@@ -88,33 +89,29 @@ def test_held_out_points_are_plain_whatever_the_method() -> None:
     )
 
 
-def test_trajectories_change_each_coordinate_once_by_two_thirds() -> None:
-    """Morris 1991: d + 1 points, one coordinate at a time, each once; the step is 2/3 and all is inside."""
+def test_trajectories_change_each_coordinate_once() -> None:
+    """Morris 1991: d + 1 points, one coordinate at a time, each once, by one step; all is inside."""
     d, count = 5, 400
-    indices = np.arange(count * screening_runs(d))
+    indices = np.arange(count * (d + 1))
     paths = cube("quasi-monte carlo", 3, d).points("screening", indices).reshape(count, d + 1, d)
     assert ((paths > 0) & (paths < 1)).all()
     steps = np.diff(paths, axis=1)
     moved = np.abs(steps) > 1e-12
     assert (moved.sum(axis=2) == 1).all(), "one coordinate at a time"
     assert (moved.sum(axis=1) == 1).all(), "each coordinate once"
-    np.testing.assert_allclose(np.abs(steps[moved]), 2 / 3, rtol=0, atol=1e-15)
-    levels = np.array([1, 3, 9, 11]) / 12
-    distance = np.abs(paths[:, :, :, None] - levels)
-    assert (distance.min(axis=3) < 1e-15).all(), "four levels"
+    np.testing.assert_allclose(np.abs(steps[moved]), STEP, rtol=0, atol=1e-15)
 
 
 def test_trajectories_are_drawn_evenly() -> None:
-    """Start levels, directions and the place of each coordinate in the order: chi-square over 8,000 trajectories."""
+    """Directions and the place of each coordinate in the order: chi-square over 8,000 trajectories."""
     d, count = 4, 8000
     paths = cube("monte carlo", 5, d).points("screening", np.arange(count * (d + 1))).reshape(count, d + 1, d)
     steps = np.diff(paths, axis=1)
     for coordinate in range(d):
-        _, of_level = np.unique(paths[:, 0, coordinate].round(9), return_counts=True)
         place = np.bincount(np.abs(steps[:, :, coordinate]).argmax(axis=1), minlength=d)
-        assert len(of_level) == len(place) == 4
-        assert stats.chisquare(of_level).pvalue > 1e-6
+        upward = int((steps[:, :, coordinate].sum(axis=1) > 0).sum())
         assert stats.chisquare(place).pvalue > 1e-6
+        assert stats.chisquare([upward, count - upward]).pvalue > 1e-6
     first = np.abs(steps[:, 0]).argmax(axis=1)
     second = np.abs(steps[:, 1]).argmax(axis=1)
     _, of_pair = np.unique(np.column_stack([first, second]), axis=0, return_counts=True)

@@ -15,10 +15,11 @@ import numpy as np
 from aleafield.arrays import FloatArray, IntArray
 from aleafield.errors import InputError
 from aleafield.randomness.copula import KEY, Copula
-from aleafield.randomness.families import ExchangePoints, Family, TrajectoryPoints
+from aleafield.randomness.families import ExchangePoints, Family
 from aleafield.randomness.inputs import Dependence, Input
 from aleafield.randomness.points import PlainPoints, Points, SobolPoints
 from aleafield.randomness.sampled import Sampled
+from aleafield.randomness.trajectories import TrajectoryPoints
 
 Method = Literal["monte carlo", "quasi-monte carlo"]
 

@@ -2,18 +2,11 @@
 
 from __future__ import annotations
 
-import math
-
 import numpy as np
 
 from aleafield.arrays import BoolArray, FloatArray
-from aleafield.randomness.streams import generator
+from aleafield.randomness.trajectories import STEP
 
-STEP = 7 / 12
-"""Length of a step in the coordinate of the unit cube: no simple fraction, so that few periods hide an effect."""
-SMALLEST = 2.0**-33
-"""Distance that starts keep from the ends."""
-GOLDEN = (math.sqrt(5) - 1) / 2
 FIRST_TRAJECTORIES = 3
 """Trajectories before anything is dropped."""
 NEGLIGIBLE = 0.05
@@ -22,39 +15,6 @@ AGREE = 2
 """The kept set must come out unchanged this often in a row."""
 GROUP_TOTAL = 0.02
 """Upper limit that the total index of all dropped inputs, as one group, must stay below."""
-
-
-def trajectories(n_inputs: int, first: int, count: int, seed: int) -> FloatArray:
-    """Points of walks along which every input is changed once, in random order (Morris 1991; from memory).
-
-    The start of coordinate i is (1 - STEP) frac(s_i + r GOLDEN) with s_i uniform: few trajectories already spread
-    evenly over each coordinate.  Four fixed levels instead, as is common, lost an input with a wave of 2/3 of the
-    interval in 27 of 100 designs of four trajectories, independent starts an even input in 3.  Trajectory r depends on
-    the seed and r alone, so that more can be had later.
-
-    Parameters
-    ----------
-    n_inputs : int
-        d.
-    first, count : int
-        Trajectories first .. first + count - 1.
-    seed : int
-
-    Returns
-    -------
-    float array (count, d + 1, d)
-        Points strictly inside the unit cube; neighbours differ by STEP in one coordinate.
-    """
-    walks = np.empty((count, n_inputs + 1, n_inputs))
-    shift = generator(seed, "screening starts").random(n_inputs)
-    for at in range(count):
-        source = generator(seed, "screening trajectories", first + at)
-        start = (1 - STEP) * np.clip((shift + (first + at) * GOLDEN) % 1.0, SMALLEST, 1.0 - SMALLEST)
-        upward = source.random(n_inputs) < 0.5
-        turn = source.permutation(n_inputs)
-        changed = np.arange(n_inputs + 1)[:, None] > np.argsort(turn)
-        walks[at] = start + STEP * (changed == upward)
-    return walks
 
 
 class Screening:
